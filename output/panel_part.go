@@ -1,0 +1,96 @@
+package output
+
+import (
+	"fmt"
+	"strconv"
+
+	"github.com/parquet-go/parquet-go"
+)
+
+// part is a part file that is being written: a Parquet writer, the row groups
+// free for encoding into it, and the file once the first of them is committed.
+type part struct {
+	index int64
+	end   int64 // first household beyond this part
+	path  string
+	w     *parquet.GenericWriter[any]
+	free  []*parquet.ConcurrentRowGroupWriter
+	out   *File // nil before the first commit
+}
+
+// Write sends the bytes of the Parquet writer to the file.
+func (pt *part) Write(b []byte) (int, error) { return pt.out.Write(b) }
+
+// take returns part k and an empty row group of it.
+func (p *Panel) take(k int64) (*part, *parquet.ConcurrentRowGroupWriter) {
+	p.mu.Lock()
+	defer p.mu.Unlock()
+	pt := p.parts[k]
+	if pt == nil {
+		pt = p.open(k)
+		p.parts[k] = pt
+	}
+	if n := len(pt.free); n > 0 {
+		g := pt.free[n-1]
+		pt.free = pt.free[:n-1]
+		return pt, g
+	}
+	return pt, pt.w.BeginRowGroup()
+}
+
+// open starts part k with the buffers of a finished part if there is one. The
+// footer's keys are all set at the start, so their order is always the same.
+func (p *Panel) open(k int64) *part {
+	pt := new(part)
+	if n := len(p.spare); n > 0 {
+		pt = p.spare[n-1]
+		p.spare = p.spare[:n-1]
+		pt.w.Reset(pt)
+	} else {
+		pt.w = parquet.NewGenericWriter[any](pt, p.file.options...)
+	}
+	first := k * int64(p.o.Block)
+	pt.index, pt.path, pt.out = k, p.path(k), nil
+	pt.end = min(first+int64(p.o.Block), p.o.To)
+	pt.w.SetKeyValueMetadata(keyFirst, strconv.FormatInt(first, 10))
+	pt.w.SetKeyValueMetadata(keyHouseholds, strconv.FormatInt(pt.end-first, 10))
+	return pt
+}
+
+// give returns a committed row group to its part.
+func (p *Panel) give(pt *part, g *parquet.ConcurrentRowGroupWriter) {
+	p.mu.Lock()
+	defer p.mu.Unlock()
+	pt.free = append(pt.free, g)
+}
+
+// commit appends an encoded row group to the part file.
+func (pt *part) commit(g *parquet.ConcurrentRowGroupWriter) error {
+	if pt.out == nil {
+		out, err := CreateFile(pt.path)
+		if err != nil {
+			return err
+		}
+		pt.out = out
+	}
+	if _, err := g.Commit(); err != nil {
+		return fmt.Errorf("output: %s: %w", pt.path, err)
+	}
+	return nil
+}
+
+// finish writes the footer and gives the part its name.
+func (p *Panel) finish(pt *part) error {
+	if err := pt.w.Close(); err != nil {
+		return fmt.Errorf("output: %s: %w", pt.path, err)
+	}
+	if err := pt.out.Commit(); err != nil {
+		return err
+	}
+	p.mu.Lock()
+	defer p.mu.Unlock()
+	pt.out = nil
+	delete(p.parts, pt.index)
+	p.spare = append(p.spare, pt)
+	return nil
+}
