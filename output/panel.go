@@ -45,7 +45,7 @@ type PanelOptions struct {
 // The rule for Block: a row group is never split between two parts, and parts
 // must hold the same households whoever writes them, so Block is a positive
 // multiple of Unit, and From is a multiple of Block: a panel begins where a
-// part begins.
+// part begins. From = To is a panel with nothing left to write.
 func (o PanelOptions) Validate() error {
 	var errs []error
 	bad := func(format string, a ...any) { errs = append(errs, fmt.Errorf("output: panel: "+format, a...)) }
@@ -53,13 +53,13 @@ func (o PanelOptions) Validate() error {
 		bad("unit is %d households, want at least 1", o.Unit)
 	} else if o.Block < 1 || o.Block%o.Unit != 0 {
 		bad("block is %d households, want a positive multiple of %d", o.Block, o.Unit)
-	} else if o.From < 0 || o.From%int64(o.Block) != 0 {
+	} else if o.From < 0 || o.From%int64(o.Block) != 0 && o.From != o.To {
 		bad("first household is %d, want a multiple of the block, %d", o.From, o.Block)
 	} else if o.Block/o.Unit > maxRowGroups {
 		bad("block is %d households, want at most %d (%d row groups)", o.Block, maxRowGroups*o.Unit, maxRowGroups)
 	}
-	if o.To <= o.From {
-		bad("households end at %d, want more than %d", o.To, o.From)
+	if o.To < o.From {
+		bad("households end at %d, want at least %d", o.To, o.From)
 	}
 	if o.Precision != Double && o.Precision != Single {
 		bad("precision is %d, want double or single", int(o.Precision))
@@ -111,10 +111,9 @@ type Panel struct {
 	file  *panelFormat
 	work  []*encoder // one a worker
 	next  int64      // first household not yet committed
-	mu    sync.Mutex // guards parts, spare, failed
+	mu    sync.Mutex // guards parts and fault
 	parts map[int64]*part
-	spare []*part // finished parts whose buffers wait for the next
-	fault error   // first error; nothing is written after it
+	fault error // first error; nothing is written after it
 }
 
 // NewPanel prepares a panel in the folder dir, which is made if it is absent.

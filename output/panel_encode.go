@@ -58,7 +58,8 @@ func (e *encoder) grow(n int) {
 }
 
 // encode writes rows into the row group g, column by column in schema order,
-// and compresses what is left in its buffers.
+// and compresses what is left in its buffers. Columns are independent of one
+// another, so their order here is free.
 func (e *encoder) encode(g *parquet.ConcurrentRowGroupWriter, r *Rows) error {
 	e.grow(r.N)
 	if err := e.order(r); err != nil {
@@ -67,8 +68,8 @@ func (e *encoder) encode(g *parquet.ConcurrentRowGroupWriter, r *Rows) error {
 	w := g.ColumnWriters()
 	err := errors.Join(
 		e.putInts(w[0], r),
-		e.putGroups(w[1], r),
 		e.putAges(w[2], r),
+		e.putGroups(w[1], r), // reuses the space of the ages
 		e.putFloats(w[3], r, "persistent", r.Persistent),
 		e.putFloats(w[4], r, "transitory", r.Transitory),
 		e.putBools(w[5], r, r.Employed),
@@ -101,13 +102,35 @@ func (e *encoder) chunks(c *parquet.ColumnWriter, n int, box func(lo int, part [
 	return nil
 }
 
-// order scatters the households and checks the order they come out in.
+// order scatters households and ages and checks what comes out: every
+// household of the unit in turn, one row for each of its consecutive years. A
+// place taken twice leaves another empty, so this also proves that Position is
+// a permutation.
 func (e *encoder) order(r *Rows) error {
+	ids, ages := e.ints[:r.N], e.small[:r.N]
+	for i := range ids {
+		ids[i] = -1
+	}
 	for k, pos := range r.Position[:r.N] {
 		if uint(pos) >= uint(r.N) {
 			return fmt.Errorf("output: panel: row %d of the unit from household %d has place %d of %d", k, r.First, pos, r.N)
 		}
-		e.ints[pos] = r.Household[k]
+		ids[pos] = r.Household[k]
+	}
+	for _, s := range r.Spans {
+		for _, pos := range r.Position[s.From:s.To] {
+			ages[pos] = s.Age
+		}
+	}
+	id, age := r.First-1, int32(0)
+	for i, next := range ids {
+		if next != id+1 && (next != id || ages[i] != age+1 || i == 0) {
+			return fmt.Errorf("output: panel: household %d at age %d follows household %d at age %d; want consecutive years and households", next, ages[i], id, age)
+		}
+		id, age = next, ages[i]
+	}
+	if end := r.First + int64(r.Households); id+1 != end {
+		return fmt.Errorf("output: panel: the unit from household %d ends with %d, want %d", r.First, id, end-1)
 	}
 	return nil
 }
@@ -134,11 +157,6 @@ func (e *encoder) putGroups(c *parquet.ColumnWriter, r *Rows) error {
 }
 
 func (e *encoder) putAges(c *parquet.ColumnWriter, r *Rows) error {
-	for _, s := range r.Spans {
-		for _, pos := range r.Position[s.From:s.To] {
-			e.small[pos] = s.Age
-		}
-	}
 	return e.chunks(c, r.N, func(lo int, part []parquet.Value) {
 		for i, v := range e.small[lo : lo+len(part)] {
 			part[i] = parquet.Int32Value(v)

@@ -38,20 +38,14 @@ func (p *Panel) take(k int64) (*part, *parquet.ConcurrentRowGroupWriter) {
 	return pt, pt.w.BeginRowGroup()
 }
 
-// open starts part k with the buffers of a finished part if there is one. The
-// footer's keys are all set at the start, so their order is always the same.
+// open starts part k with a writer of its own. Resetting a finished one would
+// save a few allocations, but the library then clears the column paths of row
+// groups it still refers to.
 func (p *Panel) open(k int64) *part {
-	pt := new(part)
-	if n := len(p.spare); n > 0 {
-		pt = p.spare[n-1]
-		p.spare = p.spare[:n-1]
-		pt.w.Reset(pt)
-	} else {
-		pt.w = parquet.NewGenericWriter[any](pt, p.file.options...)
-	}
 	first := k * int64(p.o.Block)
-	pt.index, pt.path, pt.out = k, p.path(k), nil
-	pt.end = min(first+int64(p.o.Block), p.o.To)
+	pt := &part{index: k, path: p.path(k), end: min(first+int64(p.o.Block), p.o.To)}
+	pt.w = parquet.NewGenericWriter[any](pt, p.file.options...)
+	// Both keys are there from the start, so the footer's order never changes.
 	pt.w.SetKeyValueMetadata(keyFirst, strconv.FormatInt(first, 10))
 	pt.w.SetKeyValueMetadata(keyHouseholds, strconv.FormatInt(pt.end-first, 10))
 	return pt
@@ -89,8 +83,6 @@ func (p *Panel) finish(pt *part) error {
 	}
 	p.mu.Lock()
 	defer p.mu.Unlock()
-	pt.out = nil
 	delete(p.parts, pt.index)
-	p.spare = append(p.spare, pt)
 	return nil
 }

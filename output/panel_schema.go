@@ -1,7 +1,6 @@
 package output
 
 import (
-	"fmt"
 	"strconv"
 
 	"github.com/parquet-go/parquet-go"
@@ -15,6 +14,10 @@ const (
 	keyBlock      = "panel.block"
 	keyPrecision  = "panel.precision"
 )
+
+// createdBy is the program's name in a file's footer. Its version belongs to the
+// provenance.
+const createdBy = "cistern"
 
 // panelFormat is what all parts of a panel share: columns and writer options.
 // Options are set by functions: the library's option structs lose fields.
@@ -48,30 +51,29 @@ func PanelColumns(currency string) []*Column {
 // newPanelFormat builds schema, encodings and footer of a panel.
 func newPanelFormat(o PanelOptions) (*panelFormat, error) {
 	columns := PanelColumns(o.Currency)
-	meta, err := metadata(columns, o.Provenance)
+	meta, err := panelMetadata(o)
 	if err != nil {
 		return nil, err
-	}
-	for k, v := range map[string]string{
-		keyFirst: "", keyHouseholds: "", // set for every part
-		keyBlock: strconv.Itoa(o.Block), keyPrecision: o.Precision.String(),
-	} {
-		if _, taken := meta[k]; taken {
-			return nil, fmt.Errorf("output: provenance key %q is taken", k)
-		}
-		meta[k] = v
 	}
 	f := &panelFormat{o: o, options: []parquet.WriterOption{
 		parquet.NewSchema("panel", panelSchema(columns, o.Precision)),
 		parquet.Compression(&zstd.Codec{Level: zstd.SpeedFastest}),
 		parquet.WriteBufferSize(1 << 20),
-		parquet.CreatedBy("cistern", "", ""),
+		parquet.CreatedBy(createdBy, "", ""),
 		parquet.SortingWriterConfig(parquet.SortingColumns(parquet.Ascending("household"), parquet.Ascending("age"))),
 	}}
 	for k, v := range meta { // the library sorts them by key
 		f.options = append(f.options, parquet.KeyValueMetadata(k, v))
 	}
 	return f, nil
+}
+
+// panelMetadata returns a part's footer, its households left open.
+func panelMetadata(o PanelOptions) (map[string]string, error) {
+	return metadata(PanelColumns(o.Currency), map[string]string{
+		keyFirst: "", keyHouseholds: "",
+		keyBlock: strconv.Itoa(o.Block), keyPrecision: o.Precision.String(),
+	}, o.Provenance)
 }
 
 // panelSchema gives every column its type and encoding: differences for ids and

@@ -191,19 +191,21 @@ func (t *Table) Validate() error {
 }
 
 // metadata returns the footer of a Parquet file that holds columns: the unit
-// and the meaning of each, and the provenance as given. A provenance key that
-// would hide one of ours is an error.
-func metadata(columns []*Column, provenance map[string]string) (map[string]string, error) {
+// and the meaning of each, and the entries of all the maps. A key that appears
+// twice is an error.
+func metadata(columns []*Column, entries ...map[string]string) (map[string]string, error) {
 	m := map[string]string{}
 	for _, c := range columns {
 		m["column."+c.Name+".unit"] = c.Unit
 		m["column."+c.Name+".meaning"] = c.Meaning
 	}
-	for _, k := range slices.Sorted(maps.Keys(provenance)) {
-		if _, taken := m[k]; taken || k == "" {
-			return nil, fmt.Errorf("output: provenance key %q is empty or taken", k)
+	for _, e := range entries {
+		for _, k := range slices.Sorted(maps.Keys(e)) {
+			if _, taken := m[k]; taken || k == "" {
+				return nil, fmt.Errorf("output: provenance key %q is empty or taken", k)
+			}
+			m[k] = e[k]
 		}
-		m[k] = provenance[k]
 	}
 	return m, nil
 }

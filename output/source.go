@@ -1,0 +1,175 @@
+package output
+
+import (
+	"errors"
+	"fmt"
+	"io"
+	"os"
+
+	"github.com/parquet-go/parquet-go"
+)
+
+// A Source is an open Parquet file of flat columns, one of this package's own
+// as a rule: a panel's part or a table. Columns are read one at a time, a row
+// group at a time, which is what statistics over large panels need.
+//
+// A Source is not safe for concurrent use; open the file once a goroutine.
+type Source struct {
+	path    string
+	f       *os.File
+	file    *parquet.File
+	columns map[string]sourceColumn
+	names   []string
+}
+
+// sourceColumn is where a column stands and what it is.
+type sourceColumn struct {
+	index    int
+	kind     Kind
+	optional bool
+}
+
+// OpenParquet opens the file path. A column that is neither text, bool, integer
+// nor floating point, or is nested, is an error.
+func OpenParquet(path string) (*Source, error) {
+	f, err := os.Open(path)
+	if err != nil {
+		return nil, fmt.Errorf("output: %w", err)
+	}
+	s := &Source{path: path, f: f, columns: map[string]sourceColumn{}}
+	if err := s.open(); err != nil {
+		return nil, fmt.Errorf("output: %s: %w", path, errors.Join(err, f.Close()))
+	}
+	return s, nil
+}
+
+func (s *Source) open() error {
+	info, err := s.f.Stat()
+	if err != nil {
+		return err
+	}
+	s.file, err = parquet.OpenFile(s.f, info.Size(), parquet.SkipPageIndex(true), parquet.SkipBloomFilters(true))
+	if err != nil {
+		return err
+	}
+	for i, c := range s.file.Root().Columns() {
+		if !c.Leaf() || c.Repeated() {
+			return fmt.Errorf("column %s is nested", c.Name())
+		}
+		kind := Int
+		switch c.Type().Kind() {
+		case parquet.ByteArray:
+			kind = String
+		case parquet.Float, parquet.Double:
+			kind = Float
+		case parquet.Boolean, parquet.Int32, parquet.Int64:
+		default:
+			return fmt.Errorf("column %s has type %s", c.Name(), c.Type())
+		}
+		s.columns[c.Name()] = sourceColumn{index: i, kind: kind, optional: c.Optional()}
+		s.names = append(s.names, c.Name())
+	}
+	return nil
+}
+
+// Close closes the file.
+func (s *Source) Close() error { return s.f.Close() }
+
+// Names returns the columns' names in order.
+func (s *Source) Names() []string { return s.names }
+
+// Rows returns the number of rows in the file.
+func (s *Source) Rows() int64 { return s.file.NumRows() }
+
+// Groups returns the number of row groups.
+func (s *Source) Groups() int { return len(s.file.RowGroups()) }
+
+// Metadata returns the footer's key-value pairs: units, meanings, provenance.
+func (s *Source) Metadata() map[string]string {
+	m := map[string]string{}
+	for _, kv := range s.file.Metadata().KeyValueMetadata {
+		m[kv.Key] = kv.Value
+	}
+	return m
+}
+
+// NewColumn returns an empty column for the file's column name, with the unit
+// and meaning that stand in the footer.
+func (s *Source) NewColumn(name string) (*Column, error) {
+	sc, ok := s.columns[name]
+	if !ok {
+		return nil, fmt.Errorf("output: %s has no column %s", s.path, name)
+	}
+	unit, _ := s.file.Lookup("column." + name + ".unit")
+	meaning, _ := s.file.Lookup("column." + name + ".meaning")
+	return &Column{Name: name, Kind: sc.kind, Unit: unit, Meaning: meaning}, nil
+}
+
+// ReadColumn appends the values of row group g to c, a column made by NewColumn
+// and perhaps emptied by Reset since. Floats of either width become float64,
+// bools become 0 and 1. A damaged file is an error.
+func (s *Source) ReadColumn(g int, c *Column) (err error) {
+	defer func() {
+		if r := recover(); r != nil { // the library panics on some damaged pages
+			err = fmt.Errorf("%v", r)
+		}
+		if err != nil {
+			err = fmt.Errorf("output: %s: column %s: %w", s.path, c.Name, err)
+		}
+	}()
+	group := s.file.RowGroups()[g]
+	sc, before := s.columns[c.Name], c.Len()
+	pages := group.ColumnChunks()[sc.index].Pages()
+	defer func() { err = errors.Join(err, pages.Close()) }()
+	for {
+		page, err := pages.ReadPage()
+		if errors.Is(err, io.EOF) {
+			break
+		}
+		if err != nil {
+			return err
+		}
+		err = c.readPage(page, sc.optional)
+		parquet.Release(page)
+		if err != nil {
+			return err
+		}
+	}
+	if got := int64(c.Len() - before); got != group.NumRows() {
+		return fmt.Errorf("%d values in row group %d, want %d", got, g, group.NumRows())
+	}
+	return nil
+}
+
+// ReadTable reads the whole file path into memory.
+func ReadTable(path string) (*Table, error) {
+	s, err := OpenParquet(path)
+	if err != nil {
+		return nil, err
+	}
+	defer func() { _ = s.Close() }()
+	t := &Table{Name: s.file.Schema().Name(), Provenance: s.Metadata()}
+	for _, name := range s.names {
+		c, err := s.NewColumn(name)
+		if err != nil {
+			return nil, err
+		}
+		for g := range s.Groups() {
+			if err := s.ReadColumn(g, c); err != nil {
+				return nil, err
+			}
+		}
+		delete(t.Provenance, "column."+name+".unit")
+		delete(t.Provenance, "column."+name+".meaning")
+		t.Columns = append(t.Columns, c)
+	}
+	for i := 1; ; i++ {
+		key := fmt.Sprintf("note.%d", i)
+		note, ok := t.Provenance[key]
+		if !ok {
+			return t, t.Validate()
+		}
+		t.Notes = append(t.Notes, note)
+		delete(t.Provenance, key)
+	}
+}
