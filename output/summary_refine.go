@@ -1,0 +1,314 @@
+package output
+
+import (
+	"cmp"
+	"math/bits"
+	"slices"
+	"sync/atomic"
+)
+
+// refinement finds order statistics that lie in known bins, pass by pass. A
+// wanted rank belongs to an interval, all keys that begin with a prefix; a pass
+// either counts the interval's rows by the next bits, which shortens the
+// interval, or collects them, which ends the search. Intervals of few rows are
+// collected as far as memory allows.
+type refinement struct {
+	targets []target
+	wanted  []wanted // ordered by target, variable and rank
+	bits    int      // of the prefixes in this pass
+	digit   int      // further bits counted in this pass
+	nodes   []node   // of all passes; 0 is unused
+	places  map[place]int32
+	finders []finder // [cell·variables + variable]
+	held    [][]kept // by worker
+
+	keepRows, countBytes int64 // budgets of a pass
+	bins                 [][variables][]bin
+}
+
+// wanted is one order statistic: the rank-th of a variable in a target.
+type wanted struct {
+	target, variable int
+	rank             int64
+	prefix           uint64
+	rest             int64 // rank within the interval, from 1
+	done             bool
+	value            uint64 // key, once done
+}
+
+// place is an interval of one cell.
+type place struct {
+	cell, variable int32
+	prefix         uint64
+}
+
+// node is an interval of one cell: to be counted or collected in this pass, or
+// the way to shorter intervals.
+type node struct {
+	collect  bool
+	expected uint64 // rows known to be there
+	shift    uint8  // of the digit that is counted or leads on
+	counts   []uint32
+	or, and  uint64  // of all keys counted: equal where they are one value
+	children []int32 // nodes by digit, 0 none; nil: leads nowhere
+	keys     []uint64
+}
+
+// finder leads from a key to the first node of a cell and variable.
+type finder struct {
+	index *[1 << pageBits]uint16
+	pages [][1 << subBits]int32
+}
+
+// kept is a collected key.
+type kept struct {
+	node int32
+	key  uint64
+}
+
+// beginRefinement ends the first pass: Gini coefficients from the bins, and the
+// bins of all wanted ranks for the next pass.
+func (s *Summary) beginRefinement() (more bool, err error) {
+	r := &refinement{
+		targets: s.targets, bits: binBits, finders: make([]finder, s.cells*variables), nodes: make([]node, 1),
+		held: make([][]kept, s.o.Workers), bins: s.hist.merge(s.cells),
+		keepRows: s.o.MemoryBudget / 4 / 32, countBytes: s.o.MemoryBudget / 4,
+	}
+	s.hist = nil
+	s.refine = r
+	for k := range s.results {
+		t, v := &s.targets[k/variables], k%variables
+		result := &s.results[k]
+		if len(result.quantiles) == 0 && !t.wantsGini() {
+			continue
+		}
+		var bins []bin
+		for _, c := range t.cells {
+			bins = append(bins, r.bins[c][v]...)
+		}
+		if len(t.cells) > 1 {
+			bins = addUp(bins)
+		}
+		if t.wantsGini() {
+			result.setGini(bins)
+		}
+		r.want(k, bins, result)
+	}
+	return r.prepare(), nil
+}
+
+// want enters the ranks that the quantiles of a result are made of.
+func (r *refinement) want(k int, bins []bin, result *valueResult) {
+	var n int64
+	for _, b := range bins {
+		n += int64(b.n)
+	}
+	var ranks []int64
+	for _, q := range result.quantiles {
+		ranks = append(ranks, q.ranks(n)...)
+	}
+	slices.Sort(ranks)
+	var below int64
+	i := 0
+	for _, rank := range slices.Compact(ranks) {
+		for below+int64(bins[i].n) < rank {
+			below += int64(bins[i].n)
+			i++
+		}
+		r.wanted = append(r.wanted, wanted{target: k / variables, variable: k % variables, rank: rank, prefix: bins[i].prefix, rest: rank - below})
+	}
+}
+
+// ranks lists the order statistics of n rows that a quantile needs.
+func (q *quantileResult) ranks(n int64) []int64 {
+	ranks := []int64{q.j}
+	if q.g > 0 {
+		ranks = append(ranks, q.j+1)
+	}
+	if q.lower >= 1 {
+		ranks = append(ranks, q.lower)
+	}
+	if q.upper <= n {
+		ranks = append(ranks, q.upper)
+	}
+	return ranks
+}
+
+// prepare makes the nodes of the next pass and reports whether there are any.
+func (r *refinement) prepare() bool {
+	fresh := map[place]uint64{} // rows of every interval of a cell
+	rows := map[place]uint64{}  // the same over cells, cell −1
+	for i := range r.wanted {
+		w := &r.wanted[i]
+		if w.done {
+			continue
+		}
+		if r.bits == 64 {
+			w.done, w.value = true, w.prefix
+			continue
+		}
+		for _, c := range r.targets[w.target].cells {
+			p := place{int32(c), int32(w.variable), w.prefix}
+			if _, known := fresh[p]; known {
+				continue
+			}
+			n := r.rowsAt(p)
+			fresh[p] = n
+			p.cell = -1
+			rows[p] += n
+		}
+	}
+	for i := range r.nodes {
+		r.nodes[i].counts, r.nodes[i].keys, r.nodes[i].collect = nil, nil, false
+	}
+	r.bins = nil
+	r.place(fresh, r.choose(rows))
+	return len(r.places) > 0
+}
+
+// rowsAt returns how many rows of a cell the last pass found in an interval.
+func (r *refinement) rowsAt(p place) uint64 {
+	if r.bins != nil {
+		bins := r.bins[p.cell][p.variable]
+		i, found := slices.BinarySearchFunc(bins, p.prefix, func(b bin, prefix uint64) int { return cmp.Compare(b.prefix, prefix) })
+		if !found {
+			return 0
+		}
+		return bins[i].n
+	}
+	parent := r.places[place{p.cell, p.variable, p.prefix >> r.digit}]
+	if parent == 0 {
+		return 0
+	}
+	return uint64(r.nodes[parent].counts[p.prefix&(1<<r.digit-1)])
+}
+
+// choose returns the intervals to collect, those of fewest rows first.
+func (r *refinement) choose(rows map[place]uint64) map[place]bool {
+	order := make([]place, 0, len(rows))
+	for p := range rows {
+		order = append(order, p)
+	}
+	slices.SortFunc(order, func(a, b place) int {
+		return cmp.Or(cmp.Compare(rows[a], rows[b]), cmp.Compare(a.variable, b.variable), cmp.Compare(a.prefix, b.prefix))
+	})
+	collect := map[place]bool{}
+	left := r.keepRows
+	for _, p := range order {
+		if left -= int64(rows[p]); left < 0 {
+			break
+		}
+		collect[p] = true
+	}
+	return collect
+}
+
+// place makes a node for every interval of a cell and hangs it where add will
+// find it.
+func (r *refinement) place(fresh map[place]uint64, collect map[place]bool) {
+	order := make([]place, 0, len(fresh))
+	counting := int64(0)
+	for p, n := range fresh {
+		if n == 0 {
+			continue
+		}
+		order = append(order, p)
+		if !collect[place{-1, p.variable, p.prefix}] {
+			counting++
+		}
+	}
+	slices.SortFunc(order, func(a, b place) int {
+		return cmp.Or(cmp.Compare(a.cell, b.cell), cmp.Compare(a.variable, b.variable), cmp.Compare(a.prefix, b.prefix))
+	})
+	parents, parentDigit := r.places, r.digit
+	r.digit = 4
+	if counting > 0 {
+		r.digit = max(4, min(14, bits.Len64(uint64(r.countBytes/4/counting))-1))
+	}
+	r.digit = min(r.digit, 64-r.bits)
+	r.places = make(map[place]int32, len(order))
+	for _, p := range order {
+		id := int32(len(r.nodes))
+		nd := node{collect: collect[place{-1, p.variable, p.prefix}], expected: fresh[p], shift: uint8(64 - r.bits - r.digit), and: ^uint64(0)}
+		if !nd.collect {
+			nd.counts = make([]uint32, 1<<r.digit)
+		}
+		r.nodes = append(r.nodes, nd)
+		r.places[p] = id
+		if parents == nil {
+			r.finders[int(p.cell)*variables+int(p.variable)].hang(p.prefix, id)
+			continue
+		}
+		up := &r.nodes[parents[place{p.cell, p.variable, p.prefix >> parentDigit}]]
+		if up.children == nil {
+			up.children = make([]int32, 1<<parentDigit)
+		}
+		up.children[p.prefix&(1<<parentDigit-1)] = id
+	}
+}
+
+func (f *finder) hang(prefix uint64, id int32) {
+	if f.index == nil {
+		f.index = new([1 << pageBits]uint16)
+	}
+	page := prefix >> subBits
+	if f.index[page] == 0 {
+		f.pages = append(f.pages, [1 << subBits]int32{})
+		f.index[page] = uint16(len(f.pages))
+	}
+	f.pages[f.index[page]-1][prefix&(1<<subBits-1)] = id
+}
+
+// add takes the rows of a block in a later pass.
+func (r *refinement) add(worker int, rows *SummaryRows, cellOf func(Span) int) error {
+	for _, sp := range rows.Spans {
+		first := cellOf(sp) * variables
+		r.scan(worker, &r.finders[first+income], rows.Income[sp.From:sp.To])
+		r.scan(worker, &r.finders[first+consumption], rows.Consumption[sp.From:sp.To])
+		r.scan(worker, &r.finders[first+assets], rows.Assets[sp.From:sp.To])
+	}
+	if int64(len(r.held[worker])) > r.keepRows {
+		return errPassesDiffer
+	}
+	return nil
+}
+
+func (r *refinement) scan(worker int, f *finder, column []float64) {
+	if f.index == nil {
+		return
+	}
+	held := r.held[worker]
+	for _, x := range column {
+		k := key(x)
+		page := f.index[k>>(64-pageBits)]
+		if page == 0 {
+			continue
+		}
+		id := f.pages[page-1][k>>binShift&(1<<subBits-1)]
+		for id != 0 {
+			nd := &r.nodes[id]
+			if nd.children != nil {
+				id = nd.children[k>>nd.shift&uint64(len(nd.children)-1)]
+				continue
+			}
+			if nd.counts != nil {
+				nd.count(k)
+			} else if nd.collect {
+				held = append(held, kept{id, k})
+			}
+			break
+		}
+	}
+	r.held[worker] = held
+}
+
+// count adds a row; several workers may do so at once.
+func (nd *node) count(k uint64) {
+	atomic.AddUint32(&nd.counts[k>>nd.shift&uint64(len(nd.counts)-1)], 1)
+	if or := atomic.LoadUint64(&nd.or); or|k != or {
+		atomic.OrUint64(&nd.or, k)
+	}
+	if and := atomic.LoadUint64(&nd.and); and&k != and {
+		atomic.AndUint64(&nd.and, k)
+	}
+}
