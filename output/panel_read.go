@@ -35,10 +35,8 @@ func Finished(dir string) ([]Part, error) {
 	}
 	var parts []Part
 	for _, e := range entries {
-		number, isPart := strings.CutPrefix(e.Name(), "part-")
-		number, isParquet := strings.CutSuffix(number, ".parquet")
-		k, err := strconv.ParseInt(number, 10, 64)
-		if !isPart || !isParquet || err != nil || PartName(k) != e.Name() {
+		k, isPart := partIndex(e.Name())
+		if !isPart {
 			continue
 		}
 		part, err := readPart(filepath.Join(dir, e.Name()), k)
@@ -49,6 +47,14 @@ func Finished(dir string) ([]Part, error) {
 	}
 	slices.SortFunc(parts, func(a, b Part) int { return int(a.Index - b.Index) })
 	return parts, nil
+}
+
+// partIndex returns k for the file name of part k.
+func partIndex(name string) (k int64, isPart bool) {
+	number, hasPrefix := strings.CutPrefix(name, "part-")
+	number, hasSuffix := strings.CutSuffix(number, ".parquet")
+	k, err := strconv.ParseInt(number, 10, 64)
+	return k, hasPrefix && hasSuffix && err == nil && PartName(k) == name
 }
 
 // readPart reads a part's footer.
