@@ -69,7 +69,7 @@ type SummaryOptions struct {
 	MemoryBudget      int64       // bytes for values held at a time; 0 = DefaultMemoryBudget
 }
 
-// DefaultMemoryBudget is 256 MiB: enough to hold all values of about 140,000
+// DefaultMemoryBudget is 256 MiB: enough to hold all values of about 100,000
 // households over 76 ages.
 const DefaultMemoryBudget = 256 << 20
 

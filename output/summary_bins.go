@@ -28,7 +28,7 @@ type binPage [1 << subBits]struct{ n, offset uint64 }
 // binSet counts one variable in one cell.
 type binSet struct {
 	index *[1 << pageBits]uint16 // place of a page plus 1; 0: none
-	pages []*binPage
+	pages []binPage
 }
 
 func (b *binSet) add(column []float64) {
@@ -39,7 +39,7 @@ func (b *binSet) add(column []float64) {
 		k := key(x)
 		p := b.index[k>>(64-pageBits)]
 		if p == 0 {
-			b.pages = append(b.pages, new(binPage))
+			b.pages = append(b.pages, binPage{})
 			p = uint16(len(b.pages))
 			b.index[k>>(64-pageBits)] = p
 		}

@@ -108,9 +108,11 @@ func (c *cellSums) add(r *SummaryRows, from, to int) {
 	}
 	if len(r.AtLimit) > 0 {
 		for k, v := range r.AtLimit[from:to][:len(household)] {
+			var one int64
 			if v {
-				c.limit[household[k]&(groupsJackknife-1)]++
+				one = 1 // compiled without a jump
 			}
+			c.limit[household[k]&(groupsJackknife-1)] += one
 		}
 	}
 }

@@ -4,7 +4,7 @@ import (
 	"cmp"
 	"math/bits"
 	"slices"
-	"sync/atomic"
+	"sync"
 )
 
 // refinement finds order statistics that lie in known bins, pass by pass. A
@@ -14,10 +14,11 @@ import (
 // collected as far as memory allows.
 type refinement struct {
 	targets []target
-	wanted  []wanted // ordered by target, variable and rank
-	bits    int      // of the prefixes in this pass
-	digit   int      // further bits counted in this pass
-	nodes   []node   // of all passes; 0 is unused
+	wanted  []wanted   // ordered by target, variable and rank
+	bits    int        // of the prefixes in this pass
+	digit   int        // further bits counted in this pass
+	nodes   []node     // of all passes; 0 is unused
+	inside  []contents // of the same nodes
 	places  map[place]int32
 	finders []finder // [cell·variables + variable]
 	held    [][]kept // by worker
@@ -43,19 +44,26 @@ type place struct {
 }
 
 // node is an interval of one cell: to be counted or collected in this pass, or
-// the way to shorter intervals.
+// the way to shorter intervals. It fills one cache line.
 type node struct {
-	collect  bool
-	expected uint64 // rows known to be there
-	shift    uint8  // of the digit that is counted or leads on
-	counts   []uint32
-	or, and  uint64  // of all keys counted: equal where they are one value
-	children []int32 // nodes by digit, 0 none; nil: leads nowhere
-	keys     []uint64
+	counts      []uint32 // by digit, where counted
+	children    []int32  // nodes by digit, 0 none; nil: leads nowhere
+	first       uint64   // key of the first row counted
+	shift       uint8    // of the digit that is counted or leads on
+	collect     bool
+	seen, mixed bool // rows were counted; they have different keys
 }
 
-// finder leads from a key to the first node of a cell and variable.
+// contents is what a node must hold and holds.
+type contents struct {
+	expected uint64   // rows known to be there
+	keys     []uint64 // collected
+}
+
+// finder leads from a key to the first node of a cell and variable. Its lock
+// guards all nodes below.
 type finder struct {
+	mu    sync.Mutex
 	index *[1 << pageBits]uint16
 	pages [][1 << subBits]int32
 }
@@ -70,7 +78,7 @@ type kept struct {
 // bins of all wanted ranks for the next pass.
 func (s *Summary) beginRefinement() (more bool, err error) {
 	r := &refinement{
-		targets: s.targets, bits: binBits, finders: make([]finder, s.cells*variables), nodes: make([]node, 1),
+		targets: s.targets, bits: binBits, finders: make([]finder, s.cells*variables), nodes: make([]node, 1), inside: make([]contents, 1),
 		held: make([][]kept, s.o.Workers), bins: s.hist.merge(s.cells),
 		keepRows: s.o.MemoryBudget / 4 / 32, countBytes: s.o.MemoryBudget / 4,
 	}
@@ -159,10 +167,11 @@ func (r *refinement) prepare() bool {
 		}
 	}
 	for i := range r.nodes {
-		r.nodes[i].counts, r.nodes[i].keys, r.nodes[i].collect = nil, nil, false
+		r.nodes[i].counts, r.inside[i].keys, r.nodes[i].collect = nil, nil, false
 	}
 	r.bins = nil
-	r.place(fresh, r.choose(rows))
+	collect, left := r.choose(rows)
+	r.place(fresh, collect, left)
 	return len(r.places) > 0
 }
 
@@ -183,8 +192,9 @@ func (r *refinement) rowsAt(p place) uint64 {
 	return uint64(r.nodes[parent].counts[p.prefix&(1<<r.digit-1)])
 }
 
-// choose returns the intervals to collect, those of fewest rows first.
-func (r *refinement) choose(rows map[place]uint64) map[place]bool {
+// choose returns the intervals to collect, those of fewest rows first, and the
+// number of rows in the others.
+func (r *refinement) choose(rows map[place]uint64) (collect map[place]bool, left int64) {
 	order := make([]place, 0, len(rows))
 	for p := range rows {
 		order = append(order, p)
@@ -192,20 +202,33 @@ func (r *refinement) choose(rows map[place]uint64) map[place]bool {
 	slices.SortFunc(order, func(a, b place) int {
 		return cmp.Or(cmp.Compare(rows[a], rows[b]), cmp.Compare(a.variable, b.variable), cmp.Compare(a.prefix, b.prefix))
 	})
-	collect := map[place]bool{}
-	left := r.keepRows
+	collect = map[place]bool{}
+	room := r.keepRows
 	for _, p := range order {
-		if left -= int64(rows[p]); left < 0 {
-			break
+		if room -= int64(rows[p]); room >= 0 {
+			collect[p] = true
+		} else {
+			left += int64(rows[p])
 		}
-		collect[p] = true
 	}
-	return collect
+	return collect, left
+}
+
+// chooseDigit returns how many bits to count: as many as should leave few
+// enough rows to collect in the next pass (some four digits of an interval are
+// wanted), as far as the memory for counting nodes goes, and at least 4.
+func (r *refinement) chooseDigit(counting, rows int64) int {
+	if counting == 0 {
+		return min(4, 64-r.bits)
+	}
+	need := bits.Len64(uint64(4*rows/max(1, r.keepRows))) + 1
+	room := bits.Len64(uint64(r.countBytes/4/counting)) - 1
+	return min(max(4, min(need, room)), 64-r.bits)
 }
 
 // place makes a node for every interval of a cell and hangs it where add will
 // find it.
-func (r *refinement) place(fresh map[place]uint64, collect map[place]bool) {
+func (r *refinement) place(fresh map[place]uint64, collect map[place]bool, left int64) {
 	order := make([]place, 0, len(fresh))
 	counting := int64(0)
 	for p, n := range fresh {
@@ -221,19 +244,16 @@ func (r *refinement) place(fresh map[place]uint64, collect map[place]bool) {
 		return cmp.Or(cmp.Compare(a.cell, b.cell), cmp.Compare(a.variable, b.variable), cmp.Compare(a.prefix, b.prefix))
 	})
 	parents, parentDigit := r.places, r.digit
-	r.digit = 4
-	if counting > 0 {
-		r.digit = max(4, min(14, bits.Len64(uint64(r.countBytes/4/counting))-1))
-	}
-	r.digit = min(r.digit, 64-r.bits)
+	r.digit = r.chooseDigit(counting, left)
 	r.places = make(map[place]int32, len(order))
 	for _, p := range order {
 		id := int32(len(r.nodes))
-		nd := node{collect: collect[place{-1, p.variable, p.prefix}], expected: fresh[p], shift: uint8(64 - r.bits - r.digit), and: ^uint64(0)}
+		nd := node{collect: collect[place{-1, p.variable, p.prefix}], shift: uint8(64 - r.bits - r.digit)}
 		if !nd.collect {
 			nd.counts = make([]uint32, 1<<r.digit)
 		}
 		r.nodes = append(r.nodes, nd)
+		r.inside = append(r.inside, contents{expected: fresh[p]})
 		r.places[p] = id
 		if parents == nil {
 			r.finders[int(p.cell)*variables+int(p.variable)].hang(p.prefix, id)
@@ -250,13 +270,14 @@ func (r *refinement) place(fresh map[place]uint64, collect map[place]bool) {
 func (f *finder) hang(prefix uint64, id int32) {
 	if f.index == nil {
 		f.index = new([1 << pageBits]uint16)
+		f.pages = make([][1 << subBits]int32, 1) // a page without nodes for all others
 	}
 	page := prefix >> subBits
 	if f.index[page] == 0 {
-		f.pages = append(f.pages, [1 << subBits]int32{})
 		f.index[page] = uint16(len(f.pages))
+		f.pages = append(f.pages, [1 << subBits]int32{})
 	}
-	f.pages[f.index[page]-1][prefix&(1<<subBits-1)] = id
+	f.pages[f.index[page]][prefix&(1<<subBits-1)] = id
 }
 
 // add takes the rows of a block in a later pass.
@@ -273,42 +294,54 @@ func (r *refinement) add(worker int, rows *SummaryRows, cellOf func(Span) int) e
 	return nil
 }
 
+// scan takes a column of one cell: first what falls into a bin that matters, a
+// few hundred rows at a time and without jumps, then down the nodes.
 func (r *refinement) scan(worker int, f *finder, column []float64) {
 	if f.index == nil {
 		return
 	}
-	held := r.held[worker]
-	for _, x := range column {
-		k := key(x)
-		page := f.index[k>>(64-pageBits)]
-		if page == 0 {
-			continue
+	f.mu.Lock()
+	defer f.mu.Unlock()
+	var hits [512]kept
+	for len(column) > 0 {
+		part := column[:min(len(column), len(hits))]
+		column = column[len(part):]
+		n := 0
+		for _, x := range part {
+			k := key(x)
+			id := f.pages[f.index[k>>(64-pageBits)]][k>>binShift&(1<<subBits-1)]
+			hits[n&(len(hits)-1)] = kept{id, k}
+			n += int(uint32(-id) >> 31) // 1 where id > 0
 		}
-		id := f.pages[page-1][k>>binShift&(1<<subBits-1)]
-		for id != 0 {
-			nd := &r.nodes[id]
-			if nd.children != nil {
-				id = nd.children[k>>nd.shift&uint64(len(nd.children)-1)]
-				continue
-			}
-			if nd.counts != nil {
-				nd.count(k)
-			} else if nd.collect {
-				held = append(held, kept{id, k})
-			}
-			break
+		for _, h := range hits[:n] {
+			r.descend(worker, h)
 		}
 	}
-	r.held[worker] = held
 }
 
-// count adds a row; several workers may do so at once.
+// descend counts or collects a row where its key ends.
+func (r *refinement) descend(worker int, h kept) {
+	for h.node != 0 {
+		nd := &r.nodes[h.node]
+		if nd.children == nil {
+			if nd.counts != nil {
+				nd.count(h.key)
+			} else if nd.collect {
+				r.held[worker] = append(r.held[worker], h)
+			}
+			return
+		}
+		h.node = nd.children[h.key>>nd.shift&uint64(len(nd.children)-1)]
+	}
+}
+
 func (nd *node) count(k uint64) {
-	atomic.AddUint32(&nd.counts[k>>nd.shift&uint64(len(nd.counts)-1)], 1)
-	if or := atomic.LoadUint64(&nd.or); or|k != or {
-		atomic.OrUint64(&nd.or, k)
+	nd.counts[k>>nd.shift&uint64(len(nd.counts)-1)]++
+	if nd.mixed {
+		return
 	}
-	if and := atomic.LoadUint64(&nd.and); and&k != and {
-		atomic.AndUint64(&nd.and, k)
+	if !nd.seen {
+		nd.seen, nd.first = true, k
 	}
+	nd.mixed = nd.first != k
 }

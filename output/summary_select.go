@@ -41,21 +41,20 @@ func (r *refinement) gather() error {
 		}
 	}
 	for _, id := range r.places {
-		nd := &r.nodes[id]
-		for _, n := range nd.counts {
+		for _, n := range r.nodes[id].counts {
 			found[id] += uint64(n)
 		}
-		if found[id] != nd.expected {
+		if found[id] != r.inside[id].expected {
 			return errPassesDiffer
 		}
-		if nd.collect {
-			nd.keys = make([]uint64, 0, nd.expected)
+		if r.nodes[id].collect {
+			r.inside[id].keys = make([]uint64, 0, found[id])
 		}
 	}
 	for worker, held := range r.held {
 		for _, k := range held {
-			nd := &r.nodes[k.node]
-			nd.keys = append(nd.keys, k.key)
+			in := &r.inside[k.node]
+			in.keys = append(in.keys, k.key)
 		}
 		r.held[worker] = held[:0]
 	}
@@ -73,7 +72,6 @@ type intervalPool struct {
 
 func (r *refinement) pool(w *wanted) intervalPool {
 	p := intervalPool{prefix: w.prefix}
-	or, and := uint64(0), ^uint64(0)
 	for _, c := range r.targets[w.target].cells {
 		id := r.places[place{int32(c), int32(w.variable), w.prefix}]
 		if id == 0 {
@@ -81,20 +79,19 @@ func (r *refinement) pool(w *wanted) intervalPool {
 		}
 		nd := &r.nodes[id]
 		if nd.collect {
-			p.keys = append(p.keys, nd.keys...)
+			p.keys = append(p.keys, r.inside[id].keys...)
 			continue
 		}
 		if p.counts == nil {
 			p.counts = make([]uint64, len(nd.counts))
+			p.single, p.value = true, nd.first
 		}
+		p.single = p.single && !nd.mixed && nd.first == p.value
 		for i, n := range nd.counts {
 			p.counts[i] += uint64(n)
 		}
-		or |= nd.or
-		and &= nd.and
 	}
 	slices.Sort(p.keys)
-	p.single, p.value = p.counts != nil && or == and, or
 	return p
 }
 

@@ -1,0 +1,90 @@
+package output
+
+import (
+	"fmt"
+	"testing"
+)
+
+// BenchmarkSummaryAdd measures what a row costs in each pass: values held in
+// memory (with the table at the end left out), the first of several passes, and
+// a later one.
+func BenchmarkSummaryAdd(b *testing.B) {
+	w := town{households: 4096, first: 25, last: 100, groups: []string{"dockers", "clerks", "pilots"}, unit: 4096, mortality: 0.01}
+	block := w.block(0)
+	for _, pass := range []string{"held", "first", "later"} {
+		b.Run("pass="+pass, func(b *testing.B) {
+			o := w.options()
+			if pass != "held" {
+				o.MemoryBudget = 64 << 20
+				o.Households = 1 << 24
+			}
+			s, err := NewSummary(o)
+			if err != nil {
+				b.Fatal(err)
+			}
+			add := func() {
+				commit, err := s.Add(0, block)
+				if err == nil && commit != nil {
+					s.next = 0
+					s.store.blocks = s.store.blocks[:0]
+					err = commit()
+				}
+				if err != nil {
+					b.Fatal(err)
+				}
+			}
+			if pass == "later" {
+				for range 64 {
+					add()
+				}
+			}
+			if pass != "held" {
+				s.store.end = 0 // most blocks of a large panel are not held
+			}
+			if pass == "later" {
+				if more, err := s.EndPass(); !more || err != nil {
+					b.Fatal(more, err)
+				}
+			}
+			for b.Loop() {
+				add()
+				if s.refine != nil {
+					s.refine.held[0] = s.refine.held[0][:0]
+				}
+			}
+			b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(b.N)/float64(block.N), "ns/row")
+		})
+	}
+}
+
+// BenchmarkSummaryTable measures the analysis of values held in memory.
+func BenchmarkSummaryTable(b *testing.B) {
+	for _, households := range []int64{4096, 16384} {
+		b.Run(fmt.Sprintf("households=%d", households), func(b *testing.B) {
+			w := town{households: households, first: 25, last: 100, groups: []string{"dockers", "clerks", "pilots"}, unit: 4096, mortality: 0.01}
+			var blocks []*SummaryRows
+			for first := int64(0); first < households; first += w.unit {
+				blocks = append(blocks, w.block(first))
+			}
+			for b.Loop() {
+				s, err := NewSummary(w.options())
+				if err != nil {
+					b.Fatal(err)
+				}
+				for _, rows := range blocks {
+					commit, err := s.Add(0, rows)
+					if err != nil {
+						b.Fatal(err)
+					}
+					if err := commit(); err != nil {
+						b.Fatal(err)
+					}
+				}
+				if _, err := s.EndPass(); err != nil {
+					b.Fatal(err)
+				}
+				s.Table()
+			}
+		})
+	}
+}
