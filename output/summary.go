@@ -165,7 +165,8 @@ type Summary struct {
 	seen    columns       // which optional columns every block had
 	moments []cellSums    // by cell; written by commits only
 	spare   []*blockSums  // partial sums to reuse
-	store   store         // values of all or of the first households
+	store   store         // values of all or of the first households, until the first pass ends
+	sampled int64         // households whose blocks were held
 	hist    *histograms   // pass 1 where values do not fit; nil otherwise
 	refine  *refinement   // later passes
 	next    int64         // id from which the next commit must start
@@ -273,6 +274,7 @@ func (s *Summary) commit(first, past int64, sums *blockSums, held *block) error 
 	}
 	if held != nil {
 		s.store.blocks = append(s.store.blocks, held)
+		s.sampled += held.households
 	}
 	s.give(sums)
 	return nil

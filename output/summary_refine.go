@@ -68,6 +68,10 @@ type finder struct {
 	pages [][1 << subBits]int32
 }
 
+// keptBytes is what a collected key takes at most: with its node, in a slice
+// that has grown, and once more by itself while it is sorted.
+const keptBytes = 48
+
 // kept is a collected key.
 type kept struct {
 	node int32
@@ -80,7 +84,7 @@ func (s *Summary) beginRefinement() (more bool, err error) {
 	r := &refinement{
 		targets: s.targets, bits: binBits, finders: make([]finder, s.cells*variables), nodes: make([]node, 1), inside: make([]contents, 1),
 		held: make([][]kept, s.o.Workers), bins: s.hist.merge(s.cells),
-		keepRows: s.o.MemoryBudget / 4 / 32, countBytes: s.o.MemoryBudget / 4,
+		keepRows: s.o.MemoryBudget / 4 / keptBytes, countBytes: s.o.MemoryBudget / 10,
 	}
 	s.hist = nil
 	s.refine = r

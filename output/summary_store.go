@@ -24,9 +24,10 @@ type store struct {
 
 // block holds the values of one block of households.
 type block struct {
-	spans  []span
-	values [variables][]float64
-	tags   []uint8 // jackknife group of a row
+	spans      []span
+	values     [variables][]float64
+	tags       []uint8 // jackknife group of a row
+	households int64
 }
 
 // span says which cell the rows from ≤ k < to belong to.
@@ -37,9 +38,12 @@ func newBlock(r *SummaryRows, cellOf func(Span) int) *block {
 	for v, column := range [variables][]float64{r.Income, r.Consumption, r.Assets} {
 		b.values[v] = append(make([]float64, 0, r.N), column[:r.N]...)
 	}
+	last := r.First - 1
 	for k, id := range r.Household[:r.N] {
 		b.tags[k] = uint8(id & (groupsJackknife - 1))
+		last = max(last, id)
 	}
+	b.households = last - r.First + 1
 	for _, sp := range r.Spans {
 		if sp.From < sp.To {
 			b.spans = append(b.spans, span{cellOf(sp), sp.From, sp.To})

@@ -63,7 +63,7 @@ func (s *Summary) Table() *Table {
 		}
 	}
 	if bound > 0 {
-		t.Notes = append(t.Notes, fmt.Sprintf("Gini coefficients come from binned values and are at most %.1g off; their errors come from the first %d households.", bound, s.store.end))
+		t.Notes = append(t.Notes, fmt.Sprintf("Gini coefficients come from binned values and are at most %.1g off; their errors come from the first %d households.", bound, s.sampled))
 	}
 	return t
 }
