@@ -1,0 +1,67 @@
+package income
+
+import "math"
+
+// Rouwenhorst discretises by the method of Rouwenhorst (1995, in Frontiers of
+// Business Cycle Research, ed. Cooley) with the parameters of Kopecky and Suen
+// (2010, Review of Economic Dynamics 13): n evenly spaced nodes on
+// ±σ_z·√(n−1), p = (1+ρ)/2, and the transition matrix built up by
+//
+//	Θ_n = p·[Θ 0; 0 0] + (1−p)·[0 Θ; 0 0] + (1−p)·[0 0; Θ 0] + p·[0 0; 0 Θ],
+//
+// interior rows halved. For every n ≥ 2 and every node the conditional mean ρ·z
+// and the conditional variance σ² are exact, the stationary law is
+// Binomial(n−1, ½), and the kurtosis is 3 − 2/(n−1).
+type Rouwenhorst struct {
+	Points int // nodes, 2 to 1000
+}
+
+// Name returns "rouwenhorst".
+func (Rouwenhorst) Name() string { return "rouwenhorst" }
+
+// Discretise implements Discretiser. The cost is O(Points³).
+func (r Rouwenhorst) Discretise(p AR1) (*Chain, error) {
+	if err := validate(p, r.Points, 1); err != nil {
+		return nil, err
+	}
+	if p.InnovationSD == 0 {
+		return Degenerate(), nil
+	}
+	n := r.Points
+	c := &Chain{Nodes: evenly(n, p.StationarySD()*math.Sqrt(float64(n-1)))}
+	stay := (1 + p.Autocorrelation) / 2
+	m := []float64{stay, 1 - stay, 1 - stay, stay}
+	for k := 3; k <= n; k++ {
+		m = widen(m, k, stay)
+	}
+	c.Transition = m
+	return c, nil
+}
+
+// widen builds the k×k matrix from the (k−1)×(k−1) one.
+func widen(m []float64, k int, p float64) []float64 {
+	w := make([]float64, k*k)
+	for i := range k - 1 {
+		for j := range k - 1 {
+			x := m[i*(k-1)+j]
+			w[i*k+j] += p * x
+			w[i*k+j+1] += (1 - p) * x
+			w[(i+1)*k+j] += (1 - p) * x
+			w[(i+1)*k+j+1] += p * x
+		}
+	}
+	for i := k; i < k*(k-1); i++ {
+		w[i] /= 2
+	}
+	return w
+}
+
+// evenly returns n points on [−half, half], symmetric to the bit.
+func evenly(n int, half float64) []float64 {
+	z := make([]float64, n)
+	for i := range n / 2 {
+		z[n-1-i] = half * float64(n-1-2*i) / float64(n-1)
+		z[i] = -z[n-1-i]
+	}
+	return z
+}
