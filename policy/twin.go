@@ -1,0 +1,33 @@
+package policy
+
+import "cistern/income"
+
+// Twin returns the certain twin: the same household with every income shock
+// replaced by its mean at that age, so that the persistent part, the transitory
+// shock and job loss are off while mean income at every age is untouched. What
+// the household saves beyond its twin is precautionary (Leland 1968, Quarterly
+// Journal of Economics 82; Kimball 1990, Econometrica 58).
+func (h Household) Twin() (Household, error) {
+	process := income.Process{
+		FirstAge:   h.FirstAge,
+		Profile:    make([]float64, h.WorkingYears()),
+		Form:       income.Level,
+		Chain:      income.Degenerate(),
+		Initial:    []float64{1},
+		Transitory: income.Transitory{Nodes: 1},
+	}
+	for t := range process.Profile {
+		process.Profile[t] = h.Earnings.Mean(t)
+	}
+	earnings, err := process.Build()
+	if err != nil {
+		return Household{}, err
+	}
+	twin := h
+	twin.Earnings = earnings
+	twin.Pension.FinalEarningsRate, twin.Pension.Flat = 0, 0
+	if h.WorkingYears() < h.Years() {
+		twin.Pension.Flat = h.MeanIncome(h.WorkingYears())
+	}
+	return twin, nil
+}
