@@ -313,6 +313,7 @@ func TestPanelRefuses(t *testing.T) {
 		{"gap in ages", Double, func(r *Rows) { r.Spans[len(r.Spans)-1].Age++; r.Spans[len(r.Spans)-2].Age++ }, "want consecutive"},
 		{"unknown group", Double, func(r *Rows) { r.Spans[0].Group = 2 }, "group 2 of 2"},
 		{"spans leave a gap", Double, func(r *Rows) { r.Spans[1].From++ }, "span of rows"},
+		{"last span is absent", Double, func(r *Rows) { r.Spans = r.Spans[:len(r.Spans)-1] }, "spans cover"},
 		{"too few households", Double, func(r *Rows) { r.Households-- }, "63 households, want 64"},
 		{"first household off the unit", Double, func(r *Rows) { r.First++ }, "want a start at a multiple of 64"},
 	}
@@ -340,15 +341,19 @@ func TestPanelCommitOrder(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	first, err1 := p.Encode(0, g.units[0])
-	second, err2 := p.Encode(0, g.units[1])
-	if err := errors.Join(err1, err2); err != nil {
+	commits := make([]func() error, 3)
+	for i := range commits {
+		if commits[i], err = p.Encode(0, g.units[i]); err != nil {
+			t.Fatal(err)
+		}
+	}
+	if err := commits[0](); err != nil {
 		t.Fatal(err)
 	}
-	if err := second(); err == nil || !strings.Contains(err.Error(), "households from 64 committed where 0 were due") {
+	if err := commits[2](); err == nil || !strings.Contains(err.Error(), "households from 128 committed where 64 were due") {
 		t.Errorf("commit out of order gives %v", err)
 	}
-	if err := first(); err == nil {
+	if err := commits[1](); err == nil {
 		t.Error("a panel goes on after an error")
 	}
 	if err := p.Close(); err == nil {
@@ -356,6 +361,82 @@ func TestPanelCommitOrder(t *testing.T) {
 	}
 	if left := files(t, dir); len(left) != 0 {
 		t.Errorf("%d files left behind", len(left))
+	}
+}
+
+// TestFinishedParts checks what counts as a whole part when the folder is not as
+// a run left it.
+func TestFinishedParts(t *testing.T) {
+	o, dir := testOptions(1000), t.TempDir()
+	if err := write(dir, o, generate(o).units); err != nil {
+		t.Fatal(err)
+	}
+	part := func(k int64) string { return filepath.Join(dir, PartName(k)) }
+	for _, name := range []string{"part-1.parquet", "part-00001.csv", "parts.parquet", ".part-00009.parquet.1-0.partial"} {
+		if err := os.WriteFile(filepath.Join(dir, name), nil, 0o666); err != nil {
+			t.Fatal(err)
+		}
+	}
+	if parts, err := Finished(dir); err != nil || len(parts) != 4 {
+		t.Errorf("%d parts (%v), want 4", len(parts), err)
+	}
+	if err := os.Remove(part(1)); err != nil {
+		t.Fatal(err)
+	}
+	if from, err := o.Resume(dir); err != nil || from != 256 {
+		t.Errorf("with the second part gone, resumes from %d (%v), want 256", from, err)
+	}
+	if err := os.Rename(part(2), part(1)); err != nil {
+		t.Fatal(err)
+	}
+	if _, err := Finished(dir); err == nil || !strings.Contains(err.Error(), "holds 256 households from 512") {
+		t.Errorf("a renamed part gives %v", err)
+	}
+	if err := os.Truncate(part(1), 1000); err != nil {
+		t.Fatal(err)
+	}
+	if _, err := Finished(dir); err == nil || !strings.Contains(err.Error(), PartName(1)) {
+		t.Errorf("a part cut short gives %v", err)
+	}
+	if parts, err := Finished(filepath.Join(dir, "absent")); err != nil || len(parts) != 0 {
+		t.Errorf("an absent folder gives %v, %v", parts, err)
+	}
+}
+
+// TestReadDamaged flips bytes within a part's pages: reading it may succeed or
+// fail, but never takes the program down, and never returns too few values.
+func TestReadDamaged(t *testing.T) {
+	o, dir := testOptions(64), t.TempDir()
+	g := generate(o)
+	if err := write(dir, o, g.units); err != nil {
+		t.Fatal(err)
+	}
+	path := filepath.Join(dir, PartName(0))
+	whole, err := os.ReadFile(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	failed := 0
+	for at := 4; at < len(whole)*3/4; at += 97 {
+		damaged := append([]byte(nil), whole...)
+		damaged[at] ^= 0xff
+		if err := os.WriteFile(path, damaged, 0o666); err != nil {
+			t.Fatal(err)
+		}
+		err := ReadPanel(dir, panelNames, func(u *Table) error {
+			for _, c := range u.Columns {
+				if c.Len() != g.units[0].N {
+					t.Errorf("byte %d damaged: column %s has %d values, want %d", at, c.Name, c.Len(), g.units[0].N)
+				}
+			}
+			return nil
+		})
+		if err != nil {
+			failed++
+		}
+	}
+	if failed == 0 {
+		t.Error("no damage was noticed")
 	}
 }
 

@@ -213,12 +213,23 @@ func TestFolderResume(t *testing.T) {
 		t.Fatal(err)
 	}
 	o := testOptions(300)
+	path, err := f.Path("summary.csv") // announced now, written before the interruption
+	if err == nil {
+		err = WriteFile(path, put("half"))
+	}
+	if err != nil {
+		t.Fatal(err)
+	}
 	if err := write(panel, o, generate(o).units[:4]); err == nil {
 		t.Fatal("an interrupted panel closes")
 	}
 	f = open(t, dir, thisRun, false)
 	if !f.Resumed() {
 		t.Error("the run is not resumed")
+	}
+	// The files announced before the interruption still belong to the run.
+	if got := open(t, dir, thisRun, false).mark.Names; !reflect.DeepEqual(got, []string{"panel/", "summary.csv"}) {
+		t.Errorf("the resumed run has announced %v", got)
 	}
 	writeRun(t, f)
 	a, err1 := ReadRun(whole)
