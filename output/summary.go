@@ -151,8 +151,9 @@ type SummaryRows struct {
 // bins that hold a wanted order statistic, and either counts them by further
 // bits or, when few values are left, collects them (radix selection). Three
 // passes are usual, seven the most. Then the Gini coefficient follows from the
-// counts and sums of the bins, with a bound on its error in the table's notes,
-// and its standard error from the first households of the panel.
+// counts and sums of the bins, with a bound on its error in the table's notes;
+// its standard error, and the effect of pooling on the intervals of percentiles,
+// from the first households of the panel, as many as a quarter of the budget holds.
 type Summary struct {
 	o       SummaryOptions
 	cells   int // (age − FirstAge)·len(Groups) + group

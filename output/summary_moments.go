@@ -248,14 +248,21 @@ func (c *cellSums) mean(v int) stats.Estimate {
 	return c.estimate(func(s *groupSums, n, _ float64) float64 { return c.pivot[v] + s.first[v]/n })
 }
 
-// sd of a variable, divisor n−1.
+// sd of a variable, divisor n−1. Its interval is that of the logarithm, whose
+// sampling distribution is nearer to the normal.
 func (c *cellSums) sd(v int) stats.Estimate {
-	return c.estimate(func(s *groupSums, n, _ float64) float64 {
+	sd := func(s *groupSums, n, _ float64) float64 {
 		if n < 2 {
 			return math.NaN()
 		}
 		return math.Sqrt(max(0, s.second[v]-s.first[v]*s.first[v]/n) / (n - 1))
-	})
+	}
+	e := c.estimate(sd)
+	if e.Value > 0 {
+		log := c.estimate(func(s *groupSums, n, limit float64) float64 { return math.Log(sd(s, n, limit)) })
+		e.Lower, e.Upper = math.Exp(log.Lower), math.Exp(log.Upper)
+	}
+	return e
 }
 
 // meanPropensity is the mean marginal propensity to consume.
