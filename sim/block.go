@@ -1,0 +1,121 @@
+package sim
+
+import "fmt"
+
+// Columns says which columns of a block are filled beside those that simulation
+// needs (CashOnHand, Consumption, Assets, Income).
+type Columns uint
+
+// The optional columns of a Block.
+const (
+	Identity   Columns = 1 << iota // Household
+	Order                          // Position
+	States                         // Node, Persistent
+	Shocks                         // Transitory, Employed
+	Sources                        // Earnings, Pension, Taxes
+	Fates                          // Died
+	Propensity                     // Propensity, AtLimit
+	Twins                          // TwinAssets, TwinConsumption
+	All        Columns = 1<<iota - 1
+)
+
+// Run is a stretch of rows with one year and type: From ≤ row < To.
+type Run struct {
+	T, Type, Group int // year from the first age, type, group
+	From, To       int
+}
+
+// Block is every row of Unit consecutive households (fewer in the last block):
+// one for each household and year alive. Rows are ordered by type, then year;
+// Position tells the place in the order household, year. Columns that were not
+// asked for are empty. Money is in the scenario's currency unit, flows a year.
+//
+// Within a run households are in no particular order. A Block is only valid
+// until the function that work returned for it has run.
+type Block struct {
+	First      int64 // id of the first household
+	Households int
+	N          int   // rows
+	Runs       []Run // covering 0 … N in order
+
+	Household       []int64
+	Position        []int32
+	Node            []uint8
+	Persistent      []float64 // z
+	Transitory      []float64 // ε; 0 in years of job loss and in retirement
+	Employed        []bool    // worked this year
+	Earnings        []float64 // from work, or the benefit in a year of job loss
+	Pension         []float64
+	Taxes           []float64
+	Income          []float64 // net
+	CashOnHand      []float64
+	Consumption     []float64
+	Assets          []float64 // at the end of the year
+	Died            []bool    // at the end of the year
+	Propensity      []float64 // marginal propensity to consume
+	AtLimit         []bool    // the borrowing limit binds
+	TwinAssets      []float64 // of the certain twin
+	TwinConsumption []float64
+}
+
+// resize makes room for n rows in the columns that are wanted.
+func (b *Block) resize(n int, want Columns) {
+	float := func(c *[]float64, with Columns) {
+		if want&with != 0 {
+			*c = grow(*c, n)
+		}
+	}
+	b.CashOnHand, b.Consumption = grow(b.CashOnHand, n), grow(b.Consumption, n)
+	b.Assets, b.Income = grow(b.Assets, n), grow(b.Income, n)
+	if want&Identity != 0 {
+		b.Household = grow(b.Household, n)
+	}
+	if want&Order != 0 {
+		b.Position = grow(b.Position, n)
+	}
+	if want&States != 0 {
+		b.Node = grow(b.Node, n)
+	}
+	if want&Shocks != 0 {
+		b.Employed = grow(b.Employed, n)
+	}
+	if want&Fates != 0 {
+		b.Died = grow(b.Died, n)
+	}
+	if want&Propensity != 0 {
+		b.AtLimit = grow(b.AtLimit, n)
+	}
+	float(&b.Persistent, States)
+	float(&b.Transitory, Shocks)
+	float(&b.Earnings, Sources)
+	float(&b.Pension, Sources)
+	float(&b.Taxes, Sources)
+	float(&b.Propensity, Propensity)
+	float(&b.TwinAssets, Twins)
+	float(&b.TwinConsumption, Twins)
+}
+
+// grow returns a slice of length n that begins with x's entries.
+func grow[E any](x []E, n int) []E {
+	if cap(x) >= n {
+		return x[:n]
+	}
+	y := make([]E, n, n+n/8)
+	copy(y, x)
+	return y
+}
+
+// A StateError is a household in a state that the model does not allow, such as
+// consumption at or below what its utility can bear.
+type StateError struct {
+	Group       string
+	Age         int
+	Household   int64
+	Cash        float64 // money
+	Consumption float64 // money
+}
+
+func (e *StateError) Error() string {
+	return fmt.Sprintf("sim: household %d (group %s) at age %d has cash-on-hand %.6g and would consume %.6g, which its utility does not allow: "+
+		"its income can fall lower than its borrowing limit or subsistence reckons with", e.Household, e.Group, e.Age, e.Cash, e.Consumption)
+}

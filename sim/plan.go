@@ -1,0 +1,189 @@
+package sim
+
+import (
+	"math"
+	"sync"
+
+	"cistern/income"
+	"cistern/policy"
+)
+
+// plan is a population ready for simulation: tables and thresholds, shared by
+// all workers and never changed.
+type plan struct {
+	p     *Population
+	years int
+	types []typePlan
+}
+
+// typePlan is what the years of one type need.
+type typePlan struct {
+	h         policy.Household
+	group     int
+	rule      []*policy.Table // [t]
+	twin      []*policy.Table // [t]; nil without twins
+	twinMoney []float64       // [t] the twin's certain income
+	pension   []float64       // [node]
+	bound     [][]float64     // [t][node] lowest assets
+	floor     float64         // consumption lies above it
+	top       []float64       // [t] lowest top of the rule over the nodes
+
+	survive []uint64 // [t] of 2^32
+	jobLoss uint64   // of 2^32
+	initial []uint64 // [node] cumulated, of 2^32
+	moves   moves
+
+	factor    *normalTable // exp(ε − shift) in form log, ε in form level
+	epsilon   *normalTable // ε
+	startLaw  *normalTable // start assets over their median
+	zeroShare uint64       // of 2^32
+	start     Start
+}
+
+func newPlan(p *Population) *plan {
+	pl := &plan{p: p, years: p.Years(), types: make([]typePlan, len(p.Types))}
+	tables := tableCache{}
+	var wg sync.WaitGroup
+	for i := range p.Types {
+		tp := &pl.types[i]
+		tp.set(&p.Types[i], &tables)
+		wg.Add(1)
+		go func() {
+			defer wg.Done()
+			tp.rule = ruleTables(p.Types[i].Rule)
+			if p.Types[i].Twin != nil {
+				tp.twin = ruleTables(p.Types[i].Twin)
+			}
+			tp.setTops()
+		}()
+	}
+	wg.Wait()
+	return pl
+}
+
+func ruleTables(r *policy.Rule) []*policy.Table {
+	tables := make([]*policy.Table, len(r.Curves))
+	for t := range tables {
+		tables[t] = r.Table(t)
+	}
+	return tables
+}
+
+func (tp *typePlan) setTops() {
+	for _, tb := range tp.rule {
+		top := math.Inf(1)
+		for j := range tp.h.Nodes() {
+			top = math.Min(top, tb.Top(j))
+		}
+		tp.top = append(tp.top, top)
+	}
+}
+
+func (tp *typePlan) set(t *Type, tables *tableCache) {
+	h := t.Rule.Household
+	e := h.Earnings
+	tp.h, tp.group, tp.start = h, t.Group, t.Start
+	tp.floor = h.Utility.Infimum()
+	for j := range h.Nodes() {
+		tp.pension = append(tp.pension, h.Pension.Amount(e, j))
+	}
+	for y := range h.Years() {
+		bounds := make([]float64, h.Nodes())
+		for j := range bounds {
+			bounds[j] = t.Rule.Curves[y][j].Bound
+		}
+		tp.bound = append(tp.bound, bounds)
+		tp.survive = append(tp.survive, of32(h.Survival[y]))
+		if t.Twin != nil {
+			tp.twinMoney = append(tp.twinMoney, t.Twin.Household.MeanIncome(y))
+		}
+	}
+	tp.jobLoss = of32(e.JobLoss.Probability)
+	tp.initial = cumulated(e.Initial)
+	tp.moves = newMoves(e.Chain)
+	sd := e.Transitory.SD
+	tp.epsilon = tables.get(tableKey{sd: sd})
+	tp.factor = tp.epsilon
+	if e.Form == income.Log {
+		tp.factor = tables.get(tableKey{sd: sd, shift: e.LogShift(), exp: true})
+	}
+	tp.startLaw = tables.get(tableKey{sd: t.Start.LogSD, exp: true})
+	tp.zeroShare = of32(t.Start.ZeroShare)
+}
+
+// tableCache keeps one normalTable a law.
+type tableCache map[tableKey]*normalTable
+
+type tableKey struct {
+	sd, shift float64
+	exp       bool
+}
+
+func (c *tableCache) get(k tableKey) *normalTable {
+	t, ok := (*c)[k]
+	if !ok {
+		t = newNormalTable(func(x float64) float64 {
+			if k.exp {
+				return math.Exp(float64(k.sd*x) - k.shift)
+			}
+			return k.sd * x
+		})
+		(*c)[k] = t
+	}
+	return t
+}
+
+// of32 returns a probability in 2^−32, rounded to nearest.
+func of32(p float64) uint64 { return uint64(math.Round(p * (1 << 32))) }
+
+// cumulated returns the upper ends of the nodes' shares of 2^32.
+func cumulated(p []float64) []uint64 {
+	c := make([]uint64, len(p))
+	sum := 0.0
+	for j, q := range p {
+		sum += q
+		c[j] = of32(math.Min(sum, 1))
+	}
+	c[len(c)-1] = 1 << 32
+	return c
+}
+
+// moves draws next year's node by inverse distribution function: for every node
+// the cumulated transition probabilities, and a guide by the top 8 bits of the
+// draw to where the search starts.
+type moves struct {
+	ends  []uint64 // [node][next]
+	guide []uint8  // [node][256]
+	n     int
+}
+
+func newMoves(c *income.Chain) moves {
+	n := c.Len()
+	m := moves{n: n}
+	for i := range n {
+		ends := cumulated(c.Row(i))
+		j := 0
+		for b := range 256 {
+			for uint64(b)<<24 >= ends[j] {
+				j++
+			}
+			m.guide = append(m.guide, uint8(j))
+		}
+		m.ends = append(m.ends, ends...)
+	}
+	return m
+}
+
+// move sets next nodes from the low halves of the draws.
+func (m *moves) move(node []uint8, draw []uint64) {
+	draw = draw[:len(node)]
+	for i, z := range node {
+		x := draw[i] & (1<<32 - 1)
+		j := int(m.guide[int(z)<<8|int(x>>24)])
+		ends := m.ends[int(z)*m.n:]
+		for x >= ends[j] {
+			j++
+		}
+		node[i] = uint8(j)
+	}
+}

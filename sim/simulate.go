@@ -1,0 +1,174 @@
+package sim
+
+import (
+	"context"
+	"fmt"
+	"runtime/debug"
+	"sync"
+	"sync/atomic"
+)
+
+// Options says how to simulate. The zero value simulates everybody on one
+// worker.
+type Options struct {
+	Workers int     // goroutines, at least 1; 0 counts as 1
+	Columns Columns // optional columns to fill
+	From    int64   // first household id; a multiple of Unit
+	To      int64   // one past the last id; 0: all
+
+	// OnProgress, if set, is called after every block, one call at a time, with the
+	// number of households done and to do.
+	OnProgress func(done, total int64)
+}
+
+// Work handles a block on the goroutine of a worker (0 … Workers−1). The function
+// it returns, if not nil, is called in ascending order of blocks, one at a time.
+type Work func(worker int, b *Block) (commit func() error, err error)
+
+// Result counts what was simulated.
+type Result struct {
+	Households     int64
+	HouseholdYears int64
+	AboveTop       int64   // household-years above the top of their rule's grid
+	HighestCash    float64 // money
+}
+
+// Simulate draws the households of p and hands them to work block by block. The
+// rows do not depend on the number of workers. Memory does not grow with the
+// number of households: each worker keeps one block.
+//
+// It returns an error if p is invalid, if a household comes to a state that its
+// utility does not allow (*StateError), if work or a commit fails, or, wrapping
+// context.Cause(ctx), within a block of the end of ctx.
+func Simulate(ctx context.Context, p *Population, o Options, work Work) (Result, error) {
+	if err := p.Validate(); err != nil {
+		return Result{}, err
+	}
+	if o.To == 0 {
+		o.To = p.Households
+	}
+	if o.From < 0 || o.From%Unit != 0 || o.To < o.From || o.To > p.Households {
+		return Result{}, fmt.Errorf("sim: households %d to %d: want a range within 0 to %d that begins at a multiple of %d", o.From, o.To, p.Households, Unit)
+	}
+	r := newRunner(ctx, p, o, work)
+	var wg sync.WaitGroup
+	for w := range max(1, o.Workers) {
+		wg.Add(1)
+		go func() {
+			defer wg.Done()
+			r.worker(w)
+		}()
+	}
+	wg.Wait()
+	if r.err == nil && ctx.Err() != nil && r.committed < o.To {
+		r.err = fmt.Errorf("sim: stopped after %d of %d households: %w", r.committed-o.From, o.To-o.From, context.Cause(ctx))
+	}
+	return r.result, r.err
+}
+
+// runner shares blocks out and commits them in order.
+type runner struct {
+	ctx  context.Context
+	p    *Population
+	o    Options
+	work Work
+	plan *plan
+
+	next   atomic.Int64 // first id not yet taken
+	failed atomic.Bool  // err is set
+
+	mu        sync.Mutex // guards what follows; held while a block is committed
+	turn      *sync.Cond // a block was committed, or the run has failed
+	committed int64      // first id not yet committed
+	err       error
+	result    Result
+}
+
+func newRunner(ctx context.Context, p *Population, o Options, work Work) *runner {
+	r := &runner{ctx: ctx, p: p, o: o, work: work, plan: newPlan(p), committed: o.From}
+	r.next.Store(o.From)
+	r.turn = sync.NewCond(&r.mu)
+	return r
+}
+
+// worker simulates blocks until there is none left.
+func (r *runner) worker(w int) {
+	defer func() {
+		if e := recover(); e != nil {
+			r.fail(fmt.Errorf("sim: %v\n%s", e, debug.Stack()))
+		}
+	}()
+	c := newCrew(r.plan, r.o.Columns)
+	for {
+		first, ok := r.take()
+		if !ok {
+			return
+		}
+		n := int(min(Unit, r.o.To-first))
+		if err := c.block(first, n); err != nil {
+			r.fail(err)
+			return
+		}
+		commit, err := r.work(w, &c.out)
+		if err != nil {
+			r.fail(err)
+			return
+		}
+		if !r.commit(first, n, c, commit) {
+			return
+		}
+	}
+}
+
+// take hands out the next block.
+func (r *runner) take() (first int64, ok bool) {
+	if r.failed.Load() || r.ctx.Err() != nil {
+		return 0, false
+	}
+	first = r.next.Add(Unit) - Unit
+	return first, first < r.o.To
+}
+
+// commit waits for the blocks before and commits this one. Waiting bounds the
+// memory: a worker cannot run ahead.
+func (r *runner) commit(first int64, n int, c *crew, commit func() error) bool {
+	r.mu.Lock()
+	defer r.mu.Unlock()
+	for r.committed != first && r.err == nil {
+		r.turn.Wait()
+	}
+	if r.err != nil {
+		return false
+	}
+	if commit != nil {
+		if err := commit(); err != nil {
+			r.setError(err)
+			return false
+		}
+	}
+	r.committed = first + Unit
+	r.result.Households += int64(n)
+	r.result.HouseholdYears += int64(c.out.N)
+	r.result.AboveTop += c.aboveTop
+	r.result.HighestCash = max(r.result.HighestCash, c.highestCash)
+	r.turn.Broadcast()
+	if r.o.OnProgress != nil {
+		r.o.OnProgress(min(r.committed, r.o.To)-r.o.From, r.o.To-r.o.From)
+	}
+	return true
+}
+
+func (r *runner) fail(err error) {
+	r.mu.Lock()
+	defer r.mu.Unlock()
+	r.setError(err)
+}
+
+// setError notes the first error and wakes whoever waits; mu is held.
+func (r *runner) setError(err error) {
+	if r.err == nil {
+		r.err = err
+		r.failed.Store(true)
+	}
+	r.turn.Broadcast()
+}

@@ -1,0 +1,218 @@
+package sim
+
+import (
+	"math"
+
+	"cistern/income"
+)
+
+// year takes the living from … to−1 of a type through year t; their rows begin at
+// row.
+func (c *crew) year(tp *typePlan, t, from, to, row int) error {
+	n := to - from
+	b := &c.out
+	end := row + n
+	cash, consumption, assets := b.CashOnHand[row:end], b.Consumption[row:end], b.Assets[row:end]
+	node := c.node[from:to]
+	if tp.h.Working(t) {
+		drawYear(c.streams[from:to], c.x0[:n], c.x1[:n], c.x2[:n])
+		c.work(tp, t, node, row, end)
+	} else {
+		drawSecond(c.streams[from:to], c.x1[:n])
+		c.retire(tp, node, row, end)
+	}
+	R := 1 + tp.h.Return
+	for i, a := range c.assets[from:to] {
+		cash[i] = float64(R*a) + b.Income[row+i]
+	}
+	var propensity []float64
+	if c.want&Propensity != 0 {
+		propensity = b.Propensity[row:end]
+	}
+	tp.rule[t].Evaluate(node, cash, consumption, propensity)
+	if i := settle(node, cash, consumption, assets, tp.bound[t], tp.floor, &c.highestCash); i >= 0 {
+		return &StateError{Group: c.pl.p.Groups[tp.group].Name, Age: tp.h.FirstAge + t, Household: b.First + int64(c.slot[from+i]),
+			Cash: cash[i], Consumption: consumption[i]}
+	}
+	c.countAbove(tp, t, node, cash)
+	copy(c.assets[from:to], assets)
+	if c.want&States != 0 {
+		copy(b.Node[row:end], node)
+		z := tp.h.Earnings.Chain.Nodes
+		for i, j := range node {
+			b.Persistent[row+i] = z[j]
+		}
+	}
+	if c.want&Propensity != 0 {
+		atLimit(b.AtLimit[row:end], node, assets, tp.bound[t])
+	}
+	if c.want&Twins != 0 && tp.twin != nil {
+		c.liveTwins(tp, t, c.twin[from:to], row, end)
+	}
+	c.fates(tp, t, from, node, row, end)
+	return nil
+}
+
+// work sets the income of a working year, and its parts where they are wanted.
+func (c *crew) work(tp *typePlan, t int, node []uint8, row, end int) {
+	b := &c.out
+	e := tp.h.Earnings
+	y := b.Income[row:end]
+	c.earn(tp, t, node, y)
+	if c.want&Shocks != 0 {
+		epsilon, employed := b.Transitory[row:end], b.Employed[row:end]
+		for i, x := range c.x0[:len(y)] {
+			employed[i] = c.x2[i]>>32 >= tp.jobLoss
+			epsilon[i] = 0
+			if employed[i] && e.Transitory.SD > 0 {
+				epsilon[i] = tp.epsilon.at(x)
+			}
+		}
+	}
+	if c.want&Sources != 0 {
+		copy(b.Earnings[row:end], y)
+		clear(b.Pension[row:end])
+		clear(b.Taxes[row:end])
+	}
+}
+
+// earn sets earnings, or the benefit in a year of job loss.
+func (c *crew) earn(tp *typePlan, t int, node []uint8, y []float64) {
+	e := tp.h.Earnings
+	var base, benefit [256]float64 // indexed by a byte: no bound is checked
+	copy(base[:], e.Base[t])
+	copy(benefit[:], e.Benefit[t])
+	node = node[:len(y)]
+	switch {
+	case e.Transitory.SD == 0:
+		for i, j := range node {
+			y[i] = base[j]
+		}
+	case e.Form == income.Log:
+		for i, x := range c.x0[:len(y)] {
+			y[i] = base[node[i]] * tp.factor.at(x)
+		}
+	default:
+		for i, x := range c.x0[:len(y)] {
+			y[i] = base[node[i]] + tp.factor.at(x)
+		}
+	}
+	if tp.jobLoss > 0 {
+		for i, x := range c.x2[:len(y)] {
+			if x>>32 < tp.jobLoss {
+				y[i] = benefit[node[i]]
+			}
+		}
+	}
+}
+
+// retire sets the income of a retired year.
+func (c *crew) retire(tp *typePlan, node []uint8, row, end int) {
+	b := &c.out
+	for i, j := range node {
+		b.Income[row+i] = tp.pension[j]
+	}
+	if c.want&Shocks != 0 {
+		clear(b.Transitory[row:end])
+		clear(b.Employed[row:end])
+	}
+	if c.want&Sources != 0 {
+		clear(b.Earnings[row:end])
+		copy(b.Pension[row:end], b.Income[row:end])
+		clear(b.Taxes[row:end])
+	}
+}
+
+// settle sets assets = cash − consumption, not below the bound (rounding alone
+// could bring them there), and raises highest to the highest cash. It returns the
+// index of a household whose consumption its utility does not allow, or −1.
+func settle(node []uint8, cash, consumption, assets, bounds []float64, floor float64, highest *float64) int {
+	node, consumption, assets = node[:len(cash)], consumption[:len(cash)], assets[:len(cash)]
+	var bound [256]float64
+	copy(bound[:], bounds)
+	top := *highest
+	sound := true
+	for i, m := range cash {
+		c := consumption[i]
+		a := m - c
+		if low := bound[node[i]]; a < low {
+			a = low
+			c = m - a
+			consumption[i] = c
+		}
+		assets[i] = a
+		sound = sound && c > floor && c <= math.MaxFloat64
+		if m > top {
+			top = m
+		}
+	}
+	*highest = top
+	if sound {
+		return -1
+	}
+	for i, c := range consumption {
+		if !(c > floor && c <= math.MaxFloat64) {
+			return i
+		}
+	}
+	return -1
+}
+
+// countAbove counts the states above the top of the rule's grid.
+func (c *crew) countAbove(tp *typePlan, t int, node []uint8, cash []float64) {
+	if c.highestCash <= tp.top[t] {
+		return
+	}
+	for i, m := range cash {
+		if m > tp.rule[t].Top(int(node[i])) {
+			c.aboveTop++
+		}
+	}
+}
+
+// atLimit says who keeps no more than the lowest assets allowed.
+func atLimit(dst []bool, node []uint8, assets, bounds []float64) {
+	for i, a := range assets {
+		low := bounds[node[i]]
+		dst[i] = a <= low+1e-9*(1+math.Abs(low))
+	}
+}
+
+// liveTwins takes the certain twins through the year.
+func (c *crew) liveTwins(tp *typePlan, t int, twin []float64, row, end int) {
+	b := &c.out
+	money, spent := b.TwinAssets[row:end], b.TwinConsumption[row:end]
+	R := 1 + tp.h.Return
+	for i, a := range twin {
+		money[i] = float64(R*a) + tp.twinMoney[t]
+	}
+	tp.twin[t].Evaluate(nil, money, spent, nil)
+	for i := range money {
+		money[i] -= spent[i]
+		twin[i] = money[i]
+	}
+}
+
+// fates says who dies at the end of year t, notes them and moves everybody's
+// node on.
+func (c *crew) fates(tp *typePlan, t, from int, node []uint8, row, end int) {
+	draws := c.x1[:end-row]
+	survive := tp.survive[t]
+	dead := c.dead
+	for i, x := range draws {
+		if x>>32 >= survive {
+			dead = append(dead, int32(from+i))
+		}
+	}
+	if c.want&Fates != 0 {
+		died := c.out.Died[row:end]
+		clear(died)
+		for _, i := range dead[len(c.dead):] {
+			died[int(i)-from] = true
+		}
+	}
+	c.dead = dead
+	if tp.h.Moves(t) {
+		tp.moves.move(node, draws)
+	}
+}
