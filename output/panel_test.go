@@ -1,6 +1,7 @@
 package output
 
 import (
+	"encoding/binary"
 	"errors"
 	"fmt"
 	"math"
@@ -403,8 +404,8 @@ func TestFinishedParts(t *testing.T) {
 	}
 }
 
-// TestReadDamaged flips bytes within a part's pages: reading it may succeed or
-// fail, but never takes the program down, and never returns too few values.
+// TestReadDamaged flips bits in a part: reading it may succeed or fail, but
+// never takes the program down, and never returns too few values.
 func TestReadDamaged(t *testing.T) {
 	o, dir := testOptions(64), t.TempDir()
 	g := generate(o)
@@ -416,13 +417,17 @@ func TestReadDamaged(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	failed := 0
-	for at := 4; at < len(whole)*3/4; at += 97 {
+	damage := func(at int, bits byte) {
 		damaged := append([]byte(nil), whole...)
-		damaged[at] ^= 0xff
+		damaged[at] ^= bits
 		if err := os.WriteFile(path, damaged, 0o666); err != nil {
 			t.Fatal(err)
 		}
+	}
+	footer := len(whole) - 8 - int(binary.LittleEndian.Uint32(whole[len(whole)-8:]))
+	failed := 0
+	for at := 4; at < footer; at += 97 {
+		damage(at, 0xff)
 		err := ReadPanel(dir, panelNames, func(u *Table) error {
 			for _, c := range u.Columns {
 				if c.Len() != g.units[0].N {
@@ -436,7 +441,24 @@ func TestReadDamaged(t *testing.T) {
 		}
 	}
 	if failed == 0 {
-		t.Error("no damage was noticed")
+		t.Error("no damage to the pages was noticed")
+	}
+	if testing.Short() {
+		return
+	}
+	panicked := 0
+	for at := footer; at < len(whole); at++ {
+		damage(at, 1)
+		s, err := OpenParquet(path)
+		if err == nil {
+			err = s.Close()
+		}
+		if err != nil && strings.Contains(err.Error(), "damaged: runtime error") {
+			panicked++
+		}
+	}
+	if panicked == 0 {
+		t.Error("the library no longer panics on a damaged footer: rescue may go")
 	}
 }
 

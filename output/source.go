@@ -43,7 +43,8 @@ func OpenParquet(path string) (*Source, error) {
 	return s, nil
 }
 
-func (s *Source) open() error {
+func (s *Source) open() (err error) {
+	defer rescue(&err)
 	info, err := s.f.Stat()
 	if err != nil {
 		return err
@@ -110,13 +111,11 @@ func (s *Source) NewColumn(name string) (*Column, error) {
 // bools become 0 and 1. A damaged file is an error.
 func (s *Source) ReadColumn(g int, c *Column) (err error) {
 	defer func() {
-		if r := recover(); r != nil { // the library panics on some damaged pages
-			err = fmt.Errorf("%v", r)
-		}
 		if err != nil {
 			err = fmt.Errorf("output: %s: column %s: %w", s.path, c.Name, err)
 		}
 	}()
+	defer rescue(&err)
 	group := s.file.RowGroups()[g]
 	sc, before := s.columns[c.Name], c.Len()
 	pages := group.ColumnChunks()[sc.index].Pages()
@@ -139,6 +138,14 @@ func (s *Source) ReadColumn(g int, c *Column) (err error) {
 		return fmt.Errorf("%d values in row group %d, want %d", got, g, group.NumRows())
 	}
 	return nil
+}
+
+// rescue turns a panic into an error: the library trusts some of what a file
+// says about itself, so a damaged one can make it panic.
+func rescue(err *error) {
+	if r := recover(); r != nil {
+		*err = fmt.Errorf("damaged: %v", r)
+	}
 }
 
 // ReadTable reads the whole file path into memory.
