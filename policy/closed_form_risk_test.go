@@ -328,7 +328,7 @@ func TestJobLossTarget(t *testing.T) {
 		}
 	}
 	for _, p := range []JobLossTarget{
-		{CRRA{2}, 1.1, 1.03, 1.02, 0.05},   // would never spend
+		{CRRA{2}, 1.2, 0.9, 1.02, 0.05},    // would never spend
 		{CRRA{2}, 0.99, 1.06, 1.0, 0.0001}, // too patient for the growth of income
 	} {
 		if got, err := p.Solve(); err == nil {
@@ -354,5 +354,25 @@ func TestJobLossTargetStays(t *testing.T) {
 		p.Probability*p.Utility.Marginal(kappa*p.Gross*a))
 	if got := p.Utility.Marginal(x.Consumption); relative(got, want) > 1e-12 {
 		t.Errorf("u′ = %.15g, expected %.15g", got, want)
+	}
+}
+
+// What a household faces with risk and what its certain twin faces agree in the
+// mean: human wealth averaged over the first year's nodes is that of mean income
+// (derived: expectations commute with discounting). Mortality is in the discount
+// factors.
+func TestHouseholdProspects(t *testing.T) {
+	h := riskyHousehold(t)
+	p, l := h.Prospects(), h.Lifetime()
+	if years, nodes := p.check(); years != h.Years() || nodes != h.Nodes() {
+		t.Errorf("%d years and %d nodes, want %d and %d", years, nodes, h.Years(), h.Nodes())
+	}
+	if got, want := dot(h.Earnings.Distribution[0], p.HumanWealth()[0]), l.HumanWealth()[0]; relative(got, want) > 1e-12 {
+		t.Errorf("mean human wealth %.15g, of mean income %.15g", got, want)
+	}
+	for i, s := range h.Survival[:h.Years()-1] {
+		if want := 0.96 * s; l.Discount[i] != want || p.Discount[i] != want || l.Gross[i] != 1.03 || p.Gross[i] != 1.03 {
+			t.Errorf("year %d: discount factors %g and %g, returns %g and %g, want %g and 1.03", i, l.Discount[i], p.Discount[i], l.Gross[i], p.Gross[i], want)
+		}
 	}
 }
