@@ -363,6 +363,13 @@ func TestJobLossTargetStays(t *testing.T) {
 // factors.
 func TestHouseholdProspects(t *testing.T) {
 	h := riskyHousehold(t)
+	start := h.Earnings.Process
+	start.Initial = []float64{0.7, 0.2, 0.1, 0, 0} // far from stationary, so that the transitions matter
+	e, err := start.Build()
+	if err != nil {
+		t.Fatal(err)
+	}
+	h.Earnings = e
 	p, l := h.Prospects(), h.Lifetime()
 	if years, nodes := p.check(); years != h.Years() || nodes != h.Nodes() {
 		t.Errorf("%d years and %d nodes, want %d and %d", years, nodes, h.Years(), h.Nodes())
