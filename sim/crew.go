@@ -37,9 +37,13 @@ type birth struct {
 }
 
 func newCrew(pl *plan, want Columns) *crew {
-	return &crew{pl: pl, want: want, members: make([][]int32, len(pl.types)), births: make([]birth, Unit),
+	c := &crew{pl: pl, want: want, members: make([][]int32, len(pl.types)), births: make([]birth, Unit),
 		slot: make([]int32, Unit), streams: make([]state, Unit), node: make([]uint8, Unit),
 		assets: make([]float64, Unit), twin: make([]float64, Unit), lives: make([]int32, Unit), dead: make([]int32, 0, Unit)}
+	rows := int(Unit * pl.longestLife() * 1.03)
+	c.out.resize(rows, want)
+	c.slots = make([]int32, 0, rows)
+	return c
 }
 
 // block simulates households first … first+n−1 into out.

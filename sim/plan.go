@@ -61,6 +61,21 @@ func newPlan(p *Population) *plan {
 	return pl
 }
 
+// longestLife returns the expected number of years lived by the type that lives
+// longest.
+func (pl *plan) longestLife() float64 {
+	longest := 0.0
+	for i := range pl.types {
+		alive, years := 1.0, 0.0
+		for _, s := range pl.types[i].h.Survival {
+			years += alive
+			alive *= s
+		}
+		longest = math.Max(longest, years)
+	}
+	return longest
+}
+
 func ruleTables(r *policy.Rule) []*policy.Table {
 	tables := make([]*policy.Table, len(r.Curves))
 	for t := range tables {
