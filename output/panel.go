@@ -148,6 +148,10 @@ func PartName(k int64) string { return fmt.Sprintf("part-%05d.parquet", k) }
 // time, in ascending order of households, each exactly once; rows may be reused
 // as soon as Encode has returned.
 //
+// Memory goes with the units encoded and not yet committed (about 40 bytes a
+// row each), never with the number of households, so a caller that lets workers
+// run ahead of the commits must bound by how much.
+//
 // A value that is not finite is refused with a *ValueError. After any error the
 // panel is lost: every later call returns that error, and Close removes what is
 // unfinished. Parts already whole stay.

@@ -9,6 +9,7 @@ import (
 	"os"
 	"path/filepath"
 	"reflect"
+	"runtime"
 	"strings"
 	"sync"
 	"testing"
@@ -362,6 +363,43 @@ func TestPanelCommitOrder(t *testing.T) {
 	}
 	if left := files(t, dir); len(left) != 0 {
 		t.Errorf("%d files left behind", len(left))
+	}
+}
+
+// TestPanelMemory writes 60 parts: what the panel holds on to after the last is
+// no more than after the tenth, give or take a part's buffers.
+func TestPanelMemory(t *testing.T) {
+	o := testOptions(60 * 64)
+	o.Block = 64
+	g := generate(o)
+	p, err := NewPanel(t.TempDir(), o)
+	if err != nil {
+		t.Fatal(err)
+	}
+	held := func() int64 {
+		var m runtime.MemStats
+		runtime.GC()
+		runtime.ReadMemStats(&m)
+		return int64(m.HeapAlloc)
+	}
+	var early int64
+	for i, u := range g.units {
+		commit, err := p.Encode(0, u)
+		if err == nil {
+			err = commit()
+		}
+		if err != nil {
+			t.Fatal(err)
+		}
+		if i == 9 {
+			early = held()
+		}
+	}
+	if late := held(); late-early > 8<<20 {
+		t.Errorf("holds %d bytes after 10 parts and %d after 60", early, late)
+	}
+	if err := p.Close(); err != nil {
+		t.Fatal(err)
 	}
 }
 
