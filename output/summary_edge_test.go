@@ -399,3 +399,63 @@ func TestGiniJackknife(t *testing.T) {
 		t.Errorf("%d groups, want 7", groups)
 	}
 }
+
+// TestSummaryOrder: sums depend on the order of blocks, so commits out of order
+// are refused.
+func TestSummaryOrder(t *testing.T) {
+	w := smallTown
+	s, err := NewSummary(w.options())
+	if err != nil {
+		t.Fatal(err)
+	}
+	first, err1 := s.Add(0, w.block(0))
+	second, err2 := s.Add(0, w.block(w.unit))
+	if err1 != nil || err2 != nil {
+		t.Fatal(err1, err2)
+	}
+	if err := second(); err != nil {
+		t.Fatal(err)
+	}
+	if err := first(); err == nil || !strings.Contains(err.Error(), "committed after") {
+		t.Errorf("commits out of order: %v", err)
+	}
+}
+
+// TestSummaryMethod: whether values are held does not depend on the workers.
+func TestSummaryMethod(t *testing.T) {
+	o := smallTown.options()
+	o.MemoryBudget = 1 << 20
+	held := func(workers int, households int64) bool {
+		o.Workers, o.Households = workers, households
+		s, err := NewSummary(o)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return s.hist == nil
+	}
+	if !held(1, 100) || held(1, 10000) {
+		t.Fatal("the budget does not decide between 100 and 10000 households")
+	}
+	for households := int64(100); households < 10000; households += 100 {
+		if held(1, households) != held(64, households) {
+			t.Errorf("%d households: held by one worker %v, by 64 %v", households, held(1, households), held(64, households))
+		}
+	}
+}
+
+// TestSummaryColumns: an optional column is in all blocks or in none.
+func TestSummaryColumns(t *testing.T) {
+	w := smallTown
+	s, err := NewSummary(w.options())
+	if err != nil {
+		t.Fatal(err)
+	}
+	if _, err := s.Add(0, w.block(0)); err != nil {
+		t.Fatal(err)
+	}
+	rows := w.block(w.unit)
+	rows.TwinAssets = nil
+	if _, err := s.Add(0, rows); err == nil || !strings.Contains(err.Error(), "some blocks only") {
+		t.Errorf("twins in one block of two: %v", err)
+	}
+}

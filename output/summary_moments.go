@@ -136,9 +136,7 @@ func (c *cellSums) fold(part *cellSums) {
 		return
 	}
 	if !c.any {
-		cell := c.cell
 		*c = *part
-		c.cell = cell
 		return
 	}
 	var d [variables]float64
