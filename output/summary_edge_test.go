@@ -453,9 +453,9 @@ func TestSummaryColumns(t *testing.T) {
 	if _, err := s.Add(0, w.block(0)); err != nil {
 		t.Fatal(err)
 	}
-	rows := w.block(w.unit)
+	rows := *w.block(w.unit)
 	rows.TwinAssets = nil
-	if _, err := s.Add(0, rows); err == nil || !strings.Contains(err.Error(), "some blocks only") {
+	if _, err := s.Add(0, &rows); err == nil || !strings.Contains(err.Error(), "some blocks only") {
 		t.Errorf("twins in one block of two: %v", err)
 	}
 }

@@ -57,6 +57,9 @@ func crowd(t testing.TB, households int64, o SummaryOptions, block *SummaryRows,
 // TestSummaryMemory asks that ten times the households take at most 1.2 times
 // the memory once values are not held.
 func TestSummaryMemory(t *testing.T) {
+	if testing.Short() {
+		t.Skip("some hundred thousand households")
+	}
 	w := town{households: 1024, first: 25, last: 64, groups: []string{"dockers", "clerks"}, unit: 1024, mortality: 0.01}
 	block := w.block(0)
 	o := w.options()

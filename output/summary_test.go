@@ -1,6 +1,7 @@
 package output
 
 import (
+	"fmt"
 	"math"
 	"math/rand/v2"
 	"reflect"
@@ -24,8 +25,21 @@ type town struct {
 
 var smallTown = town{households: 3000, first: 25, last: 44, groups: []string{"dockers", "clerks", "pilots"}, unit: 256, mortality: 0.01}
 
-// block returns the rows of the block that starts at household first.
+// block returns the rows of the block that starts at household first. Blocks
+// are made once and must not be changed.
 func (w town) block(first int64) *SummaryRows {
+	name := fmt.Sprint(w, first)
+	if b, made := townBlocks.Load(name); made {
+		return b.(*SummaryRows)
+	}
+	b := w.make(first)
+	townBlocks.Store(name, b)
+	return b
+}
+
+var townBlocks sync.Map
+
+func (w town) make(first int64) *SummaryRows {
 	type row struct {
 		id                                     int64
 		age                                    int32
@@ -264,7 +278,11 @@ func TestSummaryWorkers(t *testing.T) {
 		o := w.options()
 		o.MemoryBudget = budget
 		one := w.run(t, o)
-		for _, workers := range []int{2, 5, 11} {
+		counts := []int{2, 5, 11}
+		if testing.Short() {
+			counts = []int{5}
+		}
+		for _, workers := range counts {
 			o.Workers = workers
 			many := w.run(t, o)
 			if !sameTable(one.Table(), many.Table()) {
@@ -302,6 +320,9 @@ func sameBands(a, b []BandSummary) bool {
 // same bits but for the Gini coefficients, which keep within their bound.
 func TestSummaryPasses(t *testing.T) {
 	for _, limit := range []float64{0, -500} { // a mass of households at one value
+		if testing.Short() && limit != 0 {
+			continue
+		}
 		w := smallTown
 		w.limit = limit
 		o := w.options()
@@ -309,7 +330,11 @@ func TestSummaryPasses(t *testing.T) {
 		if whole.Passes() != 1 {
 			t.Fatalf("in memory: %d passes, want 1", whole.Passes())
 		}
-		for _, budget := range []int64{1 << 12, 1 << 18, 1 << 20} {
+		budgets := []int64{1 << 12, 1 << 18, 1 << 20}
+		if testing.Short() {
+			budgets = []int64{1 << 20}
+		}
+		for _, budget := range budgets {
 			o.MemoryBudget = budget
 			split := w.run(t, o)
 			if split.Passes() < 2 {

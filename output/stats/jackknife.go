@@ -3,6 +3,7 @@ package stats
 import (
 	"fmt"
 	"math"
+	"sync"
 
 	"gonum.org/v1/gonum/stat/distuv"
 )
@@ -76,7 +77,20 @@ func JackknifeInterval(value, se float64, groups int, level float64) Estimate {
 	return e
 }
 
-// StudentQuantile returns the p-quantile of Student's t distribution.
+// StudentQuantile returns the p-quantile of Student's t distribution. It
+// remembers what it has computed, since summaries ask for the same thousands of
+// times.
 func StudentQuantile(p float64, degrees int) float64 {
-	return distuv.StudentsT{Mu: 0, Sigma: 1, Nu: float64(degrees)}.Quantile(p)
+	type question struct {
+		p       float64
+		degrees int
+	}
+	if t, known := studentQuantiles.Load(question{p, degrees}); known {
+		return t.(float64)
+	}
+	t := distuv.StudentsT{Mu: 0, Sigma: 1, Nu: float64(degrees)}.Quantile(p)
+	studentQuantiles.Store(question{p, degrees}, t)
+	return t
 }
+
+var studentQuantiles sync.Map

@@ -115,3 +115,14 @@ func TestJackknifePaired(t *testing.T) {
 	// 64 groups know an error to 9 %, so the ratio to some 13 %; 40 % is allowed.
 	near(t, "paired over unpaired", errorOf(d)/math.Hypot(errorOf(a), errorOf(b)), math.Sqrt(1-rho), 0.4*math.Sqrt(1-rho), "derived")
 }
+
+// TestStudentQuantile: published: Fisher and Yates (1963), Table III, and the
+// closed forms for one and two degrees of freedom.
+func TestStudentQuantile(t *testing.T) {
+	for range 2 { // computed, then remembered
+		near(t, "1 degree", StudentQuantile(0.975, 1), math.Tan(math.Pi*0.475), 1e-9, "derived: Cauchy")
+		near(t, "2 degrees", StudentQuantile(0.975, 2), 0.95*math.Sqrt(2/(1-0.95*0.95)), 1e-9, "derived: closed form")
+		near(t, "10 degrees", StudentQuantile(0.975, 10), 2.228, 5e-4, "published: Fisher and Yates (1963), Table III")
+		near(t, "60 degrees", StudentQuantile(0.975, 60), 2.000, 5e-4, "published: Fisher and Yates (1963), Table III")
+	}
+}
