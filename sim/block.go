@@ -54,7 +54,7 @@ type Block struct {
 	Died            []bool    // at the end of the year
 	Propensity      []float64 // marginal propensity to consume
 	AtLimit         []bool    // the borrowing limit binds
-	TwinAssets      []float64 // of the certain twin
+	TwinAssets      []float64 // of the certain twin; NaN where the type has none
 	TwinConsumption []float64
 }
 
@@ -111,11 +111,17 @@ type StateError struct {
 	Group       string
 	Age         int
 	Household   int64
+	Twin        bool    // it is the household's certain twin
 	Cash        float64 // money
 	Consumption float64 // money
 }
 
 func (e *StateError) Error() string {
-	return fmt.Sprintf("sim: household %d (group %s) at age %d has cash-on-hand %.6g and would consume %.6g, which its utility does not allow: "+
-		"its income can fall lower than its borrowing limit or subsistence reckons with", e.Household, e.Group, e.Age, e.Cash, e.Consumption)
+	who := ""
+	if e.Twin {
+		who = "the certain twin of "
+	}
+	return fmt.Sprintf("sim: %shousehold %d (group %s) at age %d has cash-on-hand %.6g and would consume %.6g, which its utility does not allow: "+
+		"its start assets or income can fall lower than its borrowing limit or subsistence reckons with",
+		who, e.Household, e.Group, e.Age, e.Cash, e.Consumption)
 }

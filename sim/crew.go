@@ -25,7 +25,7 @@ type crew struct {
 
 	x0, x1, x2  [chunk]uint64
 	dead        []int32
-	aboveTop    int64
+	counts      []Count // [group] of the block
 	highestCash float64
 }
 
@@ -39,7 +39,7 @@ type birth struct {
 func newCrew(pl *plan, want Columns) *crew {
 	c := &crew{pl: pl, want: want, members: make([][]int32, len(pl.types)), births: make([]birth, Unit),
 		slot: make([]int32, Unit), streams: make([]state, Unit), node: make([]uint8, Unit),
-		assets: make([]float64, Unit), twin: make([]float64, Unit), lives: make([]int32, Unit), dead: make([]int32, 0, Unit)}
+		assets: make([]float64, Unit), twin: make([]float64, Unit), lives: make([]int32, Unit), dead: make([]int32, 0, Unit), counts: make([]Count, len(pl.p.Groups))}
 	rows := int(Unit * pl.longestLife() * 1.03)
 	c.out.resize(rows, want)
 	c.slots = make([]int32, 0, rows)
@@ -49,7 +49,8 @@ func newCrew(pl *plan, want Columns) *crew {
 // block simulates households first … first+n−1 into out.
 func (c *crew) block(first int64, n int) error {
 	c.out.First, c.out.Households, c.out.N, c.out.Runs = first, n, 0, c.out.Runs[:0]
-	c.aboveTop, c.highestCash = 0, math.Inf(-1)
+	c.highestCash = math.Inf(-1)
+	clear(c.counts)
 	c.slots = c.slots[:0]
 	c.bear(first, n)
 	for k := range c.members {
@@ -87,7 +88,7 @@ func (c *crew) bear(first int64, n int) {
 		if tp.start.Median > 0 {
 			b.assets = 0
 			if x[0]>>32 >= tp.zeroShare {
-				b.assets = tp.start.Median * tp.startLaw.at(x[1])
+				b.assets = tp.start.Median * math.Exp(tp.start.LogSD*normalQuantile(x[1]))
 			}
 		}
 		for x[2]>>32 >= tp.initial[b.node] {
@@ -102,6 +103,7 @@ func (c *crew) bear(first int64, n int) {
 func (c *crew) live(k int) error {
 	tp := &c.pl.types[k]
 	alive := len(c.members[k])
+	c.counts[tp.group].Households += int64(alive)
 	for i, place := range c.members[k] {
 		b := &c.births[place]
 		c.slot[i], c.streams[i], c.node[i], c.assets[i], c.twin[i] = place, b.stream, b.node, b.assets, b.assets
@@ -109,6 +111,7 @@ func (c *crew) live(k int) error {
 	for t := 0; t < c.pl.years && alive > 0; t++ {
 		row := c.out.N
 		c.out.N += alive
+		c.counts[tp.group].HouseholdYears += int64(alive)
 		c.out.resize(c.out.N, c.want)
 		c.out.Runs = append(c.out.Runs, Run{T: t, Type: k, Group: tp.group, From: row, To: c.out.N})
 		c.slots = append(c.slots, c.slot[:alive]...)

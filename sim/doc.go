@@ -13,7 +13,7 @@
 // household's luck depends on nothing but seed and id: not on the number of
 // workers, not on which other households are simulated, and not on the scenario,
 // so that two scenarios with one seed meet the same luck. Normal shocks are the
-// inverse distribution function at a uniform number, to about 1e-11.
+// inverse distribution function at a uniform number, to about 5e-11.
 //
 // Households are simulated in blocks of [Unit], within a block type by type and
 // age by age, since a year's rule then stays in the processor's cache.

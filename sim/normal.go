@@ -6,11 +6,21 @@ import (
 	"gonum.org/v1/gonum/mathext"
 )
 
-// normalTable maps 64 random bits to f(Φ⁻¹(u)) by piecewise cubics, f being the
-// identity or exp(σ·x − shift). The highest bit chooses the tail, the next 52, w,
-// give u = (w + ½)·2^−53 in it, so that the law is symmetric to the bit. A piece is
-// an exponent and six bits of mantissa of w + ½; its cubic interpolates f at the
-// Chebyshev points, to about 1e-11.
+// normalQuantile maps 64 random bits to the normal number Φ⁻¹(u) that they stand
+// for: the highest bit chooses the tail, the next 52, w, give u = (w + ½)·2^−53 in
+// it, so that the law is symmetric to the bit.
+func normalQuantile(bits uint64) float64 {
+	x := mathext.NormalQuantile((float64(int64(bits<<1>>12)) + 0.5) * unitScale)
+	if bits>>63 == 1 {
+		return -x
+	}
+	return x
+}
+
+// normalTable maps 64 random bits to f(normalQuantile) by piecewise cubics, f being
+// σ·x or exp(σ·x − shift). A piece is an exponent and six bits of mantissa of w + ½;
+// its cubic interpolates f at the Chebyshev points, which for x itself and for σ up
+// to ½ is good to 1e-10.
 type normalTable [2 << tableBits][4]float64
 
 const (

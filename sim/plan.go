@@ -35,7 +35,6 @@ type typePlan struct {
 
 	factor    *normalTable // exp(ε − shift) in form log, ε in form level
 	epsilon   *normalTable // ε
-	startLaw  *normalTable // start assets over their median
 	zeroShare uint64       // of 2^32
 	start     Start
 }
@@ -122,7 +121,6 @@ func (tp *typePlan) set(t *Type, tables *tableCache) {
 	if e.Form == income.Log {
 		tp.factor = tables.get(tableKey{sd: sd, shift: e.LogShift(), exp: true})
 	}
-	tp.startLaw = tables.get(tableKey{sd: t.Start.LogSD, exp: true})
 	tp.zeroShare = of32(t.Start.ZeroShare)
 }
 

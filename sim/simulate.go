@@ -25,12 +25,25 @@ type Options struct {
 // it returns, if not nil, is called in ascending order of blocks, one at a time.
 type Work func(worker int, b *Block) (commit func() error, err error)
 
-// Result counts what was simulated.
-type Result struct {
+// Count says how much was simulated.
+type Count struct {
 	Households     int64
 	HouseholdYears int64
-	AboveTop       int64   // household-years above the top of their rule's grid
-	HighestCash    float64 // money
+	AboveTop       int64 // household-years above the top of their rule's grid
+}
+
+func (c *Count) add(d Count) {
+	c.Households += d.Households
+	c.HouseholdYears += d.HouseholdYears
+	c.AboveTop += d.AboveTop
+}
+
+// Result counts what was simulated, in all and by group. After an error it covers
+// the blocks that were committed.
+type Result struct {
+	Count
+	Groups      []Count // [group]
+	HighestCash float64 // money; 0 if nobody was simulated
 }
 
 // Simulate draws the households of p and hands them to work block by block. The
@@ -38,8 +51,10 @@ type Result struct {
 // number of households: each worker keeps one block.
 //
 // It returns an error if p is invalid, if a household comes to a state that its
-// utility does not allow (*StateError), if work or a commit fails, or, wrapping
-// context.Cause(ctx), within a block of the end of ctx.
+// utility does not allow (*StateError), if work or a commit fails or panics, or,
+// wrapping context.Cause(ctx), within a block of the end of ctx. An error counts
+// in its block's turn: whatever the number of workers, the blocks before it are
+// committed and those after it are not.
 func Simulate(ctx context.Context, p *Population, o Options, work Work) (Result, error) {
 	if err := p.Validate(); err != nil {
 		return Result{}, err
@@ -52,7 +67,8 @@ func Simulate(ctx context.Context, p *Population, o Options, work Work) (Result,
 	}
 	r := newRunner(ctx, p, o, work)
 	var wg sync.WaitGroup
-	for w := range max(1, o.Workers) {
+	blocks := (o.To - o.From + Unit - 1) / Unit
+	for w := range int(min(int64(max(1, o.Workers)), blocks)) {
 		wg.Add(1)
 		go func() {
 			defer wg.Done()
@@ -75,7 +91,7 @@ type runner struct {
 	plan *plan
 
 	next   atomic.Int64 // first id not yet taken
-	failed atomic.Bool  // err is set
+	failed atomic.Bool  // no further blocks are begun
 
 	mu        sync.Mutex // guards what follows; held while a block is committed
 	turn      *sync.Cond // a block was committed, or the run has failed
@@ -85,7 +101,8 @@ type runner struct {
 }
 
 func newRunner(ctx context.Context, p *Population, o Options, work Work) *runner {
-	r := &runner{ctx: ctx, p: p, o: o, work: work, plan: newPlan(p), committed: o.From}
+	r := &runner{ctx: ctx, p: p, o: o, work: work, plan: newPlan(p), committed: o.From,
+		result: Result{Groups: make([]Count, len(p.Groups))}}
 	r.next.Store(o.From)
 	r.turn = sync.NewCond(&r.mu)
 	return r
@@ -93,31 +110,39 @@ func newRunner(ctx context.Context, p *Population, o Options, work Work) *runner
 
 // worker simulates blocks until there is none left.
 func (r *runner) worker(w int) {
-	defer func() {
-		if e := recover(); e != nil {
-			r.fail(fmt.Errorf("sim: %v\n%s", e, debug.Stack()))
-		}
-	}()
 	c := newCrew(r.plan, r.o.Columns)
 	for {
 		first, ok := r.take()
-		if !ok {
-			return
-		}
-		n := int(min(Unit, r.o.To-first))
-		if err := c.block(first, n); err != nil {
-			r.fail(err)
-			return
-		}
-		commit, err := r.work(w, &c.out)
-		if err != nil {
-			r.fail(err)
-			return
-		}
-		if !r.commit(first, n, c, commit) {
+		if !ok || !r.block(w, c, first) {
 			return
 		}
 	}
+}
+
+// block simulates and commits the block that begins at household first. It
+// reports whether the run goes on. A panic in it, or the end of its goroutine,
+// ends the run, not the program.
+func (r *runner) block(w int, c *crew, first int64) (ok bool) {
+	finished := false
+	defer func() {
+		if e := recover(); e != nil {
+			r.fail(first, fmt.Errorf("sim: households from %d: panic: %v\n%s", first, e, debug.Stack()))
+		} else if !finished {
+			r.fail(first, fmt.Errorf("sim: households from %d: the work on them ended its goroutine", first))
+		}
+	}()
+	err := c.block(first, int(min(Unit, r.o.To-first)))
+	var commit func() error
+	if err == nil {
+		commit, err = r.work(w, &c.out)
+	}
+	if err != nil {
+		r.fail(first, err)
+	} else {
+		ok = r.commit(first, c, commit)
+	}
+	finished = true
+	return ok
 }
 
 // take hands out the next block.
@@ -129,15 +154,21 @@ func (r *runner) take() (first int64, ok bool) {
 	return first, first < r.o.To
 }
 
-// commit waits for the blocks before and commits this one. Waiting bounds the
-// memory: a worker cannot run ahead.
-func (r *runner) commit(first int64, n int, c *crew, commit func() error) bool {
-	r.mu.Lock()
-	defer r.mu.Unlock()
-	for r.committed != first && r.err == nil {
+// await waits until it is the turn of the block that begins at first, or the run
+// has failed before it: it reports which. Waiting bounds the memory: a worker
+// cannot run ahead. mu is held.
+func (r *runner) await(first int64) bool {
+	for r.committed < first && r.err == nil {
 		r.turn.Wait()
 	}
-	if r.err != nil {
+	return r.err == nil
+}
+
+// commit commits a block in its turn. It reports whether the run goes on.
+func (r *runner) commit(first int64, c *crew, commit func() error) bool {
+	r.mu.Lock()
+	defer r.mu.Unlock()
+	if !r.await(first) {
 		return false
 	}
 	if commit != nil {
@@ -147,10 +178,13 @@ func (r *runner) commit(first int64, n int, c *crew, commit func() error) bool {
 		}
 	}
 	r.committed = first + Unit
-	r.result.Households += int64(n)
-	r.result.HouseholdYears += int64(c.out.N)
-	r.result.AboveTop += c.aboveTop
-	r.result.HighestCash = max(r.result.HighestCash, c.highestCash)
+	if r.result.Households == 0 || c.highestCash > r.result.HighestCash {
+		r.result.HighestCash = c.highestCash
+	}
+	for g, n := range c.counts {
+		r.result.Groups[g].add(n)
+		r.result.add(n)
+	}
 	r.turn.Broadcast()
 	if r.o.OnProgress != nil {
 		r.o.OnProgress(min(r.committed, r.o.To)-r.o.From, r.o.To-r.o.From)
@@ -158,17 +192,19 @@ func (r *runner) commit(first int64, n int, c *crew, commit func() error) bool {
 	return true
 }
 
-func (r *runner) fail(err error) {
+// fail ends the run with err in the turn of the block that begins at first.
+func (r *runner) fail(first int64, err error) {
 	r.mu.Lock()
 	defer r.mu.Unlock()
-	r.setError(err)
+	r.failed.Store(true) // no further blocks are begun
+	if r.await(first) {
+		r.setError(err)
+	}
 }
 
 // setError notes the first error and wakes whoever waits; mu is held.
 func (r *runner) setError(err error) {
-	if r.err == nil {
-		r.err = err
-		r.failed.Store(true)
-	}
+	r.err = err
+	r.failed.Store(true)
 	r.turn.Broadcast()
 }

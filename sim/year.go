@@ -31,8 +31,7 @@ func (c *crew) year(tp *typePlan, t, from, to, row int) error {
 	}
 	tp.rule[t].Evaluate(node, cash, consumption, propensity)
 	if i := settle(node, cash, consumption, assets, tp.bound[t], tp.floor, &c.highestCash); i >= 0 {
-		return &StateError{Group: c.pl.p.Groups[tp.group].Name, Age: tp.h.FirstAge + t, Household: b.First + int64(c.slot[from+i]),
-			Cash: cash[i], Consumption: consumption[i]}
+		return c.stateError(tp, t, from+i, cash[i], consumption[i])
 	}
 	c.countAbove(tp, t, node, cash)
 	copy(c.assets[from:to], assets)
@@ -46,11 +45,21 @@ func (c *crew) year(tp *typePlan, t, from, to, row int) error {
 	if c.want&Propensity != 0 {
 		atLimit(b.AtLimit[row:end], node, assets, tp.bound[t])
 	}
-	if c.want&Twins != 0 && tp.twin != nil {
-		c.liveTwins(tp, t, c.twin[from:to], row, end)
+	if c.want&Twins != 0 {
+		if i := c.liveTwins(tp, t, c.twin[from:to], row, end); i >= 0 {
+			err := c.stateError(tp, t, from+i, b.TwinAssets[row+i]+b.TwinConsumption[row+i], b.TwinConsumption[row+i])
+			err.Twin = true
+			return err
+		}
 	}
 	c.fates(tp, t, from, node, row, end)
 	return nil
+}
+
+// stateError is about the i-th of the living.
+func (c *crew) stateError(tp *typePlan, t, i int, cash, consumption float64) *StateError {
+	return &StateError{Group: c.pl.p.Groups[tp.group].Name, Age: tp.h.FirstAge + t, Household: c.out.First + int64(c.slot[i]),
+		Cash: cash, Consumption: consumption}
 }
 
 // work sets the income of a working year, and its parts where they are wanted.
@@ -150,6 +159,12 @@ func settle(node []uint8, cash, consumption, assets, bounds []float64, floor flo
 	if sound {
 		return -1
 	}
+	return unsound(consumption, floor)
+}
+
+// unsound returns the index of a consumption that is not a number above the floor,
+// or −1.
+func unsound(consumption []float64, floor float64) int {
 	for i, c := range consumption {
 		if !(c > floor && c <= math.MaxFloat64) {
 			return i
@@ -165,7 +180,7 @@ func (c *crew) countAbove(tp *typePlan, t int, node []uint8, cash []float64) {
 	}
 	for i, m := range cash {
 		if m > tp.rule[t].Top(int(node[i])) {
-			c.aboveTop++
+			c.counts[tp.group].AboveTop++
 		}
 	}
 }
@@ -178,19 +193,27 @@ func atLimit(dst []bool, node []uint8, assets, bounds []float64) {
 	}
 }
 
-// liveTwins takes the certain twins through the year.
-func (c *crew) liveTwins(tp *typePlan, t int, twin []float64, row, end int) {
-	b := &c.out
-	money, spent := b.TwinAssets[row:end], b.TwinConsumption[row:end]
+// liveTwins takes the certain twins through the year. It returns the index of one
+// whose consumption its utility does not allow, or −1. Types without twins have
+// NaN.
+func (c *crew) liveTwins(tp *typePlan, t int, twin []float64, row, end int) int {
+	kept, spent := c.out.TwinAssets[row:end], c.out.TwinConsumption[row:end]
+	if tp.twin == nil {
+		for i := range kept {
+			kept[i], spent[i] = math.NaN(), math.NaN()
+		}
+		return -1
+	}
 	R := 1 + tp.h.Return
 	for i, a := range twin {
-		money[i] = float64(R*a) + tp.twinMoney[t]
+		kept[i] = float64(R*a) + tp.twinMoney[t]
 	}
-	tp.twin[t].Evaluate(nil, money, spent, nil)
-	for i := range money {
-		money[i] -= spent[i]
-		twin[i] = money[i]
+	tp.twin[t].Evaluate(nil, kept, spent, nil)
+	for i := range kept {
+		kept[i] -= spent[i]
+		twin[i] = kept[i]
 	}
+	return unsound(spent, tp.floor)
 }
 
 // fates says who dies at the end of year t, notes them and moves everybody's
