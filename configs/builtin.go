@@ -1,0 +1,47 @@
+package configs
+
+import (
+	"embed"
+	"fmt"
+	"slices"
+	"strings"
+)
+
+//go:embed scenarios
+var shipped embed.FS
+
+// Default is the scenario of a run that names none.
+const Default = "quayside"
+
+// Names returns the built-in scenarios, the default first.
+func Names() []string {
+	entries, err := shipped.ReadDir("scenarios")
+	if err != nil {
+		panic("configs: " + err.Error()) // embedded
+	}
+	var names []string
+	for _, e := range entries {
+		if name, ok := strings.CutSuffix(e.Name(), ".yaml"); ok {
+			names = append(names, name)
+		}
+	}
+	slices.SortFunc(names, func(a, b string) int {
+		if (a == Default) != (b == Default) {
+			if a == Default {
+				return -1
+			}
+			return 1
+		}
+		return strings.Compare(a, b)
+	})
+	return names
+}
+
+// Source returns a built-in scenario as it is written, comments and all.
+func Source(name string) ([]byte, error) {
+	data, err := shipped.ReadFile("scenarios/" + name + ".yaml")
+	if err != nil {
+		return nil, &PosError{File: name, Message: fmt.Sprintf("is not a built-in scenario; there are %s%s", strings.Join(Names(), ", "), suggest(name, Names()))}
+	}
+	return data, nil
+}

@@ -1,0 +1,65 @@
+package configs
+
+import "cistern/policy"
+
+// Cost is what a run is expected to take.
+type Cost struct {
+	HouseholdYears float64
+	NodeUpdates    float64 // evaluations of next year's rule in solving, twins aside
+	Seconds        float64 // on the given number of workers
+	MemoryBytes    float64
+	DiskBytes      float64
+}
+
+// Rates of a run, measured on one core of a 2.8 GHz server processor; a laptop
+// is within a factor of two.
+const (
+	secondsPerUpdate   = 12e-9
+	secondsPerRow      = 70e-9  // simulation and summary
+	secondsPerRowFile  = 230e-9 // encoding and compressing a row
+	bytesPerRowDouble  = 66
+	bytesPerRowSingle  = 34
+	bytesPerRule       = 112 // a node of a rule and of its table
+	bytesPerWorker     = 70 << 20
+	bytesFixed         = 320 << 20
+	kinkNodes          = 1.4 // nodes of a cubic rule over those of the fixed grid
+	bytesPerPolicyNode = 40
+)
+
+// Cost estimates a run on a number of workers.
+func (sc *Scenario) Cost(workers int) Cost {
+	workers = max(workers, 1)
+	c := Cost{MemoryBytes: bytesFixed + float64(workers)*bytesPerWorker}
+	nodes := 0.0
+	for _, p := range sc.Problems() {
+		h := p.Household
+		alive, years := 1.0, 0.0
+		for _, s := range h.Survival {
+			years += alive
+			alive *= s
+		}
+		g := sc.Groups[p.Group]
+		c.HouseholdYears += float64(sc.Households) * g.Share / float64(len(g.Discounts)) * years
+		points := float64(sc.Solver.AssetPoints)
+		if sc.Solver.Interpolation == policy.Cubic {
+			points *= kinkNodes
+		}
+		_, outcomes := h.Income(0, 0)
+		perAge := points * float64(h.Nodes())
+		c.NodeUpdates += perAge * (float64(h.WorkingYears())*float64(len(outcomes)) + float64(h.Years()-h.WorkingYears()))
+		nodes += perAge * float64(h.Years())
+	}
+	c.MemoryBytes += nodes * bytesPerRule
+	perRow := secondsPerRow
+	if sc.Panel.Write {
+		perRow += secondsPerRowFile
+		bytes := float64(bytesPerRowDouble)
+		if sc.Panel.Precision == "single" {
+			bytes = bytesPerRowSingle
+		}
+		c.DiskBytes += c.HouseholdYears * bytes
+	}
+	c.DiskBytes += nodes * bytesPerPolicyNode
+	c.Seconds = (c.NodeUpdates*secondsPerUpdate + c.HouseholdYears*perRow) / float64(workers)
+	return c
+}
