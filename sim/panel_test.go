@@ -3,6 +3,8 @@ package sim
 import (
 	"fmt"
 	"math"
+	"slices"
+	"sync"
 	"testing"
 
 	"cistern/income"
@@ -94,10 +96,21 @@ func riskyWith(tb testing.TB, change func(*income.Process)) policy.Household {
 	return h
 }
 
-// mixed is two groups, one with three and one with two discount factors.
+// mixed is two groups, one with three and one with two discount factors. Its rules
+// are solved once.
 func mixed(tb testing.TB, households int64) *Population {
 	tb.Helper()
-	p := &Population{Seed: 5, Households: households, Groups: []Group{{Name: "dockers", Share: 0.7, Types: []int{0, 1, 2}}, {Name: "clerks", Share: 0.3, Types: []int{3, 4}}}}
+	mixedOnce.Do(func() { mixedTypes = solveMixed(tb) })
+	return &Population{Seed: 5, Households: households, Types: slices.Clone(mixedTypes),
+		Groups: []Group{{Name: "dockers", Share: 0.7, Types: []int{0, 1, 2}}, {Name: "clerks", Share: 0.3, Types: []int{3, 4}}}}
+}
+
+var (
+	mixedOnce  sync.Once
+	mixedTypes []Type
+)
+
+func solveMixed(tb testing.TB) (types []Type) {
 	for i, beta := range []float64{0.90, 0.94, 0.98, 0.92, 0.96} {
 		h := risky(tb)
 		group := 0
@@ -112,9 +125,9 @@ func mixed(tb testing.TB, households int64) *Population {
 		h.DiscountFactor = beta
 		one := population(tb, h, 1)
 		one.Types[0].Group = group
-		p.Types = append(p.Types, one.Types[0])
+		types = append(types, one.Types[0])
 	}
-	return p
+	return types
 }
 
 // exponential is a household with exponential utility and normal income in form

@@ -96,8 +96,12 @@ func (p *Population) Validate() error {
 	if !(math.Abs(sum-1) < 1e-9) {
 		bad("shares sum to %v, want 1", sum)
 	}
+	years := 0 // of the first type that has a rule
 	for i, t := range p.Types {
-		errs = append(errs, t.validate(i, p.Years()))
+		if t.Rule != nil && years == 0 {
+			years = t.Rule.Household.Years()
+		}
+		errs = append(errs, t.validate(i, years))
 	}
 	return errors.Join(errs...)
 }
@@ -112,13 +116,13 @@ func (t Type) validate(i, years int) error {
 		return errors.Join(errs...)
 	}
 	if n := t.Rule.Household.Years(); n != years {
-		bad("lives up to %d years, the first type %d", n, years)
+		bad("lives up to %d years, others %d", n, years)
 	}
 	if n := t.Rule.Household.Nodes(); n > 256 {
 		bad("has %d persistent nodes, want at most 256", n)
 	}
 	if t.Twin != nil && t.Twin.Household.Years() != years {
-		bad("its twin lives up to %d years, the first type %d", t.Twin.Household.Years(), years)
+		bad("its twin lives up to %d years, others %d", t.Twin.Household.Years(), years)
 	}
 	s := t.Start
 	if !(s.Median >= 0) || !(s.LogSD >= 0) || !(s.ZeroShare >= 0 && s.ZeroShare <= 1) || math.IsNaN(s.Constant) ||
