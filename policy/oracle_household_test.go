@@ -37,7 +37,7 @@ func TestSolveAgainstOracle(t *testing.T) {
 		{"log, natural limit", CRRA{1}, Limit{Kind: LimitNatural}, Bequest{}},
 		{"crra, debt and bequest", CRRA{0.7}, Limit{Amount: 0.3}, Bequest{Weight: 2, Shift: 0.5}},
 		{"stone_geary", StoneGeary{2, 0.1}, Limit{}, Bequest{}},
-		{"quadratic, limit", Quadratic{4}, Limit{}, Bequest{}},
+		{"quadratic, limit", Quadratic{15}, Limit{}, Bequest{}},
 		{"cara, limit", CARA{1.5}, Limit{Amount: 0.2}, Bequest{}},
 	} {
 		t.Run(tt.name, func(t *testing.T) {
