@@ -20,6 +20,9 @@ func (p AR1) Validate() error {
 	if !(p.InnovationSD >= 0) || math.IsInf(p.InnovationSD, 1) {
 		f.add("InnovationSD", p.InnovationSD, "at least 0 and finite")
 	}
+	if len(f) == 0 && math.IsInf(p.StationarySD(), 1) {
+		f.add("InnovationSD", p.InnovationSD, "small enough for a finite stationary standard deviation")
+	}
 	return errors.Join(f...)
 }
 
@@ -28,7 +31,8 @@ func (p AR1) StationarySD() float64 {
 	return p.InnovationSD / math.Sqrt((1-p.Autocorrelation)*(1+p.Autocorrelation))
 }
 
-// Moments returns the stationary moments of the process itself.
+// Moments returns the stationary moments of the process itself, those of a normal
+// law.
 func (p AR1) Moments() Moments {
 	return Moments{SD: p.StationarySD(), Autocorrelation: p.Autocorrelation, Kurtosis: 3}
 }

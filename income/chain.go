@@ -1,14 +1,59 @@
 package income
 
 import (
+	"errors"
+	"fmt"
 	"math"
-	"slices"
 )
 
 // Chain is a finite Markov chain for the persistent part.
 type Chain struct {
 	Nodes      []float64 // z, ascending, n entries
 	Transition []float64 // n×n, row-major: row = this year, column = next year; rows sum to 1
+}
+
+// rowTolerance is how far a row of a chain may be from summing to 1.
+const rowTolerance = 1e-12
+
+// Validate reports every fault of a chain at once, each as a *FieldError: no
+// nodes, nodes that are not finite and ascending, a matrix of another size,
+// entries that are no probabilities, rows that miss 1 by more than 1e-12.
+func (c *Chain) Validate() error {
+	var f faults
+	n := c.Len()
+	if n == 0 {
+		f.add("Nodes", "empty", "at least one node")
+	}
+	for i, z := range c.Nodes {
+		switch {
+		case math.IsNaN(z) || math.IsInf(z, 0):
+			f.add(fmt.Sprintf("Nodes[%d]", i), z, "a finite number")
+		case i > 0 && z <= c.Nodes[i-1]:
+			f.add(fmt.Sprintf("Nodes[%d]", i), z, "above the node before it")
+		}
+	}
+	if len(c.Transition) != n*n {
+		f.add("Transition", fmt.Sprintf("%d entries", len(c.Transition)), fmt.Sprintf("%d, a row of %d for each node", n*n, n))
+		return errors.Join(f...)
+	}
+	for i := range n {
+		if sum := total(c.Row(i)); !(math.Abs(sum-1) <= rowTolerance) {
+			f.add(fmt.Sprintf("Transition row %d", i), sum, "probabilities that sum to 1")
+		}
+	}
+	return errors.Join(f...)
+}
+
+// total returns the sum of p, NaN if an entry is negative or NaN.
+func total(p []float64) float64 {
+	sum := 0.0
+	for _, q := range p {
+		if !(q >= 0) {
+			return math.NaN()
+		}
+		sum += q
+	}
+	return sum
 }
 
 // A Discretiser replaces an AR(1) process by a chain. It reports an invalid
@@ -40,47 +85,17 @@ func (c *Chain) Step(dst, p []float64) {
 	}
 }
 
-// Stationary returns the distribution that a year leaves unchanged, by the
-// elimination of Grassmann, Taksar and Heyman (1985, Operations Research 33),
-// which subtracts nothing and so keeps its digits at any persistence. Nodes that
-// the rest of the chain cannot reach have probability 0.
-func (c *Chain) Stationary() []float64 {
-	n := c.Len()
-	a := slices.Clone(c.Transition)
-	p := make([]float64, n)
-	for k := n - 1; k > 0; k-- {
-		out := 0.0
-		for j := range k {
-			out += a[k*n+j]
-		}
-		if out == 0 {
-			continue
-		}
-		for i := range k {
-			a[i*n+k] /= out
-			for j := range k {
-				a[i*n+j] += a[i*n+k] * a[k*n+j]
-			}
-		}
-	}
-	p[0] = 1
-	sum := 1.0
-	for k := 1; k < n; k++ {
-		for i := range k {
-			p[k] += p[i] * a[i*n+k]
-		}
-		sum += p[k]
-	}
-	for k := range p {
-		p[k] /= sum
-	}
-	return p
-}
-
 // Project puts N(0, sd²) on the nodes: each gets the normal probability of its
 // cell, cells meeting half-way between nodes. With sd 0 the node nearest to 0 has
-// all (two equally near share).
+// all (two equally near share). It panics if sd is negative or NaN.
+//
+// The variance on the nodes is about sd² + h²/12, h the distance between nodes,
+// as long as sd is above h/2; far below that everything falls on the middle
+// nodes. [ProjectionRemarks] says when this matters.
 func (c *Chain) Project(sd float64) []float64 {
+	if !(sd >= 0) {
+		panic("income: a standard deviation cannot be negative")
+	}
 	n := c.Len()
 	p := make([]float64, n)
 	if sd == 0 {
@@ -137,5 +152,6 @@ func normalBetween(a, b float64) float64 {
 	if a > 0 {
 		a, b = -b, -a
 	}
-	return (math.Erfc(-b/math.Sqrt2) - math.Erfc(-a/math.Sqrt2)) / 2
+	// max: Erfc is monotone only up to rounding.
+	return max(0, math.Erfc(-b/math.Sqrt2)-math.Erfc(-a/math.Sqrt2)) / 2
 }

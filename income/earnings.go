@@ -1,6 +1,10 @@
 package income
 
-import "math"
+import (
+	"fmt"
+	"math"
+	"slices"
+)
 
 // Earnings is a Process with its tables by age. It is immutable and safe for
 // concurrent use. Index t counts years from FirstAge.
@@ -18,38 +22,64 @@ type Earnings struct {
 }
 
 // Build prepares the tables. An invalid process is reported as *FieldError, all
-// faults at once.
+// faults at once; so are earnings too large to be numbers. Changing the process's
+// slices afterwards does not change the tables.
 func (p Process) Build() (*Earnings, error) {
 	if err := p.Validate(); err != nil {
 		return nil, err
 	}
-	e := &Earnings{Process: p, Distribution: p.Chain.ByAge(p.Initial, len(p.Profile)), Kappa: make([]float64, len(p.Profile))}
+	p.Profile, p.Initial = slices.Clone(p.Profile), slices.Clone(p.Initial)
+	years := len(p.Profile)
+	e := &Earnings{
+		Process:      p,
+		Distribution: p.Chain.ByAge(p.Initial, years),
+		Kappa:        make([]float64, years),
+		Base:         make([][]float64, years),
+		Benefit:      make([][]float64, years),
+		values:       make([][][]float64, years),
+	}
 	e.placeShock()
-	for t := range p.Profile {
-		e.addYear(t)
+	for t := range years {
+		e.fillYear(t)
+		if err := e.checkYear(t); err != nil {
+			return nil, err
+		}
 	}
 	return e, nil
 }
 
-// placeShock sets the transitory nodes and the outcomes' probabilities.
-func (e *Earnings) placeShock() {
-	x, w := NormalNodes(e.Transitory.Rule, e.Transitory.Nodes)
-	e.Weight, e.Factor = w, x
-	mean := 0.0
-	for k := range x {
-		x[k] *= e.Transitory.SD
-		if e.Form == Log {
-			x[k] = math.Exp(x[k])
-			mean += w[k] * x[k]
+// checkYear reports earnings that overflow.
+func (e *Earnings) checkYear(t int) error {
+	for j, values := range e.values[t] {
+		for _, y := range values {
+			if math.IsNaN(y) || math.IsInf(y, 0) {
+				return &FieldError{fmt.Sprintf("earnings at age %d and z = %v", e.FirstAge+t, e.Chain.Nodes[j]), y, "a finite number: a smaller profile or smaller shocks"}
+			}
 		}
 	}
-	if e.Form == Log && e.ProfileIs == Mean {
-		for k := range x {
-			x[k] /= mean
+	return nil
+}
+
+// meanInLogs reports whether mean-preserving corrections apply.
+func (e *Earnings) meanInLogs() bool { return e.Form == Log && e.ProfileIs == Mean }
+
+// placeShock sets the transitory nodes and the outcomes' probabilities.
+func (e *Earnings) placeShock() {
+	e.Factor, e.Weight = e.Transitory.shock()
+	if e.Form == Log {
+		mean := 0.0
+		for k, x := range e.Factor {
+			e.Factor[k] = math.Exp(x)
+			mean += e.Weight[k] * e.Factor[k]
+		}
+		for k := range e.Factor {
+			if e.meanInLogs() {
+				e.Factor[k] /= mean
+			}
 		}
 	}
 	p := e.JobLoss.Probability
-	for _, q := range w {
+	for _, q := range e.Weight {
 		e.weights = append(e.weights, (1-p)*q)
 	}
 	if p > 0 {
@@ -57,37 +87,49 @@ func (e *Earnings) placeShock() {
 	}
 }
 
-// addYear appends year t to the tables.
-func (e *Earnings) addYear(t int) {
+// fillYear fills the tables of year t.
+func (e *Earnings) fillYear(t int) {
 	n := e.Chain.Len()
-	if e.Form == Log && e.ProfileIs == Mean {
-		mean := 0.0
-		for j, q := range e.Distribution[t] {
-			mean += q * math.Exp(e.Chain.Nodes[j])
-		}
-		e.Kappa[t] = math.Log(mean)
+	if e.meanInLogs() {
+		e.Kappa[t] = logMeanExp(e.Distribution[t], e.Chain.Nodes)
 	}
-	base, benefit, values := make([]float64, n), make([]float64, n), make([][]float64, n)
+	e.Base[t], e.Benefit[t], e.values[t] = make([]float64, n), make([]float64, n), make([][]float64, n)
 	for j, z := range e.Chain.Nodes {
 		if e.Form == Log {
-			base[j] = e.Profile[t] * math.Exp(z-e.Kappa[t])
-			benefit[j] = e.JobLoss.BenefitRate * base[j]
+			e.Base[t][j] = e.Profile[t] * math.Exp(z-e.Kappa[t])
+			e.Benefit[t][j] = e.JobLoss.BenefitRate * e.Base[t][j]
 		} else {
-			base[j] = e.Profile[t] + z
-			benefit[j] = e.JobLoss.BenefitRate * e.Profile[t]
+			e.Base[t][j] = e.Profile[t] + z
+			e.Benefit[t][j] = e.JobLoss.BenefitRate * e.Profile[t]
 		}
-		for _, f := range e.Factor {
-			if e.Form == Log {
-				values[j] = append(values[j], base[j]*f)
-			} else {
-				values[j] = append(values[j], base[j]+f)
-			}
-		}
-		if e.JobLoss.Probability > 0 {
-			values[j] = append(values[j], benefit[j])
+		e.values[t][j] = e.outcomes(e.Base[t][j], e.Benefit[t][j])
+	}
+}
+
+// outcomes returns what can be earned at a node, in the order of e.weights.
+func (e *Earnings) outcomes(base, benefit float64) []float64 {
+	y := make([]float64, 0, len(e.weights))
+	for _, f := range e.Factor {
+		if e.Form == Log {
+			y = append(y, base*f)
+		} else {
+			y = append(y, base+f)
 		}
 	}
-	e.Base, e.Benefit, e.values = append(e.Base, base), append(e.Benefit, benefit), append(e.values, values)
+	if e.JobLoss.Probability > 0 {
+		y = append(y, benefit)
+	}
+	return y
+}
+
+// logMeanExp returns ln Σ p·exp(z) without overflow.
+func logMeanExp(p, z []float64) float64 {
+	top := z[len(z)-1]
+	mean := 0.0
+	for j, q := range p {
+		mean += q * math.Exp(z[j]-top)
+	}
+	return top + math.Log(mean)
 }
 
 // Years returns the number of working years.
@@ -103,7 +145,7 @@ func (e *Earnings) Outcomes(t, node int) (values, weights []float64) {
 
 // LogShift returns σ_ε²/2 where the profile is a mean in form log, 0 elsewhere.
 func (e *Earnings) LogShift() float64 {
-	if e.Form == Log && e.ProfileIs == Mean {
+	if e.meanInLogs() {
 		return e.Transitory.SD * e.Transitory.SD / 2
 	}
 	return 0

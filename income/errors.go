@@ -1,10 +1,14 @@
 package income
 
-import "fmt"
+import (
+	"errors"
+	"fmt"
+)
 
-// A FieldError is a value that a field cannot have.
+// A FieldError is a value that a field cannot have. Where there are several, they
+// come joined; [Faults] takes them apart.
 type FieldError struct {
-	Field string
+	Field string // Go name, with a dot between levels and an index where there is one
 	Value any
 	Want  string // the allowed range, in words
 }
@@ -13,9 +17,32 @@ func (e *FieldError) Error() string {
 	return fmt.Sprintf("%s: is %v, want %s", e.Field, e.Value, e.Want)
 }
 
+// Faults returns the field errors in err, in the order found.
+func Faults(err error) []*FieldError {
+	var one *FieldError
+	if many, ok := err.(interface{ Unwrap() []error }); ok {
+		var out []*FieldError
+		for _, e := range many.Unwrap() {
+			out = append(out, Faults(e)...)
+		}
+		return out
+	}
+	if errors.As(err, &one) {
+		return []*FieldError{one}
+	}
+	return nil
+}
+
 // faults collects field errors.
 type faults []error
 
 func (f *faults) add(field string, value any, want string) {
 	*f = append(*f, &FieldError{field, value, want})
+}
+
+// addAll adds the faults of a part.
+func (f *faults) addAll(err error) {
+	if err != nil {
+		*f = append(*f, err)
+	}
 }

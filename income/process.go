@@ -70,29 +70,35 @@ func (p Process) Validate() error {
 			f.add(fmt.Sprintf("Profile[%d]", t), y, "positive in form log")
 		}
 	}
-	if p.Chain == nil || p.Chain.Len() == 0 {
-		f.add("Chain", nil, "a chain")
-	} else if len(p.Initial) != p.Chain.Len() {
-		f.add("Initial", len(p.Initial), fmt.Sprintf("%d probabilities, one for each node", p.Chain.Len()))
-	} else if sum := total(p.Initial); !(math.Abs(sum-1) < 1e-9) {
-		f.add("Initial", sum, "probabilities that sum to 1")
+	if p.Form != Log && p.Form != Level {
+		f.add("Form", int(p.Form), "log or level")
 	}
+	if p.ProfileIs != Mean && p.ProfileIs != Median {
+		f.add("ProfileIs", int(p.ProfileIs), "mean or median")
+	}
+	f.addAll(p.validateChain())
 	if q := p.JobLoss.Probability; !(q >= 0 && q <= 1) {
 		f.add("JobLoss.Probability", q, "from 0 to 1")
 	}
 	if b := p.JobLoss.BenefitRate; !(b >= 0) || math.IsInf(b, 1) {
 		f.add("JobLoss.BenefitRate", b, "at least 0 and finite")
 	}
-	return errors.Join(errors.Join(f...), p.Transitory.validate())
+	f.addAll(p.Transitory.Validate())
+	return errors.Join(f...)
 }
 
-func total(p []float64) float64 {
-	sum := 0.0
-	for _, q := range p {
-		if !(q >= 0) {
-			return math.NaN()
-		}
-		sum += q
+func (p Process) validateChain() error {
+	if p.Chain == nil {
+		return &FieldError{"Chain", nil, "a chain; without persistent risk the degenerate one"}
 	}
-	return sum
+	if err := p.Chain.Validate(); err != nil {
+		return err
+	}
+	if n := p.Chain.Len(); len(p.Initial) != n {
+		return &FieldError{"Initial", fmt.Sprintf("%d probabilities", len(p.Initial)), fmt.Sprintf("%d, one for each node", n)}
+	}
+	if sum := total(p.Initial); !(math.Abs(sum-1) <= rowTolerance) {
+		return &FieldError{"Initial", sum, "probabilities that sum to 1"}
+	}
+	return nil
 }

@@ -1,6 +1,7 @@
 package income
 
 import (
+	"errors"
 	"fmt"
 	"math"
 )
@@ -24,23 +25,32 @@ func Polynomial(form Form, coefficients []float64, from float64, first, years in
 	return p
 }
 
-// Table returns earnings by age from a table that must hold every age from first
-// on; a missing age is reported as a *FieldError.
+// Table returns earnings by age from a table in any order that must hold every age
+// from first on; nothing is filled in between. Ages that are missing or there
+// twice are reported at once, each as a *FieldError. Earnings of other ages are
+// not used.
 func Table(ages []int, earnings []float64, first, years int) ([]float64, error) {
 	if len(ages) != len(earnings) {
 		panic("income: ages and earnings differ in length")
 	}
+	var f faults
 	at := make(map[int]float64, len(ages))
 	for i, a := range ages {
+		if _, twice := at[a]; twice {
+			f.add(fmt.Sprintf("ages[%d]", i), a, "each age once")
+		}
 		at[a] = earnings[i]
 	}
 	p := make([]float64, years)
 	for t := range p {
 		y, ok := at[first+t]
 		if !ok {
-			return nil, &FieldError{"table", fmt.Sprintf("without age %d", first+t), fmt.Sprintf("every age from %d to %d", first, first+years-1)}
+			f.add("ages", fmt.Sprintf("without %d", first+t), fmt.Sprintf("every age from %d to %d", first, first+years-1))
 		}
 		p[t] = y
+	}
+	if err := errors.Join(f...); err != nil {
+		return nil, err
 	}
 	return p, nil
 }

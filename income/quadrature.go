@@ -15,7 +15,8 @@ const (
 	// marginal utility that is averaged has a kink where the borrowing limit starts
 	// to bind; there 15 of its nodes do as well as 31 of Gauss–Hermite.
 	Trapezoid Rule = iota
-	// GaussHermite is exact for polynomials up to degree 2n−1.
+	// GaussHermite is exact for polynomials up to degree 2n−1. Beyond 199 nodes they
+	// come from an asymptotic expansion, good to 12 digits.
 	GaussHermite
 )
 
@@ -31,8 +32,8 @@ func (r Rule) String() string {
 const trapezoidSpan = 4
 
 // NormalNodes returns n nodes and weights for expectations over N(0, 1), nodes
-// ascending and symmetric, weights summing to 1. One node is 0. It panics if n is
-// not positive.
+// ascending and symmetric to the bit, weights summing to 1. One node is 0. It
+// panics if n is not positive.
 func NormalNodes(r Rule, n int) (x, w []float64) {
 	if n < 1 {
 		panic("income: a quadrature rule needs a node")
@@ -81,14 +82,15 @@ func symmetrise(x, w []float64) {
 }
 
 // Transitory is the shock ε ~ N(0, SD²), independent over years, and how a solver
-// sums over it.
+// sums over it. A shock with SD 0 needs one node and gets one, whatever Nodes is.
 type Transitory struct {
 	SD    float64 // σ_ε ≥ 0; log points (form log) or money (form level)
 	Nodes int     // quadrature nodes, 1 to 1000
 	Rule  Rule
 }
 
-func (s Transitory) validate() error {
+// Validate reports every fault at once, each as a *FieldError.
+func (s Transitory) Validate() error {
 	var f faults
 	if !(s.SD >= 0) || math.IsInf(s.SD, 1) {
 		f.add("Transitory.SD", s.SD, "at least 0 and finite")
@@ -100,4 +102,16 @@ func (s Transitory) validate() error {
 		f.add("Transitory.Rule", int(s.Rule), "trapezoid or gauss_hermite")
 	}
 	return errors.Join(f...)
+}
+
+// shock returns the nodes of ε and their weights.
+func (s Transitory) shock() (x, w []float64) {
+	if s.SD == 0 {
+		return NormalNodes(s.Rule, 1)
+	}
+	x, w = NormalNodes(s.Rule, s.Nodes)
+	for k := range x {
+		x[k] *= s.SD
+	}
+	return x, w
 }

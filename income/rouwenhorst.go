@@ -2,16 +2,25 @@ package income
 
 import "math"
 
-// Rouwenhorst discretises by the method of Rouwenhorst (1995, in Frontiers of
-// Business Cycle Research, ed. Cooley) with the parameters of Kopecky and Suen
-// (2010, Review of Economic Dynamics 13): n evenly spaced nodes on
-// ±σ_z·√(n−1), p = (1+ρ)/2, and the transition matrix built up by
+// Rouwenhorst discretises by the method of
+//
+//	K. G. Rouwenhorst, "Asset pricing implications of equilibrium business cycle
+//	models", in T. F. Cooley (ed.), Frontiers of Business Cycle Research,
+//	Princeton (1995) 294–330,
+//
+// with the parameters of
+//
+//	K. A. Kopecky and R. M. H. Suen, "Finite state Markov-chain approximations to
+//	highly persistent processes", Review of Economic Dynamics 13 (2010) 701–714.
+//	doi:10.1016/j.red.2010.02.002
+//
+// n nodes lie evenly on ±σ_z·√(n−1), p = (1+ρ)/2, Θ_2 = [p 1−p; 1−p p] and
 //
 //	Θ_n = p·[Θ 0; 0 0] + (1−p)·[0 Θ; 0 0] + (1−p)·[0 0; Θ 0] + p·[0 0; 0 Θ],
 //
-// interior rows halved. For every n ≥ 2 and every node the conditional mean ρ·z
-// and the conditional variance σ² are exact, the stationary law is
-// Binomial(n−1, ½), and the kurtosis is 3 − 2/(n−1).
+// Θ being Θ_{n−1}, interior rows halved. For every n ≥ 2 and every node the
+// conditional mean ρ·z and the conditional variance σ² are exact, the stationary
+// law is Binomial(n−1, ½), and the kurtosis is 3 − 2/(n−1).
 type Rouwenhorst struct {
 	Points int // nodes, 2 to 1000
 }

@@ -17,7 +17,8 @@ func Certain(first, last int) []float64 {
 }
 
 // Gompertz is mortality with hazard (1/Dispersion)·exp((x−ModalAge)/Dispersion)
-// at exact age x (Gompertz 1825; in the modal-age form common practice).
+// at exact age x (Gompertz 1825, Philosophical Transactions 115; the modal-age
+// form is common practice).
 type Gompertz struct {
 	ModalAge   float64 // age at which most deaths happen, years
 	Dispersion float64 // years, > 0
@@ -39,8 +40,9 @@ func (g Gompertz) Survival(first, last int) ([]float64, error) {
 	}
 	s := Certain(first, last)
 	for t := range last - first {
-		x := (float64(first+t) - g.ModalAge) / g.Dispersion
-		s[t] = math.Exp(-math.Exp(x) * math.Expm1(1/g.Dispersion))
+		// From the hazard at the year's end: the factors cannot be 0 and ∞.
+		x := (float64(first+t+1) - g.ModalAge) / g.Dispersion
+		s[t] = math.Exp(math.Exp(x) * math.Expm1(-1/g.Dispersion))
 	}
 	return s, nil
 }
@@ -58,16 +60,18 @@ type LifeTable struct {
 }
 
 // Survival returns s_t = 1 − q_t for ages first … last; the last entry is 0. The
-// table must cover them all but the last.
+// table must cover them all but the last. Every fault is reported at once, each as
+// a *FieldError.
 func (l LifeTable) Survival(first, last int) ([]float64, error) {
 	var f faults
 	checkAges(&f, first, last)
-	if first < l.FirstAge || last > l.FirstAge+len(l.Q) {
-		f.add("Q", fmt.Sprintf("ages %d to %d", l.FirstAge, l.FirstAge+len(l.Q)-1), fmt.Sprintf("every age from %d to %d", first, last-1))
+	end := l.FirstAge + len(l.Q) // the first age beyond the table
+	if first < last && (first < l.FirstAge || last > end) {
+		f.add("Q", fmt.Sprintf("for ages %d to %d", l.FirstAge, end-1), fmt.Sprintf("every age from %d to %d", first, last-1))
 	}
 	for i, q := range l.Q {
 		if !(q >= 0 && q <= 1) {
-			f.add(fmt.Sprintf("Q at age %d", l.FirstAge+i), q, "from 0 to 1")
+			f.add(fmt.Sprintf("Q[%d] (age %d)", i, l.FirstAge+i), q, "from 0 to 1")
 		}
 	}
 	if err := errors.Join(f...); err != nil {
@@ -80,21 +84,34 @@ func (l LifeTable) Survival(first, last int) ([]float64, error) {
 	return s, nil
 }
 
+// infantYears is the part of their first year that infants who die in it live: at
+// low mortality most die in the first weeks (Coale and Demeny 1983, Regional Model
+// Life Tables, put it near 0.1 there; 0.1 is common practice).
+const infantYears = 0.1
+
 // Expectancy returns the remaining years of life expected at an age in the table,
-// deaths spread evenly over the year: Σ_k l_{x+k}·(1 − q_{x+k}/2) / l_x, the last
-// age of the table closed by its hazard held constant (common practice).
+//
+//	e_x = Σ_k (l_{x+k}/l_x)·(1 − q_{x+k}·(1 − a)),
+//
+// a = ½ because deaths spread over the year, 0.1 at age 0. Beyond the table's last
+// age its hazard holds on (common practice), so e is +Inf if nobody dies there. An
+// age outside the table has NaN.
 func (l LifeTable) Expectancy(age int) float64 {
 	i := age - l.FirstAge
 	if i < 0 || i >= len(l.Q) {
 		return math.NaN()
 	}
 	alive, years := 1.0, 0.0
-	for _, q := range l.Q[i:] {
-		years += alive * (1 - q/2)
+	for k, q := range l.Q[i:] {
+		lost := q / 2
+		if age+k == 0 {
+			lost = q * (1 - infantYears)
+		}
+		years += alive * (1 - lost)
 		alive *= 1 - q
 	}
-	if q := l.Q[len(l.Q)-1]; alive > 0 && q < 1 {
-		years += alive / -math.Log1p(-q)
+	if alive > 0 {
+		years += alive / -math.Log1p(-l.Q[len(l.Q)-1])
 	}
 	return years
 }

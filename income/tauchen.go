@@ -2,14 +2,23 @@ package income
 
 import (
 	"errors"
+	"fmt"
 	"math"
 )
 
-// Tauchen discretises by the method of Tauchen (1986, Economics Letters 20):
-// evenly spaced nodes on ±Span stationary standard deviations, and the chance to
-// move from z_i to z_j is that of the cell around z_j under N(ρ·z_i, σ²), cells
-// meeting half-way and the outer ones open. At high persistence the chain's
-// variance is far too high and it hardly moves: see Remarks.
+// Tauchen discretises by the method of
+//
+//	G. Tauchen, "Finite state Markov-chain approximations to univariate and
+//	vector autoregressions", Economics Letters 20 (1986) 177–181.
+//	doi:10.1016/0165-1765(86)90168-0
+//
+// Nodes lie evenly on ±Span stationary standard deviations. The chance to move
+// from z_i to z_j is that of the cell around z_j under N(ρ·z_i, σ²), cells meeting
+// half-way and the outer ones open.
+//
+// Where nodes lie far apart against σ, so at high persistence, the chain spreads
+// too far and hardly moves: nine nodes over three deviations overstate the
+// standard deviation by 10 % at ρ = 0.90 and by 28 % at ρ = 0.99. See [Remarks].
 type Tauchen struct {
 	Points int     // nodes, 2 to 1000
 	Span   float64 // half-width of the grid, in stationary standard deviations, > 0
@@ -18,7 +27,9 @@ type Tauchen struct {
 // Name returns "tauchen".
 func (Tauchen) Name() string { return "tauchen" }
 
-// Discretise implements Discretiser.
+// Discretise implements Discretiser. A chain with a node that would be left less
+// than once in 10¹⁰⁰ years is refused as a *FieldError: rounding would decide what
+// happens on it. The cost is O(Points²).
 func (g Tauchen) Discretise(p AR1) (*Chain, error) {
 	if err := validate(p, g.Points, g.Span); err != nil {
 		return nil, err
@@ -42,9 +53,28 @@ func (g Tauchen) Discretise(p AR1) (*Chain, error) {
 			below = above
 		}
 	}
+	if c.leastExit() < exitAtLeast {
+		return nil, &FieldError{"Points", n, fmt.Sprintf("more points (or a smaller span): %g standard deviations at autocorrelation %g leave nodes so far apart that one is never left", g.Span, p.Autocorrelation)}
+	}
 	return c, nil
 }
 
+// exitAtLeast is the smallest chance, a year, to leave a node that Discretise
+// accepts.
+const exitAtLeast = 1e-100
+
+// leastExit returns the smallest chance to leave any node, summed without
+// cancellation.
+func (c *Chain) leastExit() float64 {
+	least := 1.0
+	for i := range c.Nodes {
+		row := c.Row(i)
+		least = min(least, total(row[:i])+total(row[i+1:]))
+	}
+	return least
+}
+
+// validate checks what both methods need.
 func validate(p AR1, points int, span float64) error {
 	var f faults
 	if points < 2 || points > 1000 {
