@@ -2,44 +2,44 @@ package policy
 
 import "math"
 
-// Table is a rule in one year, laid out for evaluating it at many states: for
-// every persistent node the pieces of its curve as records of one cache line, and
-// a guide that leads from the bits of cash-on-hand to the right record in one or
-// two steps. It gives the same numbers as [Curve.At] to rounding, and is immutable
-// and safe for concurrent use.
+// Table is a rule in one year, laid out for evaluating it at many states: every
+// curve cut into pieces, each a cubic in the distance from the piece's lower edge,
+// and a guide that leads from the bits of cash-on-hand to the right piece in one
+// step or two. The stretch at the limit and the lines beyond the grid are pieces
+// like the others. It gives the same numbers as [Curve.At] to rounding, and is
+// immutable and safe for concurrent use.
+//
+// Edges stand apart from the cubics, so that a search stays within few cache lines
+// and a cubic in half of one: a panel reads the table of every age anew for every
+// block of households, and how long that takes depends on the table's size.
 type Table struct {
-	records []record
-	guide   []uint16 // [node][bucket] first record of the node that can hold a point of the bucket
-	first   []int32  // [node] the node's first record
-	buckets int      // a node
-	shift   uint     // of the bits of the scaled cash-on-hand
-	low     float64  // cash-on-hand where the first bucket begins
-	scale   float64  // 1/money
-	top     []float64
-}
+	edges []float64    // where pieces begin; node after node, each ending with +Inf
+	cubic [][4]float64 // the piece's coefficients; at a node's last edge unused
+	guide []int32      // [node][bucket] first piece of the node that can hold a point of the bucket
+	top   []float64    // [node] where extrapolation begins
 
-// record is one piece of a curve, padded to 64 bytes: below high, consumption is
-// the cubic in m − origin.
-type record struct {
-	high, origin, c0, c1, c2, c3 float64
-	_                            [2]float64
+	buckets int     // a node
+	shift   uint    // of the bits of the scaled cash-on-hand
+	low     float64 // cash-on-hand where the first bucket begins
+	scale   float64 // 1/money
 }
 
 // Table returns year t of the rule as a table.
 func (r *Rule) Table(t int) *Table {
 	curves := r.Curves[t]
-	tb := &Table{low: math.Inf(1), top: make([]float64, len(curves))}
-	high, nodes, gap := 0.0, 0, 0.0
+	tb := &Table{low: math.Inf(1)}
+	high, nodes, gap := math.Inf(-1), 0, 0.0
 	for j := range curves {
 		cash := curves[j].Cash
 		n := len(cash)
-		tb.low = math.Min(tb.low, cash[0])
-		high = math.Max(high, cash[n-1])
+		tb.low, high = math.Min(tb.low, cash[0]), math.Max(high, cash[n-1])
 		nodes = max(nodes, n)
-		gap = math.Max(gap, cash[max(1, n/8)]-cash[0])
-		tb.top[j] = cash[n-1]
+		gap = math.Max(gap, cash[min(n-1, max(1, n/8))]-cash[0])
+		tb.top = append(tb.top, cash[n-1])
 	}
-	tb.scale = 1 / gap
+	if tb.scale = 1 / gap; gap == 0 { // curves of a single node
+		tb.scale = 1
+	}
 	octaves := math.Log2(1+(high-tb.low)*tb.scale) + 1
 	bits := uint(3)
 	for float64(int(1)<<bits)*octaves < 1.5*float64(nodes) && bits < 12 {
@@ -47,9 +47,11 @@ func (r *Rule) Table(t int) *Table {
 	}
 	tb.shift = 52 - bits
 	tb.buckets = tb.bucket(high) + 2
-	tb.guide = make([]uint16, len(curves)*tb.buckets)
+	tb.guide = make([]int32, len(curves)*tb.buckets)
 	for j := range curves {
-		tb.add(j, &curves[j])
+		first := len(tb.edges)
+		tb.addPieces(&curves[j])
+		tb.fillGuide(tb.guide[j*tb.buckets:(j+1)*tb.buckets], first)
 	}
 	return tb
 }
@@ -57,39 +59,43 @@ func (r *Rule) Table(t int) *Table {
 // bucket returns the bucket of cash-on-hand m: the exponent and the first bits of
 // the mantissa of 1 + (m − low)·scale, from 0.
 func (tb *Table) bucket(m float64) int {
-	x := (m-tb.low)*tb.scale + 1
-	if !(x > 1) {
-		x = 1
-	}
+	x := max((m-tb.low)*tb.scale+1, 1)
 	return int(math.Float64bits(x)>>tb.shift) - 1023<<(52-tb.shift)
 }
 
-// add appends the records of node j and fills its part of the guide.
-func (tb *Table) add(j int, c *Curve) {
-	tb.first = append(tb.first, int32(len(tb.records)))
-	first := len(tb.records)
+// addPieces appends the pieces of a curve.
+func (tb *Table) addPieces(c *Curve) {
+	add := func(edge, c0, c1, c2, c3 float64) {
+		tb.edges, tb.cubic = append(tb.edges, edge), append(tb.cubic, [4]float64{c0, c1, c2, c3})
+	}
 	n := len(c.Cash)
 	if math.IsInf(c.Bound, -1) {
-		tb.records = append(tb.records, record{high: c.Cash[0], origin: c.Cash[0], c0: c.Consumption[0], c1: c.Left[0]})
+		add(c.Cash[0], c.Consumption[0], c.Left[0], 0, 0) // from below, too
 	} else {
-		tb.records = append(tb.records, record{high: c.Cash[0], origin: c.Bound, c1: 1})
+		add(c.Bound, 0, 1, 0, 0)
 	}
 	for i := range n - 1 {
 		c1, c2, c3 := c.cubic(i)
-		tb.records = append(tb.records, record{high: c.Cash[i+1], origin: c.Cash[i], c0: c.Consumption[i], c1: c1, c2: c2, c3: c3})
+		add(c.Cash[i], c.Consumption[i], c1, c2, c3)
 	}
-	tb.records = append(tb.records, record{high: math.Inf(1), origin: c.Cash[n-1], c0: c.Consumption[n-1], c1: c.Right[n-1]})
-	guide := tb.guide[j*tb.buckets : (j+1)*tb.buckets]
+	add(c.Cash[n-1], c.Consumption[n-1], c.Right[n-1], 0, 0)
+	add(math.Inf(1), 0, 0, 0, 0)
+}
+
+// fillGuide sets the guide of the node whose pieces begin at first: where a search
+// in each bucket starts. Everything below the bucket's lower end, less a margin
+// for rounding, is behind.
+func (tb *Table) fillGuide(guide []int32, first int) {
 	at := first
 	for b := range guide {
-		if b > 0 { // everything below the bucket's lower end is behind
+		if b > 0 {
 			x := math.Float64frombits(uint64(b+1023<<(52-tb.shift)) << tb.shift)
-			edge := (x-1)/tb.scale + tb.low
-			for tb.records[at].high <= edge-1e-9*(math.Abs(edge)+1/tb.scale) {
+			end := (x-1)/tb.scale + tb.low
+			for tb.edges[at+1] <= end-1e-9*(math.Abs(end)+1/tb.scale) {
 				at++
 			}
 		}
-		guide[b] = uint16(at - first)
+		guide[b] = int32(at)
 	}
 }
 
@@ -100,62 +106,64 @@ func (tb *Table) Top(node int) float64 { return tb.top[node] }
 // (node[i], cash[i]). A nil node means node 0 throughout; a nil propensity is not
 // computed. The slices must be as long as cash.
 func (tb *Table) Evaluate(node []uint8, cash, consumption, propensity []float64) {
-	if propensity == nil && node != nil {
-		tb.consume(node, cash, consumption)
-		return
-	}
-	consumption = consumption[:len(cash)]
-	for i, m := range cash {
-		j := 0
+	var piece [256]int32
+	var first [len(piece)]uint8 // node 0
+	for from := 0; from < len(cash); from += len(piece) {
+		to := min(from+len(piece), len(cash))
+		nodes := first[:to-from]
 		if node != nil {
-			j = int(node[i])
+			nodes = node[from:to]
 		}
-		q := tb.find(j, m)
-		u := m - q.origin
-		e2 := q.c2 + u*q.c3
-		e1 := q.c1 + u*e2
-		consumption[i] = q.c0 + u*e1
-		if propensity != nil {
-			propensity[i] = e1 + u*(e2+u*q.c3)
+		tb.locate(nodes, cash[from:to], piece[:to-from])
+		if propensity == nil {
+			tb.consume(piece[:to-from], cash[from:to], consumption[from:to])
+		} else {
+			tb.both(piece[:to-from], cash[from:to], consumption[from:to], propensity[from:to])
 		}
 	}
 }
 
-// find returns the record of node j that holds m.
-func (tb *Table) find(j int, m float64) *record {
-	b := min(tb.bucket(m), tb.buckets-1)
-	k := int(tb.first[j]) + int(tb.guide[j*tb.buckets+b])
-	for m >= tb.records[k].high {
-		k++
-	}
-	return &tb.records[k]
-}
-
-// consume is Evaluate without propensities, the search by hand: a point is found
-// in its bucket's first record or, one branch-free step on, the next; further
-// steps are rare.
-func (tb *Table) consume(node []uint8, cash, consumption []float64) {
-	node, consumption = node[:len(cash)], consumption[:len(cash)]
-	records, guide, first := tb.records, tb.guide, tb.first
-	low, scale, shift, last := tb.low, tb.scale, tb.shift&63, tb.buckets-1
-	buckets := tb.buckets
+// locate finds the piece of every state: in its bucket's first piece or, one
+// branch-free step on, the next; further steps are rare.
+func (tb *Table) locate(node []uint8, cash []float64, piece []int32) {
+	node, piece = node[:len(cash)], piece[:len(cash)]
+	edges, guide := tb.edges, tb.guide
+	low, scale, shift := tb.low, tb.scale, tb.shift&63
+	buckets, last := tb.buckets, tb.buckets-1
 	zero := 1023 << (52 - shift)
 	for i, m := range cash {
-		x := (m-low)*scale + 1
-		if !(x > 1) {
-			x = 1
-		}
+		x := max((m-low)*scale+1, 1)
 		b := min(int(math.Float64bits(x)>>shift)-zero, last)
-		j := int(node[i])
-		k := int(first[j]) + int(guide[j*buckets+b])
-		k += step(m >= records[k].high)
-		q := &records[k]
-		for m >= q.high {
+		k := int(guide[int(node[i])*buckets+b])
+		k += step(m >= edges[k+1])
+		for m >= edges[k+1] {
 			k++
-			q = &records[k]
 		}
-		u := m - q.origin
-		consumption[i] = q.c0 + u*(q.c1+u*(q.c2+u*q.c3))
+		piece[i] = int32(k)
+	}
+}
+
+func (tb *Table) consume(piece []int32, cash, consumption []float64) {
+	cash, consumption = cash[:len(piece)], consumption[:len(piece)]
+	edges, cubic := tb.edges, tb.cubic
+	for i, k := range piece {
+		u := cash[i] - edges[k]
+		q := &cubic[k]
+		consumption[i] = q[0] + u*(q[1]+u*(q[2]+u*q[3]))
+	}
+}
+
+// both is consume with the propensity.
+func (tb *Table) both(piece []int32, cash, consumption, propensity []float64) {
+	cash, consumption, propensity = cash[:len(piece)], consumption[:len(piece)], propensity[:len(piece)]
+	edges, cubic := tb.edges, tb.cubic
+	for i, k := range piece {
+		u := cash[i] - edges[k]
+		q := &cubic[k]
+		e2 := q[2] + u*q[3]
+		e1 := q[1] + u*e2
+		consumption[i] = q[0] + u*e1
+		propensity[i] = e1 + u*(e2+u*q[3])
 	}
 }
 

@@ -60,9 +60,13 @@ type jump struct{ mulHigh, mulLow, addHigh, addLow uint64 }
 
 var (
 	one   = jump{2549297995355413924, 4865540595714422341, 6364136223846793005, 1442695040888963407}
-	two   = one.then(one)
-	three = two.then(one)
-	born  = jumps(BirthDraws)
+	two   = jumps(2)
+	three = jumps(3)
+	four  = jumps(4)
+	// born leads from the hashed state to where a household's state stands before its
+	// first year, at draw 7 of birth: that is to draw 0 of a year as draw 1 of the
+	// year before is.
+	born = jumps(BirthDraws - 1)
 )
 
 func jumps(n int) jump {
@@ -101,32 +105,41 @@ func (s state) output() uint64 {
 	return bits.RotateLeft64(s.high^s.low, -int(s.high>>58))
 }
 
-// drawYear sets the three draws of a year for every household and moves the
-// streams on.
-func drawYear(streams []state, x0, x1, x2 []uint64) {
-	x0, x1, x2 = x0[:len(streams)], x1[:len(streams)], x2[:len(streams)]
-	a, b, c := one, two, three
+// A household's state always stands at draw 1 of its last year, the one that every
+// year needs: a year's draws 0, 1 and 2 are then two, three and four steps away, and
+// those that nobody looks at cost nothing.
+
+// drawFates sets draw 1 of a year for every household and moves the streams on.
+func drawFates(streams []state, x1 []uint64) {
+	x1 = x1[:len(streams)]
+	b := three
 	for i, s := range streams {
-		x0[i] = s.after(&a).output()
-		x1[i] = s.after(&b).output()
-		s = s.after(&c)
-		x2[i] = s.output()
+		s = s.after(&b)
+		x1[i] = s.output()
 		streams[i] = s
 	}
 }
 
-// drawSecond is drawYear for years of which only the second draw is looked at.
-func drawSecond(streams []state, x1 []uint64) {
-	x1 = x1[:len(streams)]
-	b, c := two, three
+// drawShocks sets draw 0 of the coming year for every household.
+func drawShocks(streams []state, x0 []uint64) {
+	x0 = x0[:len(streams)]
+	a := two
 	for i, s := range streams {
-		x1[i] = s.after(&b).output()
-		streams[i] = s.after(&c)
+		x0[i] = s.after(&a).output()
 	}
 }
 
-// drawBirth returns a household's draws at birth and the state of its stream
-// after them.
+// drawJobs sets draw 2 of the coming year for every household.
+func drawJobs(streams []state, x2 []uint64) {
+	x2 = x2[:len(streams)]
+	c := four
+	for i, s := range streams {
+		x2[i] = s.after(&c).output()
+	}
+}
+
+// drawBirth returns a household's draws at birth and its state before its first
+// year.
 func drawBirth(seed uint64, id int64) (x [BirthDraws]uint64, s state) {
 	source := NewStream(seed, id)
 	for k := range x {

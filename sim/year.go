@@ -15,12 +15,11 @@ func (c *crew) year(tp *typePlan, t, from, to, row int) error {
 	cash, consumption, assets := b.CashOnHand[row:end], b.Consumption[row:end], b.Assets[row:end]
 	node := c.node[from:to]
 	if tp.h.Working(t) {
-		drawYear(c.streams[from:to], c.x0[:n], c.x1[:n], c.x2[:n])
-		c.work(tp, t, node, row, end)
+		c.work(tp, t, from, to, row)
 	} else {
-		drawSecond(c.streams[from:to], c.x1[:n])
 		c.retire(tp, node, row, end)
 	}
+	drawFates(c.streams[from:to], c.x1[:n])
 	R := 1 + tp.h.Return
 	for i, a := range c.assets[from:to] {
 		cash[i] = float64(R*a) + b.Income[row+i]
@@ -63,25 +62,45 @@ func (c *crew) stateError(tp *typePlan, t, i int, cash, consumption float64) *St
 }
 
 // work sets the income of a working year, and its parts where they are wanted.
-func (c *crew) work(tp *typePlan, t int, node []uint8, row, end int) {
+func (c *crew) work(tp *typePlan, t, from, to, row int) {
 	b := &c.out
-	e := tp.h.Earnings
+	end := row + to - from
 	y := b.Income[row:end]
-	c.earn(tp, t, node, y)
+	if tp.h.Earnings.Transitory.SD > 0 {
+		drawShocks(c.streams[from:to], c.x0[:len(y)])
+	}
+	if tp.jobLoss > 0 {
+		drawJobs(c.streams[from:to], c.x2[:len(y)])
+	}
+	c.earn(tp, t, c.node[from:to], y)
 	if c.want&Shocks != 0 {
-		epsilon, employed := b.Transitory[row:end], b.Employed[row:end]
-		for i, x := range c.x0[:len(y)] {
-			employed[i] = c.x2[i]>>32 >= tp.jobLoss
-			epsilon[i] = 0
-			if employed[i] && e.Transitory.SD > 0 {
-				epsilon[i] = tp.epsilon.at(x)
-			}
-		}
+		c.shocks(tp, b.Transitory[row:end], b.Employed[row:end])
 	}
 	if c.want&Sources != 0 {
 		copy(b.Earnings[row:end], y)
 		clear(b.Pension[row:end])
 		clear(b.Taxes[row:end])
+	}
+}
+
+// shocks says what shocks the year's draws are.
+func (c *crew) shocks(tp *typePlan, epsilon []float64, employed []bool) {
+	if tp.h.Earnings.Transitory.SD == 0 {
+		clear(epsilon)
+	} else {
+		for i, x := range c.x0[:len(epsilon)] {
+			epsilon[i] = tp.epsilon.at(x)
+		}
+	}
+	for i := range employed {
+		employed[i] = true
+	}
+	if tp.jobLoss > 0 {
+		for i, x := range c.x2[:len(employed)] {
+			if x>>32 < tp.jobLoss {
+				employed[i], epsilon[i] = false, 0
+			}
+		}
 	}
 }
 
