@@ -3,6 +3,8 @@ package policy
 import (
 	"math"
 	"slices"
+
+	"cistern/income"
 )
 
 // A Judge evaluates Euler-equation errors of a rule (Judd 1992, Journal of
@@ -19,8 +21,12 @@ import (
 // life.
 type Judge struct {
 	rule *Rule
-	fine bool
-	x, w []float64 // nodes and weights of the standard normal law, fine only
+	marginal
+	fine   bool
+	ahead  frontier  // the rule of year, as records
+	year   int       // which year ahead holds
+	shock  []float64 // what earnings are multiplied by (form log) or raised by (form level), ascending; fine only
+	weight []float64
 }
 
 // fineNodes nodes of the trapezoid rule on ±fineSpan standard deviations judge
@@ -33,28 +39,36 @@ const (
 
 // NewJudge returns a judge that reckons with the solver's own income outcomes or,
 // if fine, with a far finer quadrature of the transitory shock. It is not safe
-// for concurrent use.
+// for concurrent use; several judges of one rule are.
 func NewJudge(r *Rule, fine bool) *Judge {
-	j := &Judge{rule: r, fine: fine}
-	if fine {
-		sum := 0.0
-		for i := range fineNodes {
-			x := fineSpan * (2*float64(i)/(fineNodes-1) - 1)
-			w := math.Exp(-x * x / 2)
-			j.x, j.w = append(j.x, x), append(j.w, w)
-			sum += w
+	j := &Judge{rule: r, marginal: marginalOf(r.Household.Utility, marginal{}), fine: fine, year: -1}
+	e := r.Household.Earnings
+	if !fine || e.Transitory.SD == 0 {
+		j.fine = false
+		return j
+	}
+	sum := 0.0
+	for i := range fineNodes {
+		x := fineSpan * (2*float64(i)/(fineNodes-1) - 1)
+		w := math.Exp(-x * x / 2)
+		sum += w
+		j.weight = append(j.weight, w)
+		j.shock = append(j.shock, e.Transitory.SD*x)
+		if e.Form == income.Log {
+			j.shock[i] = math.Exp(j.shock[i] - e.LogShift())
 		}
-		for i := range j.w {
-			j.w[i] /= sum
-		}
+	}
+	for i := range j.weight {
+		j.weight[i] *= (1 - e.JobLoss.Probability) / sum
 	}
 	return j
 }
 
 // Error returns the Euler-equation error in year t at a persistent node with
 // cash-on-hand m, and whether the household is at its limit there. At the limit
-// the equation is an inequality: the error is how far c exceeds c*, or 0. The
-// last year has no error. Successive calls should keep t together.
+// the equation is an inequality: the error is how far c exceeds c*, or 0. In the
+// last year nothing is left to judge but a bequest motive. Calls are fastest with
+// the same t one after another.
 func (j *Judge) Error(t, node int, m float64) (e float64, atLimit bool) {
 	h := j.rule.Household
 	c := j.rule.Consumption(t, node, m)
@@ -64,7 +78,7 @@ func (j *Judge) Error(t, node int, m float64) (e float64, atLimit bool) {
 	if t == h.Years()-1 && h.Bequest.Weight == 0 {
 		return 0, atLimit
 	}
-	implied := h.Utility.Inverse(h.DiscountFactor * (1 + h.Return) * j.expected(t, node, a))
+	implied := j.implied(t, node, a, c)
 	e = (implied - c) / c
 	if math.IsInf(h.Utility.Infimum(), -1) {
 		e = (implied - c) / (math.Abs(c) + math.Abs(h.MeanIncome(t)))
@@ -75,51 +89,90 @@ func (j *Judge) Error(t, node int, m float64) (e float64, atLimit bool) {
 	return math.Abs(e), false
 }
 
-// expected returns s·E u′(c′) + (1−s)·v′(R·a).
-func (j *Judge) expected(t, node int, a float64) float64 {
+// implied returns c*, the consumption whose marginal utility is the right side of
+// the Euler equation with assets a. Exponential utility is measured from c, so
+// that it neither overflows nor vanishes.
+func (j *Judge) implied(t, node int, a, c float64) float64 {
 	h := j.rule.Household
 	x := (1 + h.Return) * a
 	v := 0.0
 	if s := h.Survival[t]; s > 0 {
+		j.look(t + 1)
 		if h.Moves(t) {
 			for next, p := range h.Earnings.Chain.Row(node) {
 				if p > 0 {
-					v += s * p * j.overIncome(t+1, next, x)
+					v += s * p * j.overIncome(t+1, next, x, c)
 				}
 			}
 		} else {
-			v += s * j.overIncome(t+1, node, x)
+			v = s * j.overIncome(t+1, node, x, c)
 		}
 	}
 	if b := h.Bequest; b.Weight > 0 {
-		v += (1 - h.Survival[t]) * b.Weight * h.Utility.Marginal(x+b.Shift)
+		v += (1 - h.Survival[t]) * b.Weight * j.relative(x+b.Shift-j.shift, c)
 	}
-	return v
+	v *= h.DiscountFactor * (1 + h.Return)
+	if j.kind == exponentialKind {
+		return c - math.Log(v)/j.alpha
+	}
+	return h.Utility.Inverse(v)
 }
 
-// overIncome is E u′(c) in year t at a node with x brought along.
-func (j *Judge) overIncome(t, node int, x float64) float64 {
+// look makes the records of year t.
+func (j *Judge) look(t int) {
+	if j.year == t {
+		return
+	}
+	j.year = t
+	j.ahead.reset(len(j.rule.Curves[t]))
+	for n := range j.rule.Curves[t] {
+		j.ahead.set(n, &j.rule.Curves[t][n], 0, j.shift, true)
+	}
+}
+
+// relative is marginal utility at consumption x + shift, exponential utility's
+// measured from c.
+func (j *Judge) relative(x, c float64) float64 {
+	switch j.kind {
+	case powerKind:
+		return j.forward.at(x)
+	case exponentialKind:
+		return math.Exp(-j.alpha * (x - c))
+	}
+	return j.u.Marginal(x)
+}
+
+// overIncome is E u′ in year t at a node to which x was brought along.
+func (j *Judge) overIncome(t, node int, x, c float64) float64 {
 	h := j.rule.Household
-	curve := &j.rule.Curves[t][node]
-	values, weights := h.Income(t, node)
-	if !j.fine || !h.Working(t) || h.Earnings.Transitory.SD == 0 {
-		v := 0.0
+	sg := j.ahead.segments[node]
+	v := 0.0
+	if !j.fine || !h.Working(t) {
+		values, weights := h.Income(t, node)
 		for k, y := range values {
-			c, _ := curve.At(x + y)
-			v += weights[k] * h.Utility.Marginal(c)
+			next, _ := find(sg, x+y).at(x + y)
+			v += weights[k] * j.relative(next, c)
 		}
 		return v
 	}
 	e := h.Earnings
-	p := e.JobLoss.Probability
-	v := 0.0
-	if p > 0 {
-		c, _ := curve.At(x + e.Benefit[t][node])
-		v = p * h.Utility.Marginal(c)
+	if p := e.JobLoss.Probability; p > 0 {
+		m := x + e.Benefit[t][node]
+		next, _ := find(sg, m).at(m)
+		v = p * j.relative(next, c)
 	}
-	for k, z := range j.x {
-		c, _ := curve.At(x + e.At(t, node, e.Transitory.SD*z))
-		v += (1 - p) * j.w[k] * h.Utility.Marginal(c)
+	base := e.Base[t][node]
+	i := 0
+	for k, f := range j.shock {
+		m := x + base + f
+		if e.Form == income.Log {
+			m = x + base*f
+		}
+		for m >= sg[i].high {
+			i++
+		}
+		next, _ := sg[i].at(m)
+		v += j.weight[k] * j.relative(next, c)
 	}
 	return v
 }
