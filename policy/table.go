@@ -106,11 +106,10 @@ func (tb *Table) Top(node int) float64 { return tb.top[node] }
 // (node[i], cash[i]). A nil node means node 0 throughout; a nil propensity is not
 // computed. The slices must be as long as cash.
 func (tb *Table) Evaluate(node []uint8, cash, consumption, propensity []float64) {
-	var piece [256]int32
-	var first [len(piece)]uint8 // node 0
+	var piece [len(firstNode)]int32
 	for from := 0; from < len(cash); from += len(piece) {
 		to := min(from+len(piece), len(cash))
-		nodes := first[:to-from]
+		nodes := firstNode[:to-from]
 		if node != nil {
 			nodes = node[from:to]
 		}
@@ -122,6 +121,9 @@ func (tb *Table) Evaluate(node []uint8, cash, consumption, propensity []float64)
 		}
 	}
 }
+
+// firstNode is node 0 for as many states as are evaluated at a time.
+var firstNode [256]uint8
 
 // locate finds the piece of every state: in its bucket's first piece or, one
 // branch-free step on, the next; further steps are rare.

@@ -21,7 +21,7 @@ type crew struct {
 	assets  []float64 // at the end of last year
 	twin    []float64 // the twins' assets
 	lives   []int32   // by place in the block: years lived
-	slots   []int32   // of every row
+	slots   []int32   // of every row, where Position is wanted
 
 	x0, x1, x2  [chunk]uint64
 	dead        []int32
@@ -42,7 +42,9 @@ func newCrew(pl *plan, want Columns) *crew {
 		assets: make([]float64, Unit), twin: make([]float64, Unit), lives: make([]int32, Unit), dead: make([]int32, 0, Unit), counts: make([]Count, len(pl.p.Groups))}
 	rows := int(Unit * pl.longestLife() * 1.03)
 	c.out.resize(rows, want)
-	c.slots = make([]int32, 0, rows)
+	if want&Order != 0 {
+		c.slots = make([]int32, 0, rows)
+	}
 	return c
 }
 
@@ -64,11 +66,6 @@ func (c *crew) block(first int64, n int) error {
 	if c.want&Order != 0 {
 		c.place(n)
 	}
-	if c.want&Identity != 0 {
-		for k, s := range c.slots {
-			c.out.Household[k] = first + int64(s)
-		}
-	}
 	return nil
 }
 
@@ -88,7 +85,7 @@ func (c *crew) bear(first int64, n int) {
 		if tp.start.Median > 0 {
 			b.assets = 0
 			if x[0]>>32 >= tp.zeroShare {
-				b.assets = tp.start.Median * math.Exp(tp.start.LogSD*normalQuantile(x[1]))
+				b.assets = tp.start.Median * math.Exp(tp.startLog.at(x[1]))
 			}
 		}
 		for x[2]>>32 >= tp.initial[b.node] {
@@ -114,7 +111,9 @@ func (c *crew) live(k int) error {
 		c.counts[tp.group].HouseholdYears += int64(alive)
 		c.out.resize(c.out.N, c.want)
 		c.out.Runs = append(c.out.Runs, Run{T: t, Type: k, Group: tp.group, From: row, To: c.out.N})
-		c.slots = append(c.slots, c.slot[:alive]...)
+		if c.want&Order != 0 {
+			c.slots = append(c.slots, c.slot[:alive]...)
+		}
 		c.dead = c.dead[:0]
 		for from := 0; from < alive; from += chunk {
 			to := min(from+chunk, alive)

@@ -23,7 +23,8 @@ type typePlan struct {
 	rule      []*policy.Table // [t]
 	twin      []*policy.Table // [t]; nil without twins
 	twinMoney []float64       // [t] the twin's certain income
-	pension   []float64       // [node]
+	nodes     [256]float64    // [node] z; indexed by a byte, so that no bound is checked
+	pension   [256]float64    // [node]
 	bound     [][]float64     // [t][node] lowest assets
 	floor     float64         // consumption lies above it
 	top       []float64       // [t] lowest top of the rule over the nodes
@@ -35,6 +36,7 @@ type typePlan struct {
 
 	factor    *normalTable // exp(ε − shift) in form log, ε in form level
 	epsilon   *normalTable // ε
+	startLog  *normalTable // log of start assets over their median
 	zeroShare uint64       // of 2^32
 	start     Start
 }
@@ -98,8 +100,9 @@ func (tp *typePlan) set(t *Type, tables *tableCache) {
 	e := h.Earnings
 	tp.h, tp.group, tp.start = h, t.Group, t.Start
 	tp.floor = h.Utility.Infimum()
+	copy(tp.nodes[:], e.Chain.Nodes)
 	for j := range h.Nodes() {
-		tp.pension = append(tp.pension, h.Pension.Amount(e, j))
+		tp.pension[j] = h.Pension.Amount(e, j)
 	}
 	for y := range h.Years() {
 		bounds := make([]float64, h.Nodes())
@@ -121,6 +124,7 @@ func (tp *typePlan) set(t *Type, tables *tableCache) {
 	if e.Form == income.Log {
 		tp.factor = tables.get(tableKey{sd: sd, shift: e.LogShift(), exp: true})
 	}
+	tp.startLog = tables.get(tableKey{sd: t.Start.LogSD})
 	tp.zeroShare = of32(t.Start.ZeroShare)
 }
 

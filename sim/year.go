@@ -9,41 +9,31 @@ import (
 // year takes the living from … to−1 of a type through year t; their rows begin at
 // row.
 func (c *crew) year(tp *typePlan, t, from, to, row int) error {
-	n := to - from
 	b := &c.out
-	end := row + n
-	cash, consumption, assets := b.CashOnHand[row:end], b.Consumption[row:end], b.Assets[row:end]
+	end := row + to - from
 	node := c.node[from:to]
+	income, cash := b.Income[row:end], b.CashOnHand[row:end]
+	consumption, assets := b.Consumption[row:end], b.Assets[row:end]
 	if tp.h.Working(t) {
 		c.work(tp, t, from, to, row)
 	} else {
 		c.retire(tp, node, row, end)
 	}
-	drawFates(c.streams[from:to], c.x1[:n])
-	R := 1 + tp.h.Return
-	for i, a := range c.assets[from:to] {
-		cash[i] = float64(R*a) + b.Income[row+i]
-	}
+	collect(cash, c.assets[from:to], income, 1+tp.h.Return)
 	var propensity []float64
 	if c.want&Propensity != 0 {
 		propensity = b.Propensity[row:end]
 	}
 	tp.rule[t].Evaluate(node, cash, consumption, propensity)
-	if i := settle(node, cash, consumption, assets, tp.bound[t], tp.floor, &c.highestCash); i >= 0 {
+	highest, i := settle(node, cash, consumption, assets, tp.bound[t], tp.floor)
+	if i >= 0 {
 		return c.stateError(tp, t, from+i, cash[i], consumption[i])
 	}
-	c.countAbove(tp, t, node, cash)
+	if c.highestCash = math.Max(c.highestCash, highest); highest > tp.top[t] {
+		c.countAbove(tp, t, node, cash)
+	}
 	copy(c.assets[from:to], assets)
-	if c.want&States != 0 {
-		copy(b.Node[row:end], node)
-		z := tp.h.Earnings.Chain.Nodes
-		for i, j := range node {
-			b.Persistent[row+i] = z[j]
-		}
-	}
-	if c.want&Propensity != 0 {
-		atLimit(b.AtLimit[row:end], node, assets, tp.bound[t])
-	}
+	c.describe(tp, t, from, to, row)
 	if c.want&Twins != 0 {
 		if i := c.liveTwins(tp, t, c.twin[from:to], row, end); i >= 0 {
 			err := c.stateError(tp, t, from+i, b.TwinAssets[row+i]+b.TwinConsumption[row+i], b.TwinConsumption[row+i])
@@ -51,8 +41,41 @@ func (c *crew) year(tp *typePlan, t, from, to, row int) error {
 			return err
 		}
 	}
+	drawFates(c.streams[from:to], c.x1[:to-from])
 	c.fates(tp, t, from, node, row, end)
 	return nil
+}
+
+// collect sets cash-on-hand from last year's assets and this year's income. The
+// conversion keeps the product from being fused with the sum.
+func collect(cash, assets, income []float64, R float64) {
+	assets, income = assets[:len(cash)], income[:len(cash)]
+	for i, a := range assets {
+		cash[i] = float64(R*a) + income[i]
+	}
+}
+
+// describe fills those optional columns that restate a household's state.
+func (c *crew) describe(tp *typePlan, t, from, to, row int) {
+	b := &c.out
+	end := row + to - from
+	node := c.node[from:to]
+	if c.want&Identity != 0 {
+		household := b.Household[row:end]
+		for i, s := range c.slot[from:to] {
+			household[i] = b.First + int64(s)
+		}
+	}
+	if c.want&States != 0 {
+		copy(b.Node[row:end], node)
+		persistent := b.Persistent[row:end]
+		for i, j := range node {
+			persistent[i] = tp.nodes[j]
+		}
+	}
+	if c.want&Propensity != 0 {
+		atLimit(b.AtLimit[row:end], node, b.Assets[row:end], tp.bound[t])
+	}
 }
 
 // stateError is about the i-th of the living.
@@ -137,8 +160,9 @@ func (c *crew) earn(tp *typePlan, t int, node []uint8, y []float64) {
 // retire sets the income of a retired year.
 func (c *crew) retire(tp *typePlan, node []uint8, row, end int) {
 	b := &c.out
+	y := b.Income[row:end]
 	for i, j := range node {
-		b.Income[row+i] = tp.pension[j]
+		y[i] = tp.pension[j]
 	}
 	if c.want&Shocks != 0 {
 		clear(b.Transitory[row:end])
@@ -146,39 +170,41 @@ func (c *crew) retire(tp *typePlan, node []uint8, row, end int) {
 	}
 	if c.want&Sources != 0 {
 		clear(b.Earnings[row:end])
-		copy(b.Pension[row:end], b.Income[row:end])
+		copy(b.Pension[row:end], y)
 		clear(b.Taxes[row:end])
 	}
 }
 
 // settle sets assets = cash − consumption, not below the bound (rounding alone
-// could bring them there), and raises highest to the highest cash. It returns the
-// index of a household whose consumption its utility does not allow, or −1.
-func settle(node []uint8, cash, consumption, assets, bounds []float64, floor float64, highest *float64) int {
+// could bring them there). It returns the highest cash and the index of a household
+// whose consumption its utility does not allow, or −1.
+func settle(node []uint8, cash, consumption, assets, bounds []float64, floor float64) (highest float64, at int) {
 	node, consumption, assets = node[:len(cash)], consumption[:len(cash)], assets[:len(cash)]
 	var bound [256]float64
 	copy(bound[:], bounds)
-	top := *highest
-	sound := true
+	highest = math.Inf(-1)
+	low, sum := false, 0.0
 	for i, m := range cash {
 		c := consumption[i]
 		a := m - c
-		if low := bound[node[i]]; a < low {
-			a = low
+		if least := bound[node[i]]; a < least {
+			a = least
 			c = m - a
 			consumption[i] = c
 		}
 		assets[i] = a
-		sound = sound && c > floor && c <= math.MaxFloat64
-		if m > top {
-			top = m
+		sum += c // what is not finite anywhere is not finite in the sum
+		if c <= floor {
+			low = true
+		}
+		if m > highest {
+			highest = m
 		}
 	}
-	*highest = top
-	if sound {
-		return -1
+	if !low && math.Abs(sum) <= math.MaxFloat64 {
+		return highest, -1
 	}
-	return unsound(consumption, floor)
+	return highest, unsound(consumption, floor)
 }
 
 // unsound returns the index of a consumption that is not a number above the floor,
@@ -194,9 +220,6 @@ func unsound(consumption []float64, floor float64) int {
 
 // countAbove counts the states above the top of the rule's grid.
 func (c *crew) countAbove(tp *typePlan, t int, node []uint8, cash []float64) {
-	if c.highestCash <= tp.top[t] {
-		return
-	}
 	for i, m := range cash {
 		if m > tp.rule[t].Top(int(node[i])) {
 			c.counts[tp.group].AboveTop++
