@@ -28,12 +28,13 @@ type Table struct {
 func (r *Rule) Table(t int) *Table {
 	curves := r.Curves[t]
 	tb := &Table{low: math.Inf(1)}
-	high, nodes, gap := math.Inf(-1), 0, 0.0
+	high, nodes, edges, gap := math.Inf(-1), 0, 0, 0.0
 	for j := range curves {
 		cash := curves[j].Cash
 		n := len(cash)
 		tb.low, high = math.Min(tb.low, cash[0]), math.Max(high, cash[n-1])
 		nodes = max(nodes, n)
+		edges += n + 2
 		gap = math.Max(gap, cash[min(n-1, max(1, n/8))]-cash[0])
 		tb.top = append(tb.top, cash[n-1])
 	}
@@ -48,6 +49,7 @@ func (r *Rule) Table(t int) *Table {
 	tb.shift = 52 - bits
 	tb.buckets = tb.bucket(high) + 2
 	tb.guide = make([]int32, len(curves)*tb.buckets)
+	tb.edges, tb.cubic = make([]float64, 0, edges), make([][4]float64, 0, edges)
 	for j := range curves {
 		first := len(tb.edges)
 		tb.addPieces(&curves[j])

@@ -2,6 +2,7 @@ package sim
 
 import (
 	"math"
+	"sync"
 
 	"gonum.org/v1/gonum/mathext"
 )
@@ -37,18 +38,9 @@ const (
 
 func newNormalTable(f func(x float64) float64) *normalTable {
 	t := new(normalTable)
-	for tail := range 2 {
-		for i := range octaves << pieceBits {
-			exponent, piece := i>>pieceBits-1, i&(1<<pieceBits-1)
-			start := math.Ldexp(1+float64(piece)/(1<<pieceBits), exponent)
-			width := math.Ldexp(1.0/(1<<pieceBits), exponent)
-			c := cubicThrough(func(y float64) float64 {
-				x := mathext.NormalQuantile((start + width*y) * unitScale)
-				if tail == 1 {
-					x = -x
-				}
-				return f(x)
-			})
+	for i, x := range quantilePoints() {
+		for tail, sign := range []float64{1, -1} {
+			c := cubicThrough(f(sign*x[0]), f(sign*x[1]), f(sign*x[2]), f(sign*x[3]))
 			for k := range c { // the local coordinate is an integer of 52 bits
 				c[k] = math.Ldexp(c[k], -52*k)
 			}
@@ -58,14 +50,32 @@ func newNormalTable(f func(x float64) float64) *normalTable {
 	return t
 }
 
-// cubicThrough returns the monomial coefficients, on [0, 1], of the cubic through
-// f at the four Chebyshev points.
-func cubicThrough(f func(float64) float64) [4]float64 {
-	var x, d [4]float64
+// chebyshev are the points on [0, 1] where a piece's cubic meets its function.
+var chebyshev = func() (x [4]float64) {
 	for k := range x {
 		x[k] = 0.5 - 0.5*math.Cos(float64(2*k+1)*math.Pi/8)
-		d[k] = f(x[k])
 	}
+	return x
+}()
+
+// quantilePoints returns Φ⁻¹ at the points of every piece of the lower tail.
+var quantilePoints = sync.OnceValue(func() [][4]float64 {
+	points := make([][4]float64, octaves<<pieceBits)
+	for i := range points {
+		exponent, piece := i>>pieceBits-1, i&(1<<pieceBits-1)
+		start := math.Ldexp(1+float64(piece)/(1<<pieceBits), exponent)
+		width := math.Ldexp(1.0/(1<<pieceBits), exponent)
+		for k, y := range chebyshev {
+			points[i][k] = mathext.NormalQuantile((start + width*y) * unitScale)
+		}
+	}
+	return points
+})
+
+// cubicThrough returns the monomial coefficients, on [0, 1], of the cubic with the
+// values d at the Chebyshev points.
+func cubicThrough(d ...float64) [4]float64 {
+	x := &chebyshev
 	for k := 1; k < 4; k++ { // Newton's divided differences
 		for j := 3; j >= k; j-- {
 			d[j] = (d[j] - d[j-1]) / (x[j] - x[j-k])

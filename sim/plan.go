@@ -35,24 +35,25 @@ type typePlan struct {
 	moves   moves
 
 	factor    *normalTable // exp(ε − shift) in form log, ε in form level
-	epsilon   *normalTable // ε
+	epsilon   *normalTable // ε, where it is wanted
 	startLog  *normalTable // log of start assets over their median
 	zeroShare uint64       // of 2^32
 	start     Start
 }
 
-func newPlan(p *Population) *plan {
+// newPlan prepares p for simulation with the wanted columns.
+func newPlan(p *Population, want Columns) *plan {
 	pl := &plan{p: p, years: p.Years(), types: make([]typePlan, len(p.Types))}
 	tables := tableCache{}
 	var wg sync.WaitGroup
 	for i := range p.Types {
 		tp := &pl.types[i]
-		tp.set(&p.Types[i], &tables)
+		tp.set(&p.Types[i], want, &tables)
 		wg.Add(1)
 		go func() {
 			defer wg.Done()
 			tp.rule = ruleTables(p.Types[i].Rule)
-			if p.Types[i].Twin != nil {
+			if p.Types[i].Twin != nil && want&Twins != 0 {
 				tp.twin = ruleTables(p.Types[i].Twin)
 			}
 			tp.setTops()
@@ -95,7 +96,7 @@ func (tp *typePlan) setTops() {
 	}
 }
 
-func (tp *typePlan) set(t *Type, tables *tableCache) {
+func (tp *typePlan) set(t *Type, want Columns, tables *tableCache) {
 	h := t.Rule.Household
 	e := h.Earnings
 	tp.h, tp.group, tp.start = h, t.Group, t.Start
@@ -119,7 +120,9 @@ func (tp *typePlan) set(t *Type, tables *tableCache) {
 	tp.initial = cumulated(e.Initial)
 	tp.moves = newMoves(e.Chain)
 	sd := e.Transitory.SD
-	tp.epsilon = tables.get(tableKey{sd: sd})
+	if want&Shocks != 0 || e.Form == income.Level {
+		tp.epsilon = tables.get(tableKey{sd: sd})
+	}
 	tp.factor = tp.epsilon
 	if e.Form == income.Log {
 		tp.factor = tables.get(tableKey{sd: sd, shift: e.LogShift(), exp: true})

@@ -101,7 +101,7 @@ type runner struct {
 }
 
 func newRunner(ctx context.Context, p *Population, o Options, work Work) *runner {
-	r := &runner{ctx: ctx, p: p, o: o, work: work, plan: newPlan(p), committed: o.From,
+	r := &runner{ctx: ctx, p: p, o: o, work: work, plan: newPlan(p, o.Columns), committed: o.From,
 		result: Result{Groups: make([]Count, len(p.Groups))}}
 	r.next.Store(o.From)
 	r.turn = sync.NewCond(&r.mu)
