@@ -19,18 +19,19 @@ func (e *FieldError) Error() string {
 
 // Faults returns the field errors in err, in the order found.
 func Faults(err error) []*FieldError {
-	var one *FieldError
-	if many, ok := err.(interface{ Unwrap() []error }); ok {
+	switch e := err.(type) {
+	case nil:
+		return nil
+	case *FieldError:
+		return []*FieldError{e}
+	case interface{ Unwrap() []error }:
 		var out []*FieldError
-		for _, e := range many.Unwrap() {
-			out = append(out, Faults(e)...)
+		for _, part := range e.Unwrap() {
+			out = append(out, Faults(part)...)
 		}
 		return out
 	}
-	if errors.As(err, &one) {
-		return []*FieldError{one}
-	}
-	return nil
+	return Faults(errors.Unwrap(err))
 }
 
 // faults collects field errors.

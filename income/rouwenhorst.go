@@ -38,25 +38,28 @@ func (r Rouwenhorst) Discretise(p AR1) (*Chain, error) {
 	}
 	n := r.Points
 	c := &Chain{Nodes: evenly(n, p.StationarySD()*math.Sqrt(float64(n-1)))}
-	stay := (1 + p.Autocorrelation) / 2
-	m := []float64{stay, 1 - stay, 1 - stay, stay}
+	if err := c.distinct(p); err != nil {
+		return nil, err
+	}
+	stay, leave := (1+p.Autocorrelation)/2, (1-p.Autocorrelation)/2 // each with its own digits
+	m := []float64{stay, leave, leave, stay}
 	for k := 3; k <= n; k++ {
-		m = widen(m, k, stay)
+		m = widen(m, k, stay, leave)
 	}
 	c.Transition = m
 	return c, nil
 }
 
 // widen builds the k×k matrix from the (k−1)×(k−1) one.
-func widen(m []float64, k int, p float64) []float64 {
+func widen(m []float64, k int, stay, leave float64) []float64 {
 	w := make([]float64, k*k)
 	for i := range k - 1 {
 		for j := range k - 1 {
 			x := m[i*(k-1)+j]
-			w[i*k+j] += p * x
-			w[i*k+j+1] += (1 - p) * x
-			w[(i+1)*k+j] += (1 - p) * x
-			w[(i+1)*k+j+1] += p * x
+			w[i*k+j] += stay * x
+			w[i*k+j+1] += leave * x
+			w[(i+1)*k+j] += leave * x
+			w[(i+1)*k+j+1] += stay * x
 		}
 	}
 	for i := k; i < k*(k-1); i++ {

@@ -106,3 +106,12 @@ func TestRouwenhorstEigenvalues(t *testing.T) {
 		}
 	})
 }
+
+// As close to 1 as a number can be, a node is still left: the chance (1−ρ)/2 must
+// not be lost in 1 − (1+ρ)/2.
+func TestRouwenhorstNextToAUnitRoot(t *testing.T) {
+	rho := math.Nextafter(1, 0)
+	c := discretise(t, income.Rouwenhorst{Points: 2}, income.AR1{Autocorrelation: rho, InnovationSD: 1})
+	near(t, "chance to leave", c.Row(0)[1], (1-rho)/2, 0)
+	near(t, "stationary law", c.Stationary()[0], 0.5, 1e-15)
+}

@@ -1,6 +1,9 @@
 package income
 
-import "slices"
+import (
+	"math"
+	"slices"
+)
 
 // Stationary returns the distribution that a year leaves unchanged, by the
 // elimination of
@@ -14,7 +17,7 @@ import "slices"
 // parts that never meet, for then there is no single such distribution. The cost
 // is O(n³).
 func (c *Chain) Stationary() []float64 {
-	class, single := c.recurrent()
+	class, single := c.recurrent(math.SmallestNonzeroFloat64)
 	if !single {
 		panic("income: the chain falls into parts that never meet")
 	}
@@ -26,11 +29,11 @@ func (c *Chain) Stationary() []float64 {
 }
 
 // recurrent returns, ascending, the nodes of a class that the chain never leaves,
-// and whether every node leads to it.
-func (c *Chain) recurrent() (class []int, single bool) {
+// and whether every node leads to it. Moves less likely than least do not count.
+func (c *Chain) recurrent(least float64) (class []int, single bool) {
 	from := 0
 	for { // each turn goes deeper into the order of classes: at most n turns
-		there, back := c.reach(from, false), c.reach(from, true)
+		there, back := c.reach(from, false, least), c.reach(from, true, least)
 		class, from = class[:0], -1
 		for j := range there {
 			if there[j] {
@@ -47,8 +50,9 @@ func (c *Chain) recurrent() (class []int, single bool) {
 }
 
 // reach marks the nodes that can be reached from a node, itself included, or,
-// backwards, those from which it can be reached.
-func (c *Chain) reach(from int, backwards bool) []bool {
+// backwards, those from which it can be reached, by moves not less likely than
+// least.
+func (c *Chain) reach(from int, backwards bool, least float64) []bool {
 	n := c.Len()
 	seen := make([]bool, n)
 	seen[from] = true
@@ -59,7 +63,7 @@ func (c *Chain) reach(from int, backwards bool) []bool {
 			if backwards {
 				p = c.Transition[j*n+i]
 			}
-			if p > 0 && !seen[j] {
+			if p >= least && !seen[j] {
 				seen[j] = true
 				queue = append(queue, j)
 			}
@@ -100,10 +104,17 @@ func eliminate(a []float64, n int) []float64 {
 		for i := range k {
 			p[k] += p[i] * a[i*n+k]
 		}
+		if p[k] > 1e100 { // node 0 hardly ever visited: keep clear of overflow
+			rescale(p[:k+1], p[k])
+		}
 	}
-	sum := total(p)
-	for k := range p {
-		p[k] /= sum
-	}
+	rescale(p, total(p))
 	return p
+}
+
+// rescale divides every entry of p by whole.
+func rescale(p []float64, whole float64) {
+	for k := range p {
+		p[k] /= whole
+	}
 }

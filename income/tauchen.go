@@ -27,9 +27,9 @@ type Tauchen struct {
 // Name returns "tauchen".
 func (Tauchen) Name() string { return "tauchen" }
 
-// Discretise implements Discretiser. A chain with a node that would be left less
-// than once in 10¹⁰⁰ years is refused as a *FieldError: rounding would decide what
-// happens on it. The cost is O(Points²).
+// Discretise implements Discretiser. A chain that falls apart, nodes meeting
+// less than once in 10¹⁰⁰ years, is refused as a *FieldError: rounding would decide
+// what happens in the long run. The cost is O(Points²).
 func (g Tauchen) Discretise(p AR1) (*Chain, error) {
 	if err := validate(p, g.Points, g.Span); err != nil {
 		return nil, err
@@ -39,6 +39,9 @@ func (g Tauchen) Discretise(p AR1) (*Chain, error) {
 	}
 	n := g.Points
 	c := &Chain{Nodes: evenly(n, g.Span*p.StationarySD()), Transition: make([]float64, n*n)}
+	if err := c.distinct(p); err != nil {
+		return nil, err
+	}
 	half := c.Nodes[n-1] / float64(n-1)
 	for i := range n {
 		mean := p.Autocorrelation * c.Nodes[i]
@@ -53,26 +56,15 @@ func (g Tauchen) Discretise(p AR1) (*Chain, error) {
 			below = above
 		}
 	}
-	if c.leastExit() < exitAtLeast {
-		return nil, &FieldError{"Points", n, fmt.Sprintf("more points (or a smaller span): %g standard deviations at autocorrelation %g leave nodes so far apart that one is never left", g.Span, p.Autocorrelation)}
+	if class, _ := c.recurrent(moveAtLeast); len(class) < n {
+		return nil, &FieldError{"Points", n, fmt.Sprintf("more points (or a smaller span): %g standard deviations at autocorrelation %g leave nodes so far apart that some never meet", g.Span, p.Autocorrelation)}
 	}
 	return c, nil
 }
 
-// exitAtLeast is the smallest chance, a year, to leave a node that Discretise
-// accepts.
-const exitAtLeast = 1e-100
-
-// leastExit returns the smallest chance to leave any node, summed without
-// cancellation.
-func (c *Chain) leastExit() float64 {
-	least := 1.0
-	for i := range c.Nodes {
-		row := c.Row(i)
-		least = min(least, total(row[:i])+total(row[i+1:]))
-	}
-	return least
-}
+// moveAtLeast is the smallest chance, a year, of a move that counts when
+// Discretise asks whether every node leads to every other.
+const moveAtLeast = 1e-100
 
 // validate checks what both methods need.
 func validate(p AR1, points int, span float64) error {
@@ -84,4 +76,14 @@ func validate(p AR1, points int, span float64) error {
 		f.add("Span", span, "positive and finite")
 	}
 	return errors.Join(p.Validate(), errors.Join(f...))
+}
+
+// distinct reports a spread so large or small that nodes are no distinct numbers.
+func (c *Chain) distinct(p AR1) error {
+	for i, z := range c.Nodes {
+		if math.IsInf(z, 0) || i > 0 && z <= c.Nodes[i-1] {
+			return &FieldError{"InnovationSD", p.InnovationSD, "such that the nodes are distinct finite numbers"}
+		}
+	}
+	return nil
 }
