@@ -7,8 +7,11 @@ import (
 )
 
 // Certain returns survival for sure up to age last: s_t for t = first … last, the
-// last entry 0 as in every survival curve here.
+// last entry 0 as in every survival curve here. It panics if last is before first.
 func Certain(first, last int) []float64 {
+	if last < first {
+		panic("income: the last age is before the first")
+	}
 	s := make([]float64, last-first+1)
 	for t := range last - first {
 		s[t] = 1
