@@ -60,7 +60,11 @@ func parse(source string, data []byte) (*node, *faults) {
 	}
 	var doc yaml.Node
 	limits := loaderlimits.New(loaderlimits.DepthValue(maxDepth), loaderlimits.AliasValue(1))
+	empty := &node{kind: mapping, source: source, line: 1, column: 1}
 	if err := yaml.Load(data, &doc, yaml.WithPlugin(limits)); err != nil {
+		if strings.Contains(err.Error(), "no documents in stream") {
+			return empty, f
+		}
 		addYAML(f, source, err)
 		return nil, f
 	}
@@ -68,7 +72,7 @@ func parse(source string, data []byte) (*node, *faults) {
 	root := &doc
 	for root.Kind == yaml.DocumentNode || root.Kind == yaml.StreamNode {
 		if len(root.Content) == 0 {
-			return &node{kind: mapping, source: source, line: 1, column: 1}, f
+			return empty, f
 		}
 		root = root.Content[0]
 	}

@@ -115,7 +115,6 @@ type scratch struct {
 	mixValue, mixSlope []float64   // the same, expected over next nodes
 	extra              []float64   // what the slope lacks on the left of kinks
 	reference          []float64   // consumption that exponential utility is measured from
-	cursor             []int
 }
 
 func (w *scratch) grow(nodes, n int) {

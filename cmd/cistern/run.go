@@ -29,7 +29,6 @@ type run struct {
 	accuracy *accuracy
 	timings  []output.Timing
 	warnings []string
-	progress *progress
 }
 
 // startRun opens the run folder.
