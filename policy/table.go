@@ -124,6 +124,24 @@ func (tb *Table) Evaluate(node []uint8, cash, consumption, propensity []float64)
 	}
 }
 
+// Warm reads the table through if it is about to be evaluated at enough states for
+// that to pay: a table that has left the processor's caches comes back faster in
+// one stream than by every state's own misses (a third of the time of a panel's
+// year, measured). The sum it returns has no meaning but to keep the reads.
+func (tb *Table) Warm(states int) (sum float64) {
+	const statesAPiece = 1.0 / 8 // fewer touch too little of the table
+	if float64(states) < statesAPiece*float64(len(tb.edges)) {
+		return 0
+	}
+	for k := 0; k < len(tb.edges); k += 8 { // a cache line holds eight edges or two cubics
+		sum += tb.edges[k]
+	}
+	for k := 0; k < len(tb.cubic); k += 2 {
+		sum += tb.cubic[k][0]
+	}
+	return sum
+}
+
 // firstNode is node 0 for as many states as are evaluated at a time.
 var firstNode [256]uint8
 

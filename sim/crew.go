@@ -27,6 +27,7 @@ type crew struct {
 	dead        []int32
 	counts      []Count // [group] of the block
 	highestCash float64
+	read        float64 // what warming tables returns
 }
 
 // birth is what a household draws before its first year.
@@ -115,6 +116,7 @@ func (c *crew) live(k int) error {
 			c.slots = append(c.slots, c.slot[:alive]...)
 		}
 		c.dead = c.dead[:0]
+		c.read += tp.rule[t].Warm(alive)
 		for from := 0; from < alive; from += chunk {
 			to := min(from+chunk, alive)
 			if err := c.year(tp, t, from, to, row+from); err != nil {
