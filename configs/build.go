@@ -61,6 +61,9 @@ func (d *draft) buildSurvival(s *section, in *files) []float64 {
 	return curve
 }
 
+// outcomes is the number of income outcomes of all ages and nodes.
+func (d *draft) outcomes() int { return d.workingYears() * d.points * (d.transitory.Nodes + 1) }
+
 // workingYears is the number of years before the claim age.
 func (d *draft) workingYears() int {
 	return max(min(d.pension.ClaimAge, d.lastAge+1)-d.firstAge, 1)

@@ -164,6 +164,7 @@ func TestFaults(t *testing.T) {
 		{"empty ages", "last_age: 80", "last_age: 30", []string{"life.last_age: is 30, want above first_age, 30"}},
 		{"claim before first age", "claim_age: 65", "claim_age: 30", []string{"public.pension.claim_age: is 30, want above first_age, 30"}},
 		{"enormous count", "points: 5", "points: 100000", []string{"income.persistent.points: is 100000, want a whole number from 2 to 255"}},
+		{"too many outcomes", "points: 5}\n  transitory: {sd: 0.1}", "points: 255}\n  transitory: {sd: 0.1, nodes: 301}\ngroups: [" + strings.TrimSuffix(strings.Repeat("{name: a, share: 0.1}, ", 10), ", ") + "]", []string{"income.transitory.nodes: makes"}},
 		{"households beyond all", "households: 100", "households: 99999999999999", []string{"households: is 99999999999999"}},
 		{"wrong format", "cistern: 1", "cistern: 2", []string{"cistern: is 2"}},
 		{"missing format", "cistern: 1\n", "", []string{"cistern: is missing"}},

@@ -52,9 +52,14 @@ func readCommon(s *section) map[string]*node {
 	return blocks
 }
 
+// maxOutcomes bounds the income outcomes that a scenario may tabulate, over all
+// groups: a thousand times what an accurate solution takes.
+const maxOutcomes = 20_000_000
+
 // readHouseholds reads and builds the household of every group.
 func readHouseholds(s *section, sc *Scenario, blocks map[string]*node, groups []groupNode, in *files) {
 	var list *tree
+	outcomes := 0
 	for _, g := range groups {
 		out := s.out
 		if g.out != nil {
@@ -71,7 +76,12 @@ func readHouseholds(s *section, sc *Scenario, blocks map[string]*node, groups []
 			}
 		}
 		h := &section{w: s.w, n: n, out: out}
-		group := readHousehold(h, in).build(h, in)
+		d := readHousehold(h, in)
+		if outcomes += d.outcomes(); outcomes > maxOutcomes {
+			h.at("income.transitory.nodes", "makes, with the persistent points, working years and groups, more than %d income outcomes to tabulate, which no computer needs; lower one of them", maxOutcomes)
+			continue
+		}
+		group := d.build(h, in)
 		group.Name, group.Share = g.name, g.share
 		sc.Groups = append(sc.Groups, group)
 	}
