@@ -105,7 +105,7 @@ func resolve(name, source string, data []byte, overrides []Override, in *files) 
 // with Inputs beside it, gives the same scenario.
 func (sc *Scenario) YAML() []byte {
 	var b strings.Builder
-	fmt.Fprintf(&b, "# Scenario %s as resolved: every default is written out.\n", sc.Name)
+	b.WriteString("# The scenario as resolved: every default is written out.\n")
 	sc.resolved.write(&b, "")
 	return []byte(b.String())
 }

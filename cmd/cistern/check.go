@@ -22,13 +22,16 @@ and the allowed range; the exit status is then 2.`,
 			if err != nil {
 				return err
 			}
+			if err := affordable(sc, g.workers, g.out); err != nil {
+				return err
+			}
 			if _, err := g.stdout.Write(sc.YAML()); err != nil {
 				return err
 			}
 			c := sc.Cost(g.workers)
 			g.say("a run would simulate %.3g household-years; about %v on %d workers, %s of memory, %s of disk",
 				c.HouseholdYears, duration(c.Seconds), g.workers, size(c.MemoryBytes), size(c.DiskBytes))
-			return affordable(sc, g.workers, g.out)
+			return nil
 		},
 	}
 }

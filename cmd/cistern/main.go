@@ -107,13 +107,13 @@ A model's output under stated assumptions; no personal financial advice.`,
 		},
 		RunE: func(cmd *cobra.Command, args []string) error { return cmd.Help() },
 	}
+	root.SuggestionsMinimumDistance = 2
 	root.SetFlagErrorFunc(func(cmd *cobra.Command, err error) error {
 		return usagef("%w; see %s --help", err, cmd.CommandPath())
 	})
 	g.addFlags(root.PersistentFlags())
 	root.AddCommand(newSimulateCommand(g), newCheckCommand(g), newIncomeCommand(g), newSolveCommand(g),
 		newScenariosCommand(g), newVerifyCommand(g), newSchemaCommand(g), newVersionCommand(g))
-	root.InitDefaultCompletionCmd()
 	return root
 }
 
