@@ -45,3 +45,22 @@ func Source(name string) ([]byte, error) {
 	}
 	return data, nil
 }
+
+// shippedPrefix marks the name of a table that ships with the program, wherever
+// the scenario is.
+const shippedPrefix = "builtin:"
+
+func isShipped(name string) bool { return strings.HasPrefix(name, shippedPrefix) }
+
+// shippedTable reads a table that ships with the program.
+func shippedTable(name string) (data []byte, shown string, err error) {
+	base, ok := strings.CutPrefix(name, shippedPrefix)
+	if !ok {
+		return nil, name, fmt.Errorf("this scenario is in no folder; only tables named %s… can be read", shippedPrefix)
+	}
+	data, err = shipped.ReadFile("scenarios/" + base)
+	if err != nil {
+		return nil, name, fmt.Errorf("no table of that name ships with the program")
+	}
+	return data, name, nil
+}

@@ -77,7 +77,7 @@ func (d *draft) readLife(s *section) {
 	}
 	d.survival = s.oneForm("survival", "yearly survival: a table of death probabilities, gompertz, or certain", 2, false,
 		form{mark: "table", wants: "{table, sex, year}", read: func(t *section) {
-			d.table = t.file(d.in, "table", "CSV with columns age, sex, year, q")
+			d.table = t.file(d.in, "table", "CSV with columns age, sex, year, q; a name that begins with builtin: is a table that ships with the program")
 			d.sex = t.text("sex", "rows with this sex", "", true, 40)
 			d.year = int(t.integer(number{key: "year", meaning: "rows of this year", in: within(0, 9999), required: true}))
 		}},

@@ -3,7 +3,6 @@ package configs
 import (
 	"fmt"
 	"os"
-	"path"
 	"path/filepath"
 	"strings"
 )
@@ -17,6 +16,9 @@ func Load(file string, overrides []Override) (*Scenario, error) {
 	}
 	dir := filepath.Dir(file)
 	in := newFiles(func(name string) ([]byte, string, error) {
+		if isShipped(name) {
+			return shippedTable(name)
+		}
 		if !filepath.IsAbs(name) {
 			name = filepath.Join(dir, name)
 		}
@@ -63,21 +65,14 @@ func Builtin(name string, overrides []Override) (*Scenario, error) {
 	if err != nil {
 		return nil, err
 	}
-	in := newFiles(func(name string) ([]byte, string, error) {
-		file := path.Join("scenarios", name)
-		data, err := shipped.ReadFile(file)
-		return data, file, err
-	})
+	in := newFiles(shippedTable)
 	return resolve(name, name+".yaml", data, overrides, in)
 }
 
-// Parse reads a scenario that names no files from memory; source stands for it in
-// errors.
+// Parse reads a scenario from memory; source stands for it in errors. It can name
+// no tables but those that ship with the program.
 func Parse(source string, data []byte, overrides []Override) (*Scenario, error) {
-	in := newFiles(func(name string) ([]byte, string, error) {
-		return nil, name, fmt.Errorf("this scenario has no folder to look in")
-	})
-	return resolve(source, source, data, overrides, in)
+	return resolve(source, source, data, overrides, newFiles(shippedTable))
 }
 
 func resolve(name, source string, data []byte, overrides []Override, in *files) (*Scenario, error) {

@@ -33,7 +33,7 @@ func (f *files) copyName(name string) string {
 	if copy, ok := f.names[name]; ok {
 		return copy
 	}
-	base := path.Base(filepath.ToSlash(name))
+	base := path.Base(filepath.ToSlash(strings.TrimPrefix(name, shippedPrefix)))
 	copy := "inputs/" + base
 	for k := 2; f.taken(copy); k++ {
 		copy = fmt.Sprintf("inputs/%d-%s", k, base)
