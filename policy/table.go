@@ -13,7 +13,7 @@ import "math"
 // and a cubic in half of one: a panel reads the table of every age anew for every
 // block of households, and how long that takes depends on the table's size.
 type Table struct {
-	edges []float64    // where pieces begin; node after node, each ending with +Inf
+	edges []float64    // where pieces begin; node after node, each ending with NaN, which stops any search
 	cubic [][4]float64 // the piece's coefficients; at a node's last edge unused
 	guide []int32      // [node][bucket] first piece of the node that can hold a point of the bucket
 	top   []float64    // [node] where extrapolation begins
@@ -81,7 +81,7 @@ func (tb *Table) addPieces(c *Curve) {
 		add(c.Cash[i], c.Consumption[i], c1, c2, c3)
 	}
 	add(c.Cash[n-1], c.Consumption[n-1], c.Right[n-1], 0, 0)
-	add(math.Inf(1), 0, 0, 0, 0)
+	add(math.NaN(), 0, 0, 0, 0)
 }
 
 // fillGuide sets the guide of the node whose pieces begin at first: where a search
@@ -182,10 +182,8 @@ func (tb *Table) both(piece []int32, cash, consumption, propensity []float64) {
 	for i, k := range piece {
 		u := cash[i] - edges[k]
 		q := &cubic[k]
-		e2 := q[2] + u*q[3]
-		e1 := q[1] + u*e2
-		consumption[i] = q[0] + u*e1
-		propensity[i] = e1 + u*(e2+u*q[3])
+		consumption[i] = q[0] + u*(q[1]+u*(q[2]+u*q[3]))
+		propensity[i] = q[1] + u*(2*q[2]+3*u*q[3])
 	}
 }
 
