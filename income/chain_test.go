@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 	"testing"
 
 	"gonum.org/v1/gonum/mat"
@@ -143,8 +144,8 @@ func TestStationaryPanicsWhereThereIsNone(t *testing.T) {
 func mustPanic(t *testing.T, f func()) {
 	t.Helper()
 	defer func() {
-		if recover() == nil {
-			t.Error("no panic")
+		if message, ok := recover().(string); !ok || !strings.HasPrefix(message, "income: ") {
+			t.Errorf("panic %q, want one of this package", message)
 		}
 	}()
 	f()

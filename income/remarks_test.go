@@ -61,6 +61,7 @@ func TestTransitoryRemarks(t *testing.T) {
 		want  [][]string
 	}{
 		{"none", income.Transitory{Nodes: 2}, nil},
+		{"none on one node", income.Transitory{Nodes: 1}, nil},
 		{"one node", income.Transitory{SD: 0.2, Nodes: 1}, [][]string{{"leaves transitory risk out"}}},
 		// Derived: two nodes at ±4 sds of weight ½ have 4 times the sd.
 		{"two nodes", income.Transitory{SD: 0.2, Nodes: 2}, [][]string{{"0.8 on 2 nodes (trapezoid)", "300.0 % too high"}}},
