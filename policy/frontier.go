@@ -4,7 +4,7 @@ import "math"
 
 // segment is one piece of a rule ready for evaluation: for cash-on-hand below
 // high, consumption less subsistence is the cubic c0 + c1·u + c2·u² + c3·u³ in
-// u = m − origin.
+// u = m − origin. The segments of a linear rule have their origin at 0.
 type segment struct{ high, origin, c0, c1, c2, c3 float64 }
 
 // frontier is next year's rule as the backward step reads it: for every
@@ -46,6 +46,9 @@ func (f *frontier) set(j int, c *Curve, tolerance, shift float64, cubic bool) (s
 		f.noteKinks(j, c)
 		return setCubic(sg[1:n], c, tolerance, shift)
 	}
+	for _, s := range []*segment{&sg[0], &sg[n]} {
+		s.c0, s.origin = s.c0-s.c1*s.origin, 0
+	}
 	return setLinear(sg[1:n], c, tolerance, shift)
 }
 
@@ -55,7 +58,7 @@ func setLinear(sg []segment, c *Curve, tolerance, shift float64) (sound bool) {
 	m, x := cash[0], consumption[0]-shift
 	for i := range sg {
 		next := cash[i+1]
-		sg[i] = segment{next - tolerance, m, x, right[i], 0, 0}
+		sg[i] = segment{high: next - tolerance, c0: x - right[i]*m, c1: right[i]}
 		sound = sound && next > m && x >= 0
 		m, x = next, consumption[i+1]-shift
 	}

@@ -47,6 +47,7 @@ type Solver struct {
 	kinks  []sighting // kinks of next year's rule as this year's assets
 	assets []float64  // this year's asset grid
 	gross  []float64  // R·assets
+	plain  bool       // assets hold the fixed grid alone
 	work   scratch
 	euler  euler // the year's constants
 }
@@ -120,6 +121,7 @@ func (s *Solver) begin(h Household, o Options) error {
 		s.rule.Curves[t] = s.curves[t*nz : (t+1)*nz]
 	}
 	s.next.reset(nz)
+	s.plain = false
 	return nil
 }
 
@@ -236,6 +238,10 @@ func (s *Solver) placeAssets(t, from, to int) {
 		}
 		slices.SortFunc(s.kinks, bySighting)
 	}
+	if len(s.kinks) == 0 && s.plain && s.assets[0] == bottom {
+		return // the same grid again
+	}
+	s.plain = len(s.kinks) == 0
 	s.assets = mergeAssets(s.assets[:0], bottom, s.offsets, s.kinks, s.tolerance())
 	s.gross = s.gross[:0]
 	for _, a := range s.assets {
