@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
+	"sort"
 	"testing"
 )
 
@@ -56,12 +57,26 @@ func compareTable(t *testing.T, tb *Table, c *Curve, node int, random *rand.Rand
 	for i, m := range cash {
 		x, d := c.At(m)
 		// The same operations in the same order: equal to the bit where products and
-		// sums are not fused, to two roundings elsewhere.
-		tolerance := 4e-16 * (math.Abs(x) + math.Abs(m))
-		if math.Abs(only[i]-x) > tolerance || math.Abs(consumption[i]-x) > tolerance || !(math.Abs(propensity[i]-d) <= 1e-14*(1+math.Abs(d))) {
+		// sums are not fused, to a rounding of the largest term elsewhere.
+		cTerms, dTerms := terms(c, m)
+		if math.Abs(only[i]-x) > 4e-16*cTerms || consumption[i] != only[i] || !(math.Abs(propensity[i]-d) <= 4e-16*dTerms) {
 			t.Fatalf("node %d, cash %v: consumption %v, %v, propensity %v; want %v, %v", node, m, only[i], consumption[i], propensity[i], x, d)
 		}
 	}
+}
+
+// terms returns the sizes of the terms that consumption and the propensity at m are
+// sums of.
+func terms(c *Curve, m float64) (consumption, propensity float64) {
+	j := sort.Search(len(c.Cash), func(i int) bool { return c.Cash[i] > m }) - 1
+	if j < 0 || j == len(c.Cash)-1 {
+		x, d := c.At(m)
+		return math.Abs(x) + math.Abs(m), math.Abs(d)
+	}
+	c1, c2, c3 := c.cubic(j)
+	u := m - c.Cash[j]
+	a, b, d := math.Abs(u*c1), math.Abs(u*u*c2), math.Abs(u*u*u*c3)
+	return math.Abs(c.Consumption[j]) + a + b + d, math.Abs(c1) + math.Abs(2*u*c2) + math.Abs(3*u*u*c3)
 }
 
 // Curves that no solver would give, to find where the guide fails: few and many
