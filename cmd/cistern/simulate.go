@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"path/filepath"
+	"strings"
 
 	"github.com/spf13/cobra"
 
@@ -57,7 +58,14 @@ func simulate(ctx context.Context, g *globals, args []string) error {
 
 // show prints the run's table, where its files are and how far to trust it.
 func (r *run) show() error {
-	if err := r.g.render(r.summary.BandTable(output.Everyone, r.sc.Currency)); err != nil {
+	bands := r.summary.BandTable(output.Everyone, r.sc.Currency)
+	for _, c := range bands.Columns {
+		c.Digits = 5
+		if strings.HasSuffix(c.Name, "_error") || strings.HasPrefix(c.Name, "share") {
+			c.Digits = 3
+		}
+	}
+	if err := r.g.render(bands); err != nil {
 		return err
 	}
 	say := r.g.say
