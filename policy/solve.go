@@ -67,6 +67,7 @@ type problem struct {
 	o       Options
 	bounds  [][]float64
 	offsets []float64 // asset grid above the limit
+	sparse  []float64 // a few of them, for rules that are lines between kinks
 	marginal
 	returns float64 // R
 }
@@ -92,6 +93,9 @@ func (s *Solver) Solve(ctx context.Context, h Household, o Options) (*Rule, erro
 	return &s.rule, nil
 }
 
+// sparseNodes is about how many nodes of the fixed grid a rule of lines keeps.
+const sparseNodes = 10
+
 func (s *Solver) begin(h Household, o Options) error {
 	bounds, err := h.bounds()
 	if err != nil {
@@ -112,6 +116,10 @@ func (s *Solver) begin(h Household, o Options) error {
 	}
 	s.problem = problem{h: h, o: o, bounds: bounds, marginal: marginalOf(h.Utility, s.marginal), returns: 1 + h.Return,
 		offsets: assetOffsets(o.AssetPoints, top, o.AssetScale, limited)}
+	for i := 0; i < len(s.offsets)-1; i += max(1, len(s.offsets)/sparseNodes) {
+		s.sparse = append(s.sparse, s.offsets[i])
+	}
+	s.sparse = append(s.sparse, s.offsets[len(s.offsets)-1])
 	T, nz := h.Years(), h.Nodes()
 	s.arena.reset()
 	s.curves = slices.Grow(s.curves[:0], T*nz)[:T*nz]
@@ -238,15 +246,27 @@ func (s *Solver) placeAssets(t, from, to int) {
 		}
 		slices.SortFunc(s.kinks, bySighting)
 	}
-	if len(s.kinks) == 0 && s.plain && s.assets[0] == bottom {
+	if len(s.kinks) == 0 && s.plain && s.assets[0] == bottom && s.o.Interpolation == Linear {
 		return // the same grid again
 	}
 	s.plain = len(s.kinks) == 0
-	s.assets = mergeAssets(s.assets[:0], bottom, s.offsets, s.kinks, s.tolerance())
+	offsets := s.offsets
+	if s.piecewiseLinear(t) {
+		offsets = s.sparse
+	}
+	s.assets = mergeAssets(s.assets[:0], bottom, offsets, s.kinks, s.tolerance())
 	s.gross = s.gross[:0]
 	for _, a := range s.assets {
 		s.gross = append(s.gross, s.returns*a)
 	}
+}
+
+// piecewiseLinear reports whether the rule of year t consists of lines between its
+// kinks, so that a few nodes beside them hold it exactly. It does for the built-in
+// families (all have linear risk tolerance) where the rest of life is certain and
+// no estate is cared for.
+func (s *Solver) piecewiseLinear(t int) bool {
+	return s.o.Interpolation == Cubic && s.kind != anyKind && s.h.Bequest.Weight == 0 && t < s.h.Years()-1 && !s.h.Working(t+1)
 }
 
 // invert turns the expectations of the nodes in [from, to) into this year's rule
