@@ -34,8 +34,18 @@ func share(t *testing.T, what string, at int, count, n, want float64, source str
 	within4(t, what, at, count/n, want, math.Sqrt(want*(1-want)/n), source)
 }
 
+// long skips a test of many households in short runs: with the race detector on it
+// would take minutes and has nothing to race.
+func long(t *testing.T) {
+	t.Helper()
+	if testing.Short() {
+		t.Skip("many households")
+	}
+}
+
 // The panel against the laws it is drawn from.
 func TestPanelFollowsItsLaws(t *testing.T) {
+	long(t)
 	const households = 10 * Unit
 	p := population(t, risky(t), households)
 	h := p.Types[0].Rule.Household
@@ -82,6 +92,7 @@ func TestPanelFollowsItsLaws(t *testing.T) {
 // Transitions: the joint law of this and next year's node, and independence of the
 // survivors' next node from survival (both use one draw's halves).
 func TestNodesMoveAsTheChain(t *testing.T) {
+	long(t)
 	p := population(t, risky(t), 8*Unit)
 	chain := p.Types[0].Rule.Household.Earnings.Chain
 	r := simulate(t, p, Options{Columns: Identity | States | Fates, Workers: 2})
@@ -107,6 +118,7 @@ func TestNodesMoveAsTheChain(t *testing.T) {
 
 // Start assets: zero with the given probability, otherwise lognormal.
 func TestStartAssets(t *testing.T) {
+	long(t)
 	const households = 10 * Unit
 	p := population(t, risky(t), households)
 	p.Types[0].Start = Start{Median: 3, LogSD: 0.7, ZeroShare: 0.3}
@@ -144,6 +156,7 @@ func TestStartAssets(t *testing.T) {
 // range of ids, far closer than by chance (derived: the points frac(i·φ) of any n
 // consecutive i leave gaps of about 1/n; three-gap theorem).
 func TestGroupsAndTypesHaveTheirShares(t *testing.T) {
+	long(t)
 	const households = 10 * Unit
 	p := mixed(t, households)
 	r := simulate(t, p, Options{Columns: Identity})
@@ -182,6 +195,7 @@ func TestGroupsAndTypesHaveTheirShares(t *testing.T) {
 // with standard deviation k·σ (derived: Caballero 1990, Journal of Monetary
 // Economics 25, for a finite horizon: the Euler equation with normal growth).
 func TestExponentialConsumptionGrowth(t *testing.T) {
+	long(t)
 	const households, years, sigma = 8 * Unit, 12, 0.1
 	h := exponential(t, years)
 	e := h.Earnings.Process

@@ -27,7 +27,7 @@ func corners() []uint64 {
 func TestNormalTable(t *testing.T) {
 	random := rand.New(rand.NewPCG(1, 2))
 	draws := corners()
-	for range 200_000 {
+	for range 20_000 {
 		draws = append(draws, random.Uint64(), random.Uint64()>>random.IntN(52)&^(1<<63), random.Uint64()>>random.IntN(52)|1<<63)
 	}
 	for _, tt := range []struct {

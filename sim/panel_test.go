@@ -157,6 +157,7 @@ func exponential(tb testing.TB, years int) policy.Household {
 
 // derived: the accounting of the model, on every row of every kind of population.
 func TestRowsObeyTheModel(t *testing.T) {
+	long(t)
 	for _, tt := range populations(t) {
 		t.Run(tt.name, func(t *testing.T) {
 			r := simulate(t, tt.p, Options{Columns: All})
@@ -266,6 +267,7 @@ func (l *ledger) checkIncome(k int, h *policy.Household) string {
 
 // Position is the inverse of ordering by household, then year, within a block.
 func TestPosition(t *testing.T) {
+	long(t)
 	p := mixed(t, 2*Unit+10)
 	_, err := Simulate(t.Context(), p, Options{Columns: All}, func(_ int, b *Block) (func() error, error) {
 		at := make([]int, b.N)
@@ -299,6 +301,7 @@ func TestPosition(t *testing.T) {
 
 // Columns that are not asked for must not change those that are.
 func TestColumnsAreIndependent(t *testing.T) {
+	long(t)
 	p := mixed(t, Unit+500)
 	all := simulate(t, p, Options{Columns: All})
 	for bit := Columns(0); bit <= All; bit = max(1, bit<<1) {

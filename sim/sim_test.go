@@ -2,6 +2,7 @@ package sim
 
 import (
 	"context"
+	"fmt"
 	"syscall"
 	"testing"
 
@@ -77,40 +78,59 @@ func population(tb testing.TB, h policy.Household, households int64) *Population
 
 var benchResult Result
 
-// BenchmarkSimulate reports time per household-year on one worker.
+// BenchmarkSimulate reports time per household-year on one worker and on two, for
+// the yardstick's population (10⁶ households: the tables are made once a run, which tells in small ones).
 func BenchmarkSimulate(b *testing.B) {
+	const yardstick = Identity | States | Fates // the columns that the C yardstick fills
 	for _, bb := range []struct {
-		name, size string
-		method     policy.Interpolation
-		columns    Columns
+		size    string
+		method  policy.Interpolation
+		columns string
+		fill    Columns
+		workers int
 	}{
-		{"size=S/interpolation=linear/columns=core", "S", policy.Linear, Identity | States | Fates},
-		{"size=S/interpolation=cubic/columns=core", "S", policy.Cubic, Identity | States | Fates},
-		{"size=L/interpolation=linear/columns=core", "L", policy.Linear, Identity | States | Fates},
-		{"size=S/interpolation=cubic/columns=all", "S", policy.Cubic, All},
+		{"S", policy.Linear, "none", 0, 1},
+		{"S", policy.Linear, "yardstick", yardstick, 1},
+		{"S", policy.Linear, "yardstick", yardstick, 2},
+		{"S", policy.Cubic, "yardstick", yardstick, 1},
+		{"S", policy.Cubic, "all", All, 1},
+		{"S", policy.Cubic, "all", All, 2},
+		{"L", policy.Linear, "yardstick", yardstick, 1},
 	} {
-		b.Run(bb.name, func(b *testing.B) {
-			h := reference(b, bb.size)
-			o := policy.DefaultOptions()
-			o.Interpolation, o.HighestAssets, o.AssetScale = bb.method, 300, 1
-			if bb.size == "L" {
-				o.AssetPoints = 1000
+		b.Run(fmt.Sprintf("size=%s/interpolation=%v/columns=%s/workers=%d", bb.size, bb.method, bb.columns, bb.workers), func(b *testing.B) {
+			p := referencePopulation(b, bb.size, bb.method)
+			if testing.Short() {
+				p.Households = 2 * Unit
 			}
-			p := population(b, h, 200_000)
-			p.Types[0].Rule = solve(b, h, o)
-			p.Types[0].Start = Start{Median: 0.5, LogSD: 1}
 			b.ResetTimer()
 			start := processTime()
 			for range b.N {
-				r, err := Simulate(context.Background(), p, Options{Columns: bb.columns}, func(int, *Block) (func() error, error) { return nil, nil })
+				r, err := Simulate(b.Context(), p, Options{Columns: bb.fill, Workers: bb.workers}, nothing)
 				if err != nil {
 					b.Fatal(err)
 				}
 				benchResult = r
 			}
-			b.ReportMetric(float64(processTime()-start)/float64(b.N)/float64(benchResult.HouseholdYears), "cpu-ns/household-year")
+			years := float64(b.N) * float64(benchResult.HouseholdYears)
+			b.ReportMetric(float64(processTime()-start)/years, "cpu-ns/household-year")
+			b.ReportMetric(float64(b.Elapsed().Nanoseconds())/years, "ns/household-year")
 		})
 	}
+}
+
+// referencePopulation is a million households of the speed comparison.
+func referencePopulation(tb testing.TB, size string, method policy.Interpolation) *Population {
+	tb.Helper()
+	h := reference(tb, size)
+	o := policy.DefaultOptions()
+	o.Interpolation, o.HighestAssets, o.AssetScale = method, 300, 1
+	if size == "L" {
+		o.AssetPoints = 1000
+	}
+	p := population(tb, h, 1_000_000)
+	p.Types[0].Rule = solve(tb, h, o)
+	p.Types[0].Start = Start{Median: 0.5, LogSD: 1}
+	return p
 }
 
 // processTime is the processor time that the test process has used: on a machine

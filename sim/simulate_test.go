@@ -52,7 +52,7 @@ func TestWorkersDoNotMatter(t *testing.T) {
 		p.Households = 2*Unit + 100
 	}
 	want, counts := fingerprint(t, 0, p, Options{Workers: 1})
-	for _, workers := range []int{0, 2, 3, 8} {
+	for _, workers := range []int{2, 3, 8} {
 		got, c := fingerprint(t, 0, p, Options{Workers: workers})
 		if got != want {
 			t.Errorf("%d workers give other rows than one", workers)
@@ -70,6 +70,7 @@ func TestWorkersDoNotMatter(t *testing.T) {
 // A household's life depends on seed and id only: not on the range of ids that is
 // simulated, not on the size of the population.
 func TestRangesReproduceTheWhole(t *testing.T) {
+	long(t)
 	p := mixed(t, 4*Unit+77)
 	whole, counts := fingerprint(t, 0, p, Options{})
 	var parts uint64
@@ -91,7 +92,7 @@ func TestRangesReproduceTheWhole(t *testing.T) {
 
 // Blocks are committed in order, one at a time, and progress is reported after each.
 func TestCommitsComeInOrder(t *testing.T) {
-	p := population(t, risky(t), 9*Unit+5)
+	p := population(t, exponential(t, 10), 9*Unit+5)
 	var next, reported int64
 	var inside atomic.Int32
 	_, err := Simulate(t.Context(), p, Options{Workers: 4, OnProgress: func(done, total int64) {
@@ -125,7 +126,7 @@ var errDisk = errors.New("disk full")
 // Whatever goes wrong in a block ends the run with an error, and the blocks before
 // it are committed, whatever the number of workers.
 func TestFailuresEndTheRun(t *testing.T) {
-	p := population(t, risky(t), 8*Unit)
+	p := population(t, exponential(t, 10), 8*Unit)
 	for _, tt := range []struct {
 		name string
 		work func(b *Block) (func() error, error)
@@ -159,7 +160,7 @@ func TestFailuresEndTheRun(t *testing.T) {
 }
 
 func TestPanicInProgressEndsTheRun(t *testing.T) {
-	p := population(t, risky(t), 4*Unit)
+	p := population(t, exponential(t, 10), 4*Unit)
 	_, err := Simulate(t.Context(), p, Options{Workers: 2, OnProgress: func(int64, int64) { panic("no bar") }}, nothing)
 	if err == nil || !strings.Contains(err.Error(), "no bar") {
 		t.Errorf("got %v, want the panic as an error", err)
@@ -173,7 +174,7 @@ var errStop = errors.New("enough")
 func TestCancelEndsWithinABlock(t *testing.T) {
 	for _, workers := range []int{1, 3} {
 		ctx, cancel := context.WithCancelCause(context.Background())
-		p := population(t, risky(t), 1000*Unit)
+		p := population(t, exponential(t, 10), 1000*Unit)
 		var begun atomic.Int64
 		result, err := Simulate(ctx, p, Options{Workers: workers}, func(_ int, b *Block) (func() error, error) {
 			begun.Add(1)
@@ -255,6 +256,7 @@ func TestImpossibleStates(t *testing.T) {
 
 // Types without a twin have NaN in the twin's columns, not another type's numbers.
 func TestTypesWithoutTwin(t *testing.T) {
+	long(t)
 	p := mixed(t, 2*Unit)
 	p.Types[1].Twin = nil
 	r := simulate(t, p, Options{Columns: Twins | Identity})
@@ -267,6 +269,7 @@ func TestTypesWithoutTwin(t *testing.T) {
 
 // States above the grid are counted, by group, and the highest cash is the highest.
 func TestAboveTopIsCounted(t *testing.T) {
+	long(t)
 	p := mixed(t, Unit+300)
 	for i := range p.Types {
 		o := policy.DefaultOptions()
