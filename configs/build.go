@@ -12,7 +12,7 @@ import (
 // build puts a household together. Where that is not possible it reports why, at
 // the keys concerned, and returns what there is.
 func (d *draft) build(s *section, in *files) Group {
-	g := Group{Process: Process{d.process.Autocorrelation, d.process.InnovationSD, d.method, d.points}}
+	g := Group{Process: Process{d.process.Autocorrelation, d.process.InnovationSD, d.method, d.points, d.initial}}
 	before := len(s.w.faults.list)
 	survival := d.buildSurvival(s, in)
 	profile := d.buildProfile(s, in)

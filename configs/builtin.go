@@ -7,7 +7,7 @@ import (
 	"strings"
 )
 
-//go:embed scenarios
+//go:embed scenarios data
 var shipped embed.FS
 
 // Default is the scenario of a run that names none.
@@ -58,7 +58,7 @@ func shippedTable(name string) (data []byte, shown string, err error) {
 	if !ok {
 		return nil, name, fmt.Errorf("this scenario is in no folder; only tables named %s… can be read", shippedPrefix)
 	}
-	data, err = shipped.ReadFile("scenarios/" + base)
+	data, err = shipped.ReadFile("data/" + base)
 	if err != nil {
 		return nil, name, fmt.Errorf("no table of that name ships with the program")
 	}

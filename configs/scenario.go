@@ -39,6 +39,7 @@ type Process struct {
 	InnovationSD    float64
 	Method          string // rouwenhorst or tauchen
 	Points          int
+	InitialSD       float64 // NaN: the stationary distribution
 }
 
 // Panel says what is written of the panel.

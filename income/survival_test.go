@@ -76,7 +76,9 @@ func readRows(t *testing.T, path string) [][]string {
 		t.Fatal(err)
 	}
 	defer f.Close()
-	rows, err := csv.NewReader(f).ReadAll()
+	r := csv.NewReader(f)
+	r.Comment = '#'
+	rows, err := r.ReadAll()
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -92,15 +94,10 @@ func number(t *testing.T, s string) float64 {
 	return x
 }
 
-// mortalityFiles are the extract of the tests and, where it is there, the file that
-// ships with the scenarios.
+// mortalityFiles are the extract of the tests and the file that ships with the
+// scenarios.
 func mortalityFiles() []string {
-	files := []string{"../testdata/income/us_mortality_extract.csv"}
-	const shipped = "../configs/data/us_mortality_decennial.csv"
-	if _, err := os.Stat(shipped); err == nil {
-		files = append(files, shipped)
-	}
-	return files
+	return []string{"../testdata/income/us_mortality_extract.csv", "../configs/data/us_mortality_decennial.csv"}
 }
 
 // Published, from memory: US National Center for Health Statistics, life tables

@@ -2,6 +2,7 @@ package main
 
 import (
 	"fmt"
+	"math"
 
 	"github.com/spf13/cobra"
 
@@ -28,14 +29,24 @@ moments at every node, and a remark where the chain is a poor stand-in.`,
 				return err
 			}
 			for _, group := range sc.Groups {
-				p := income.AR1{Autocorrelation: group.Process.Autocorrelation, InnovationSD: group.Process.InnovationSD}
-				for _, remark := range income.Remarks(p, group.Household.Earnings.Chain) {
+				for _, remark := range remarks(group) {
 					g.say("%s: %s", group.Name, remark)
 				}
 			}
 			return nil
 		},
 	}
+}
+
+// remarks says where a group's chain and nodes are poor stand-ins.
+func remarks(g configs.Group) []string {
+	e := g.Household.Earnings
+	p := income.AR1{Autocorrelation: g.Process.Autocorrelation, InnovationSD: g.Process.InnovationSD}
+	out := append(income.Remarks(p, e.Chain), e.Transitory.Remarks()...)
+	if sd := g.Process.InitialSD; !math.IsNaN(sd) {
+		out = append(out, e.Chain.ProjectionRemarks(sd)...)
+	}
+	return out
 }
 
 // momentsTable has a row a group and moment, chain and process side by side.
