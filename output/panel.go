@@ -106,14 +106,15 @@ type Rows struct {
 // each with its own number; the functions it returns, Close and Abort must be
 // called one at a time.
 type Panel struct {
-	dir   string
-	o     PanelOptions
-	file  *panelFormat
-	work  []*encoder // one a worker
-	next  int64      // first household not yet committed
-	mu    sync.Mutex // guards parts and fault
-	parts map[int64]*part
-	fault error // first error; nothing is written after it
+	dir        string
+	o          PanelOptions
+	file       *panelFormat
+	work       []*encoder    // one a worker
+	next       int64         // first household not yet committed
+	publishing chan struct{} // closed when the part finished last is on disk; nil before the first
+	mu         sync.Mutex    // guards parts and fault
+	parts      map[int64]*part
+	fault      error // first error; nothing is written after it
 }
 
 // NewPanel prepares a panel in the folder dir, which is made if it is absent.
@@ -193,6 +194,7 @@ func (p *Panel) Encode(worker int, rows Rows) (commit func() error, err error) {
 // Close completes the panel. If households are missing or an error occurred
 // before, what is unfinished is removed and the error returned.
 func (p *Panel) Close() error {
+	p.settle()
 	if err := p.failed(); err != nil {
 		return errors.Join(err, p.Abort())
 	}
@@ -205,6 +207,7 @@ func (p *Panel) Close() error {
 // Abort gives the panel up: the part being written is removed, the parts that
 // are whole stay. It may follow Close, and then does nothing.
 func (p *Panel) Abort() error {
+	p.settle()
 	p.mu.Lock()
 	defer p.mu.Unlock()
 	if p.fault == nil {

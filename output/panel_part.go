@@ -73,16 +73,34 @@ func (pt *part) commit(g *parquet.ConcurrentRowGroupWriter) error {
 	return nil
 }
 
-// finish writes the footer and gives the part its name.
+// finish writes the footer and has the part published.
 func (p *Panel) finish(pt *part) error {
 	if err := pt.w.Close(); err != nil {
 		return fmt.Errorf("output: %s: %w", pt.path, err)
 	}
-	if err := pt.out.Commit(); err != nil {
-		return err
-	}
 	p.mu.Lock()
-	defer p.mu.Unlock()
 	delete(p.parts, pt.index)
+	p.mu.Unlock()
+	p.settle() // one part at a time: they appear in order
+	published := make(chan struct{})
+	p.publishing = published
+	go func() {
+		defer close(published)
+		if p.failed() != nil {
+			_ = pt.out.Abort() // the first error is what counts
+			return
+		}
+		if err := pt.out.Commit(); err != nil {
+			_ = p.fail(err)
+		}
+	}()
 	return nil
+}
+
+// settle waits until the part finished last is on disk under its name. Bringing
+// it there takes the disk's time, and meanwhile the workers encode the next.
+func (p *Panel) settle() {
+	if p.publishing != nil {
+		<-p.publishing
+	}
 }
