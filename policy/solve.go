@@ -158,19 +158,11 @@ func (s *Solver) year(t int) error {
 	return nil
 }
 
-// lastYear is the rule of a household without bequest motive at its last age:
-// it consumes everything.
+// lastYear is the rule of a household without bequest motive at its last age: it
+// keeps nothing, so that the limit of 0 binds everywhere on the grid.
 func (s *Solver) lastYear() Curve {
-	low := s.offsets[0]
-	if s.h.Limit.Kind == LimitNone {
-		low = s.o.LowestAssets
-	}
-	if f := s.h.Utility.Infimum(); !math.IsInf(f, -1) {
-		low = math.Max(low, f)
-	}
-	high := math.Max(s.o.HighestAssets, low+1)
+	m := []float64{s.o.HighestAssets, 2 * s.o.HighestAssets}
 	one := []float64{1, 1}
-	m := []float64{low, high}
 	return Curve{Cash: m, Consumption: m, Left: one, Right: one, Bound: 0}
 }
 

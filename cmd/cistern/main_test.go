@@ -394,6 +394,35 @@ func TestSolveCommand(t *testing.T) {
 	}
 }
 
+// The rows of policy.parquet are a rule that can be read by interpolation: finite,
+// ascending in cash-on-hand, from the least that a household can have.
+func TestPolicyRows(t *testing.T) {
+	for _, name := range []string{"quayside", "quayside-exponential"} {
+		t.Chdir(t.TempDir())
+		if status, _, stderr := cistern(t, "solve", name, "--out", "rule", "--quiet"); status != 0 {
+			t.Fatal(stderr)
+		}
+		p, err := output.ReadTable("rule/policy.parquet")
+		if err != nil {
+			t.Fatal(err)
+		}
+		cash, consumption, age := p.Column("cash_on_hand").Floats, p.Column("consumption").Floats, p.Column("age").Ints
+		z, group := p.Column("persistent").Floats, p.Column("group").Strings
+		for i, m := range cash {
+			if math.IsInf(m, 0) || math.IsNaN(m) || math.IsInf(consumption[i], 0) || math.IsNaN(consumption[i]) {
+				t.Fatalf("%s row %d: consumption %v at %v", name, i, consumption[i], m)
+			}
+			first := i == 0 || age[i] != age[i-1] || z[i] != z[i-1] || group[i] != group[i-1]
+			if !first && (m <= cash[i-1] || consumption[i] < consumption[i-1]) {
+				t.Fatalf("%s row %d: cash-on-hand %v, consumption %v after %v, %v", name, i, m, consumption[i], cash[i-1], consumption[i-1])
+			}
+			if first && name == "quayside" && (m != 0 || consumption[i] != 0) {
+				t.Fatalf("%s row %d: the rule begins at %v, %v, want 0, 0", name, i, m, consumption[i])
+			}
+		}
+	}
+}
+
 func TestCheckCommand(t *testing.T) {
 	status, stdout, stderr := cistern(t, "check", "quayside", "--households", "1000")
 	if status != 0 || !strings.Contains(stdout, "households: 1000") || !strings.Contains(stdout, "kink_threshold:") || !strings.Contains(stderr, "household-years") {

@@ -2,6 +2,7 @@ package main
 
 import (
 	"context"
+	"math"
 
 	"cistern/configs"
 	"cistern/output"
@@ -26,7 +27,9 @@ func (r *run) writeTables(context.Context) error {
 	return r.write("accuracy.csv", r.accuracy.table(r.sc.LastAge-r.sc.FirstAge+1).WriteCSV)
 }
 
-// policyTable is policy.parquet: the rules at their nodes.
+// policyTable is policy.parquet: the rules at their nodes. Where a borrowing limit
+// binds below the first node there is a row for the least cash-on-hand as well,
+// from which the rule rises one for one.
 func policyTable(sc *configs.Scenario, problems []configs.Problem, rules []*policy.Rule) *output.Table {
 	types := false
 	for _, g := range sc.Groups {
@@ -38,8 +41,7 @@ func policyTable(sc *configs.Scenario, problems []configs.Problem, rules []*poli
 		h := p.Household
 		for year := range rules[k].Curves {
 			for node, z := range h.Earnings.Chain.Nodes {
-				c := &rules[k].Curves[year][node]
-				for i, m := range c.Cash {
+				row := func(m, c, propensity float64) {
 					column("group").AppendString(sc.Groups[p.Group].Name)
 					if types {
 						column("discount_factor").AppendFloat(h.DiscountFactor)
@@ -47,9 +49,16 @@ func policyTable(sc *configs.Scenario, problems []configs.Problem, rules []*poli
 					column("age").AppendInt(int64(h.FirstAge + year))
 					column("persistent").AppendFloat(z)
 					column("cash_on_hand").AppendFloat(m)
-					column("consumption").AppendFloat(c.Consumption[i])
-					column("assets").AppendFloat(m - c.Consumption[i])
-					column("propensity").AppendFloat(c.Right[i])
+					column("consumption").AppendFloat(c)
+					column("assets").AppendFloat(m - c)
+					column("propensity").AppendFloat(propensity)
+				}
+				c := &rules[k].Curves[year][node]
+				if least := math.Max(h.Utility.Infimum(), 0); !math.IsInf(c.Bound, -1) && c.Cash[0] > c.Bound+least {
+					row(c.Bound+least, least, 1) // from here to the first node the limit binds
+				}
+				for i, m := range c.Cash {
+					row(m, c.Consumption[i], c.Right[i])
 				}
 			}
 		}
