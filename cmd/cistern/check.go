@@ -15,8 +15,9 @@ func newCheckCommand(g *globals) *cobra.Command {
 prints it with every default written out, to standard output, and what a run of
 it would take, to standard error. Every fault is listed with its place, the key
 and the allowed range; the exit status is then 2.`,
-		Example: "  cistern check my-port.yaml\n  cistern check quayside --set preferences.discount_factor=0.98",
-		Args:    exactlyOne("scenario"),
+		Example:           "  cistern check my-port.yaml\n  cistern check quayside --set preferences.discount_factor=0.98",
+		Args:              exactlyOne("scenario"),
+		ValidArgsFunction: completeScenario,
 		RunE: func(cmd *cobra.Command, args []string) error {
 			sc, err := g.scenario(args)
 			if err != nil {

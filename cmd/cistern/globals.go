@@ -119,3 +119,11 @@ func (g *globals) say(format string, args ...any) {
 		fmt.Fprintf(g.stderr, format+"\n", args...)
 	}
 }
+
+// completeScenario offers the built-in scenarios to shell completion, and files.
+func completeScenario(cmd *cobra.Command, args []string, toComplete string) ([]string, cobra.ShellCompDirective) {
+	if len(args) > 0 {
+		return nil, cobra.ShellCompDirectiveNoFileComp
+	}
+	return configs.Names(), cobra.ShellCompDirectiveDefault
+}

@@ -18,8 +18,9 @@ func newIncomeCommand(g *globals) *cobra.Command {
 		Long: `income prints, for every group, moments of the Markov chain that stands for the
 persistent part of income beside those of the process, the chain's conditional
 moments at every node, and a remark where the chain is a poor stand-in.`,
-		Example: "  cistern income\n  cistern income quayside --set income.persistent.method=tauchen --set income.persistent.autocorrelation=0.99",
-		Args:    atMostOne("scenario"),
+		Example:           "  cistern income\n  cistern income quayside --set income.persistent.method=tauchen --set income.persistent.autocorrelation=0.99",
+		Args:              atMostOne("scenario"),
+		ValidArgsFunction: completeScenario,
 		RunE: func(cmd *cobra.Command, args []string) error {
 			sc, err := g.scenario(args)
 			if err != nil {

@@ -110,6 +110,7 @@ func TestExitStatus(t *testing.T) {
 		{"simulate port.yaml --out taken", 1, "", "taken"},
 		{"scenarios nosuch", 2, "", "is not a built-in scenario"},
 		{"completion bash", 0, "bash completion", ""},
+		{"__complete simulate q", 0, "quayside-patience", ""},
 		{"schema", 0, `"additionalProperties": false`, ""},
 		{"scenarios", 0, "quayside-exponential", ""},
 	} {

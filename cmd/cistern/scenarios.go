@@ -11,10 +11,11 @@ import (
 
 func newScenariosCommand(g *globals) *cobra.Command {
 	return &cobra.Command{
-		Use:     "scenarios [NAME]",
-		Short:   "List the built-in scenarios, or print one to start from",
-		Example: "  cistern scenarios\n  cistern scenarios quayside > my-port.yaml",
-		Args:    atMostOne("name"),
+		Use:               "scenarios [NAME]",
+		Short:             "List the built-in scenarios, or print one to start from",
+		Example:           "  cistern scenarios\n  cistern scenarios quayside > my-port.yaml",
+		Args:              atMostOne("name"),
+		ValidArgsFunction: completeScenario,
 		RunE: func(cmd *cobra.Command, args []string) error {
 			if len(args) == 1 {
 				source, err := configs.Source(args[0])

@@ -23,7 +23,8 @@ or a built-in scenario; without it, quayside.
 Ctrl-C keeps what is finished; the same command goes on from there.`,
 		Example: "  cistern simulate\n  cistern simulate my-port.yaml --households 100000 --out runs/large\n" +
 			"  cistern simulate quayside --set saving.return=0.01 --out runs/low-return",
-		Args: atMostOne("scenario"),
+		Args:              atMostOne("scenario"),
+		ValidArgsFunction: completeScenario,
 		RunE: func(cmd *cobra.Command, args []string) error {
 			return simulate(cmd.Context(), g, args)
 		},

@@ -19,8 +19,9 @@ and prints consumption and the propensity to consume at chosen ages and amounts
 of cash-on-hand (multiples of mean income at that age, at the middle persistent
 node), with risk aversion and prudence there. --out writes the whole rule as
 policy.parquet and its Euler-equation errors as accuracy.csv.`,
-		Example: "  cistern solve\n  cistern solve my-port.yaml --out runs/rule\n  cistern solve quayside --format csv",
-		Args:    atMostOne("scenario"),
+		Example:           "  cistern solve\n  cistern solve my-port.yaml --out runs/rule\n  cistern solve quayside --format csv",
+		Args:              atMostOne("scenario"),
+		ValidArgsFunction: completeScenario,
 		RunE: func(cmd *cobra.Command, args []string) error {
 			return solve(cmd.Context(), g, args)
 		},
