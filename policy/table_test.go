@@ -59,6 +59,9 @@ func compareTable(t *testing.T, tb *Table, c *Curve, node int, random *rand.Rand
 		// The same operations in the same order: equal to the bit where products and
 		// sums are not fused, to a rounding of the largest term elsewhere.
 		cTerms, dTerms := terms(c, m)
+		if m < c.Cash[0] && !math.IsInf(c.Bound, -1) && only[i] != m-c.Bound {
+			t.Fatalf("node %d, cash %v at the limit: consumption %v, want exactly %v", node, m, only[i], m-c.Bound)
+		}
 		if math.Abs(only[i]-x) > 4e-16*cTerms || consumption[i] != only[i] || !(math.Abs(propensity[i]-d) <= 4e-16*dTerms) {
 			t.Fatalf("node %d, cash %v: consumption %v, %v, propensity %v; want %v, %v", node, m, only[i], consumption[i], propensity[i], x, d)
 		}

@@ -159,16 +159,19 @@ func TestGroupsAndTypesHaveTheirShares(t *testing.T) {
 	long(t)
 	const households = 10 * Unit
 	p := mixed(t, households)
-	r := simulate(t, p, Options{Columns: Identity})
+	r := simulate(t, p, Options{Columns: Identity | States})
 	var count [5]float64
+	var persistent [5]tally
 	for k, y := range r.t {
 		if y == 0 {
 			count[r.kind[k]]++
+			persistent[r.kind[k]].add(r.Persistent[k])
 		}
 	}
 	for i, n := range count {
 		of := p.Groups[p.Types[i].Group]
 		share(t, "type", i, n, of.Share*households, 1/float64(len(of.Types)), "derived: equally likely")
+		within4(t, "mean persistent part by type", i, persistent[i].mean, 0, persistent[i].standardError(), "derived: type and node are independent")
 	}
 	for _, first := range []int64{0, 17, 4096, 1e6, 1e9, 1e12} {
 		for _, n := range []int64{10, 100, 4096, 30000} {

@@ -171,8 +171,8 @@ func TestRowsObeyTheModel(t *testing.T) {
 				}
 			}
 			for id, years := range l.lived {
-				if years == 0 {
-					t.Fatalf("household %d has no row", id)
+				if years == 0 || !l.died[id] {
+					t.Fatalf("household %d has %d rows, died in the last: %v", id, years, l.died[id])
 				}
 			}
 		})

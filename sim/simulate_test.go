@@ -294,6 +294,43 @@ func TestAboveTopIsCounted(t *testing.T) {
 	}
 }
 
+// The highest cash is the highest even where all are in debt.
+func TestHighestCashBelowZero(t *testing.T) {
+	p := population(t, exponential(t, 10), 100)
+	p.Types[0].Start = Start{Constant: -1000}
+	r := simulate(t, p, Options{})
+	if want := slices.Max(r.CashOnHand); r.result.HighestCash != want || want >= 0 {
+		t.Errorf("highest cash %v, want %v, below 0", r.result.HighestCash, want)
+	}
+	if empty := simulate(t, p, Options{From: 0, To: 0}); empty.result.Households != 100 {
+		t.Errorf("To 0 simulates %d households, want all", empty.result.Households)
+	}
+}
+
+// A rule may miss the limit by rounding; whatever it says, assets stay within it.
+func TestAssetsStayWithinTheLimit(t *testing.T) {
+	p := population(t, risky(t), 100)
+	rule := *p.Types[0].Rule
+	rule.Curves = slices.Clone(rule.Curves)
+	greedy := slices.Clone(rule.Curves[5])
+	for j := range greedy { // consumes all and a bit above the limit
+		n := len(greedy[j].Cash)
+		greedy[j].Consumption = slices.Clone(greedy[j].Cash)
+		for i := range greedy[j].Consumption {
+			greedy[j].Consumption[i] *= 1 + 1e-9
+		}
+		greedy[j].Left, greedy[j].Right = slices.Repeat([]float64{1 + 1e-9}, n), slices.Repeat([]float64{1 + 1e-9}, n)
+	}
+	rule.Curves[5] = greedy
+	p.Types[0].Rule = &rule
+	r := simulate(t, p, Options{})
+	for k, y := range r.t {
+		if y == 5 && (r.Assets[k] != 0 || r.Consumption[k] != r.CashOnHand[k]) {
+			t.Fatalf("cash-on-hand %v: consumes %v, keeps %v, want all and 0", r.CashOnHand[k], r.Consumption[k], r.Assets[k])
+		}
+	}
+}
+
 func TestInvalidRuns(t *testing.T) {
 	sound := population(t, risky(t), 2*Unit)
 	for _, tt := range []struct {
