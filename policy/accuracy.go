@@ -126,7 +126,7 @@ func (j *Judge) look(t int) {
 	j.year = t
 	j.ahead.reset(len(j.rule.Curves[t]))
 	for n := range j.rule.Curves[t] {
-		j.ahead.set(n, &j.rule.Curves[t][n], 0, j.shift, true)
+		j.ahead.set(n, &j.rule.Curves[t][n], 0, j.shift)
 	}
 }
 

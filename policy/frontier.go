@@ -4,23 +4,31 @@ import "math"
 
 // segment is one piece of a rule ready for evaluation: for cash-on-hand below
 // high, consumption less subsistence is the cubic c0 + c1·u + c2·u² + c3·u³ in
-// u = m − origin. The segments of a linear rule have their origin at 0.
+// u = m − origin.
 type segment struct{ high, origin, c0, c1, c2, c3 float64 }
+
+// line is a segment of a linear rule with power utility: below high, consumption
+// less subsistence is level + slope·m. Half as long as a segment, twice as many
+// stay in the first-level cache.
+type line struct{ high, level, slope float64 }
 
 // frontier is next year's rule as the backward step reads it: for every
 // persistent node the segments in order, the constrained one first and the line
-// above the grid last, and the kinks.
+// above the grid last, and the kinks. Linear rules with power utility have lines
+// in place of segments.
 type frontier struct {
 	segments [][]segment
 	kinks    [][]kink
+	lines    [][]line
 }
 
 func (f *frontier) reset(nodes int) {
 	for len(f.segments) < nodes {
 		f.segments = append(f.segments, nil)
 		f.kinks = append(f.kinks, nil)
+		f.lines = append(f.lines, nil)
 	}
-	f.segments, f.kinks = f.segments[:nodes], f.kinks[:nodes]
+	f.segments, f.kinks, f.lines = f.segments[:nodes], f.kinks[:nodes], f.lines[:nodes]
 }
 
 // set replaces the rule of node j by curve c. A point within tolerance below a
@@ -28,7 +36,7 @@ func (f *frontier) reset(nodes int) {
 // slope above it whatever the rounding. shift is subtracted from consumption. It
 // reports whether cash-on-hand ascends and consumption stays at or above shift:
 // false also where a number is not finite.
-func (f *frontier) set(j int, c *Curve, tolerance, shift float64, cubic bool) (sound bool) {
+func (f *frontier) set(j int, c *Curve, tolerance, shift float64) (sound bool) {
 	n := len(c.Cash)
 	if cap(f.segments[j]) < n+1 {
 		f.segments[j] = make([]segment, n+1, n+n/2+1)
@@ -42,26 +50,37 @@ func (f *frontier) set(j int, c *Curve, tolerance, shift float64, cubic bool) (s
 		sg[0] = segment{c.Cash[0] - tolerance, c.Bound, -shift, 1, 0, 0}
 	}
 	sg[n] = segment{math.Inf(1), c.Cash[n-1], c.Consumption[n-1] - shift, c.Right[n-1], 0, 0}
-	if cubic {
-		f.noteKinks(j, c)
-		return setCubic(sg[1:n], c, tolerance, shift)
-	}
-	for _, s := range []*segment{&sg[0], &sg[n]} {
-		s.c0, s.origin = s.c0-s.c1*s.origin, 0
-	}
-	return setLinear(sg[1:n], c, tolerance, shift)
+	f.noteKinks(j, c)
+	return setCubic(sg[1:n], c, tolerance, shift)
 }
 
-func setLinear(sg []segment, c *Curve, tolerance, shift float64) (sound bool) {
-	cash, consumption, right := c.Cash[:len(sg)+1], c.Consumption[:len(sg)+1], c.Right[:len(sg)]
+// setLines replaces the rule of node j by the linear rule c, whose slopes it sets
+// in k on the way: k[0] below the first node, k[n] above the last. It reports what
+// set does.
+func (f *frontier) setLines(j int, c *Curve, k []float64, tolerance, shift float64) (sound bool) {
+	n := len(c.Cash)
+	if cap(f.lines[j]) < n+1 {
+		f.lines[j] = make([]line, n+1, n+n/2+1)
+	}
+	ln := f.lines[j][:n+1]
+	f.lines[j] = ln
+	cash, consumption := c.Cash, c.Consumption[:n]
+	k = k[:n+1]
+	tolerance *= 4
 	sound = true
 	m, x := cash[0], consumption[0]-shift
-	for i := range sg {
-		next := cash[i+1]
-		sg[i] = segment{high: next - tolerance, c0: x - right[i]*m, c1: right[i]}
+	k[0] = 1
+	ln[0] = line{m - tolerance, -shift - c.Bound, 1}
+	for i := 1; i < len(cash); i++ {
+		next, y := cash[i], consumption[i]-shift
+		slope := (y - x) / (next - m)
+		k[i] = slope
+		ln[i] = line{next - tolerance, x - slope*m, slope}
 		sound = sound && next > m && x >= 0
-		m, x = next, consumption[i+1]-shift
+		m, x = next, y
 	}
+	k[n] = k[n-1]
+	ln[n] = line{math.Inf(1), x - k[n]*m, k[n]}
 	return sound && x >= 0 && x <= math.MaxFloat64
 }
 

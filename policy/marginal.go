@@ -57,8 +57,8 @@ func (s *Solver) expect(j int, values, weights, value, slope []float64) {
 		w := weights[k]
 		switch {
 		case w == 0:
-		case s.kind == powerKind && s.o.Interpolation == Linear:
-			sweepPowerLinear(sg, y, w, s.forward, s.gross, value)
+		case s.lined():
+			sweepLines(s.next.lines[j], y, w, s.forward, s.gross, value)
 		case s.kind == powerKind:
 			sweepPower(sg, y, w, s.forward, s.gross, value, slope)
 		case s.kind == exponentialKind:

@@ -62,9 +62,14 @@ func (s *Solver) leftSlopes(c *Curve, left, v, d []float64, from int, row []floa
 }
 
 // secants completes a linear rule.
-func (s *Solver) secants(c *Curve) {
+func (s *Solver) secants(j int, c *Curve) {
 	n := len(c.Cash)
 	k := s.arena.take(n + 1) // slope below each node, and above the last
+	c.Left, c.Right = k[:n], k[1:]
+	if s.lined() {
+		s.sound = s.next.setLines(j, c, k, s.tolerance(), s.shift) && s.sound
+		return
+	}
 	k[0] = 1
 	for i := 1; i < n; i++ {
 		k[i] = (c.Consumption[i] - c.Consumption[i-1]) / (c.Cash[i] - c.Cash[i-1])
@@ -73,5 +78,4 @@ func (s *Solver) secants(c *Curve) {
 	if math.IsInf(c.Bound, -1) {
 		k[0] = k[1]
 	}
-	c.Left, c.Right = k[:n], k[1:]
 }

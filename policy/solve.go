@@ -48,6 +48,7 @@ type Solver struct {
 	assets []float64  // this year's asset grid
 	gross  []float64  // R·assets
 	plain  bool       // assets hold the fixed grid alone
+	sound  bool       // the year's rules looked possible as they were laid out
 	work   scratch
 	euler  euler // the year's constants
 }
@@ -136,10 +137,14 @@ func (s *Solver) begin(h Household, o Options) error {
 // year solves year t from next year's records and leaves its own in their place.
 func (s *Solver) year(t int) error {
 	all := s.rule.Curves[t]
+	s.sound = true
 	switch {
 	case t == s.h.Years()-1 && s.h.Bequest.Weight == 0:
 		for j := range all {
 			all[j] = s.lastYear()
+			if s.lined() {
+				s.next.setLines(j, &all[j], make([]float64, 3), s.tolerance(), s.shift)
+			}
 		}
 	case t == s.h.Years()-1 || !s.h.Moves(t):
 		for j := range all { // each node stays as it is: problems of their own
@@ -149,14 +154,23 @@ func (s *Solver) year(t int) error {
 		s.step(t, 0, len(all))
 	}
 	for j := range all {
-		if !s.next.set(j, &all[j], s.tolerance(), s.shift, s.o.Interpolation == Cubic) {
-			if err := all[j].check(s.h.Utility.Infimum(), s.h.FirstAge+t, j); err != nil {
-				return err
-			}
+		if !s.lined() {
+			s.sound = s.next.set(j, &all[j], s.tolerance(), s.shift) && s.sound
+		}
+	}
+	for j := range all {
+		if s.sound {
+			break
+		}
+		if err := all[j].check(s.h.Utility.Infimum(), s.h.FirstAge+t, j); err != nil {
+			return err
 		}
 	}
 	return nil
 }
+
+// lined reports whether next year's rule is kept as lines.
+func (s *Solver) lined() bool { return s.kind == powerKind && s.o.Interpolation == Linear }
 
 // lastYear is the rule of a household without bequest motive at its last age: it
 // keeps nothing, so that the limit of 0 binds everywhere on the grid.
@@ -282,7 +296,7 @@ func (s *Solver) invert(t, j, from, to int) {
 		c.Cash[i] = x + s.assets[i]
 	}
 	if s.o.Interpolation == Linear {
-		s.secants(c)
+		s.secants(j, c)
 		return
 	}
 	s.slopes(c, v, d, from, row)

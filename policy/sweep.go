@@ -36,20 +36,19 @@ func sweepPower(sg []segment, y, w float64, p *powerTable, gross, value, slope [
 	}
 }
 
-// sweepPowerLinear is sweepPower for linear rules, which need no slopes. Their
-// segments have their origin at 0.
-func sweepPowerLinear(sg []segment, y, w float64, p *powerTable, gross, value []float64) {
+// sweepLines is sweepPower for linear rules, which need no slopes.
+func sweepLines(ln []line, y, w float64, p *powerTable, gross, value []float64) {
 	value = value[:len(gross)]
 	b1, b2, b3, b4, b5 := p.series[1], p.series[2], p.series[3], p.series[4], p.series[5]
 	j := 0
-	q := &sg[0]
+	q := &ln[0]
 	for i, a := range gross {
 		x := a + y
 		for x >= q.high {
 			j++
-			q = &sg[j]
+			q = &ln[j]
 		}
-		bits := math.Float64bits(q.c0 + q.c1*x)
+		bits := math.Float64bits(q.level + q.slope*x)
 		cell := &p.cell[bits>>44&255]
 		r := math.Float64frombits(bits&(1<<52-1)|1023<<52)*cell[0] - 1
 		value[i] += w * p.scale[bits>>52] * cell[1] * (1 + r*(b1+r*(b2+r*(b3+r*(b4+r*b5)))))
