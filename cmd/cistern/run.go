@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"io"
+	"runtime"
 	"slices"
 	"time"
 
@@ -153,8 +154,10 @@ func (r *run) simulate(ctx context.Context) error {
 				if err := panel.Close(); err != nil {
 					return err
 				}
+				panel = nil
 			}
 		}
+		runtime.GC() // a pass leaves its blocks and buffers behind: the next must not come on top of them
 		more, err := r.summary.EndPass()
 		if err != nil {
 			return err
@@ -182,12 +185,8 @@ func joinAbort(err error, panel *output.Panel) error {
 
 // work handles one block of a pass.
 func (r *run) work(pass int, panel *output.Panel, from int64) sim.Work {
-	first := r.sc.FirstAge
 	return func(worker int, b *sim.Block) (func() error, error) {
-		spans := make([]output.Span, len(b.Runs))
-		for i, s := range b.Runs {
-			spans[i] = output.Span{Age: int32(first + s.T), Group: s.Group, From: s.From, To: s.To}
-		}
+		spans := r.spans(b)
 		add, err := r.summary.Add(worker, &output.SummaryRows{First: b.First, N: b.N, Spans: spans, Household: b.Household,
 			Income: b.Income, Consumption: b.Consumption, Assets: b.Assets, Propensity: b.Propensity, AtLimit: b.AtLimit, TwinAssets: b.TwinAssets})
 		if err != nil || pass > 0 {
@@ -213,6 +212,15 @@ func (r *run) work(pass int, panel *output.Panel, from int64) sim.Work {
 			return nil
 		}, nil
 	}
+}
+
+// spans says which age and group a block's rows have.
+func (r *run) spans(b *sim.Block) []output.Span {
+	spans := make([]output.Span, len(b.Runs))
+	for i, s := range b.Runs {
+		spans[i] = output.Span{Age: int32(r.sc.FirstAge + s.T), Group: s.Group, From: s.From, To: s.To}
+	}
+	return spans
 }
 
 func panelRows(b *sim.Block, spans []output.Span) output.Rows {
