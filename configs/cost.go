@@ -11,14 +11,14 @@ type Cost struct {
 	DiskBytes      float64
 }
 
-// Rates of a run, measured on one core of a 2.8 GHz server processor; a laptop
-// is within a factor of two.
+// Rates of a run, measured on a 2.8 GHz server processor with the built-in
+// scenarios; another machine is within a factor of two or three.
 const (
-	secondsPerUpdate   = 12e-9
-	secondsPerRow      = 70e-9  // simulation and summary
-	secondsPerRowFile  = 230e-9 // encoding and compressing a row
-	bytesPerRowDouble  = 66
-	bytesPerRowSingle  = 34
+	secondsPerUpdate   = 15e-9
+	secondsPerRow      = 250e-9 // simulation, twins and all passes of the summary
+	secondsPerRowFile  = 350e-9 // encoding, compressing and writing a row
+	bytesPerRowDouble  = 40
+	bytesPerRowSingle  = 20
 	bytesPerRule       = 112 // a node of a rule and of its table
 	bytesPerWorker     = 70 << 20
 	bytesFixed         = 320 << 20
