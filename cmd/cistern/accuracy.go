@@ -121,11 +121,25 @@ func (r *run) judge(ctx context.Context) error {
 	if err := r.accuracy.judge(ctx, r.rules, sets, r.g.workers); err != nil {
 		return err
 	}
+	if n := beyondBliss(r.rules, simulated); n > 0 {
+		r.warnings = append(r.warnings, fmt.Sprintf("in %d of %d judged states consumption lies beyond the bliss point, where more of it does harm; raise preferences.utility.bliss_point", n, len(simulated)))
+	}
 	if r.result.AboveTop > 0 {
 		r.warnings = append(r.warnings, fmt.Sprintf("%d household-years of %d lie above the top of the asset grid, where the rule is extrapolated; raise solver.highest_assets",
 			r.result.AboveTop, r.result.HouseholdYears))
 	}
 	return nil
+}
+
+// beyondBliss counts the states in which more consumption would do harm.
+func beyondBliss(rules []*policy.Rule, states []state) int {
+	n := 0
+	for _, s := range states {
+		if rule := rules[s.kind]; rule.Household.Utility.Marginal(rule.Consumption(s.t, s.Node, s.Cash)) < 0 {
+			n++
+		}
+	}
+	return n
 }
 
 // judge judges every set of states with both quadratures (points between nodes

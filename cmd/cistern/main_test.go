@@ -367,6 +367,25 @@ func TestSignal(t *testing.T) {
 	}
 }
 
+// What a user should know before trusting a run is said in its messages and kept
+// in run.json.
+func TestWarnings(t *testing.T) {
+	inFolder(t)
+	for name, tt := range map[string]struct{ set, want string }{
+		"bliss": {"preferences.utility={family: quadratic, bliss_point: 20000}", "beyond the bliss point"},
+		"grid":  {"solver.highest_assets=30000", "above the top of the asset grid"},
+	} {
+		status, _, stderr := cistern(t, "simulate", "port.yaml", "--households", "4000", "--out", name, "--set", tt.set)
+		if status != 0 || !strings.Contains(stderr, tt.want) {
+			t.Errorf("%s: status %d: %s", name, status, stderr)
+			continue
+		}
+		if run, err := output.ReadRun(name); err != nil || len(run.Warnings) != 1 || !strings.Contains(run.Warnings[0], tt.want) {
+			t.Errorf("%s: run.json has %v, %v", name, run.Warnings, err)
+		}
+	}
+}
+
 func TestIncomeCommand(t *testing.T) {
 	status, stdout, stderr := cistern(t, "income", "quayside", "--set", "income.persistent.method=tauchen", "--set", "income.persistent.autocorrelation=0.99")
 	if status != 0 || !strings.Contains(stdout, "autocorrelation") || !strings.Contains(stderr, "% too high") {
