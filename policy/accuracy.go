@@ -41,7 +41,7 @@ const (
 // if fine, with a far finer quadrature of the transitory shock. It is not safe
 // for concurrent use; several judges of one rule are.
 func NewJudge(r *Rule, fine bool) *Judge {
-	j := &Judge{rule: r, marginal: marginalOf(r.Household.Utility, marginal{}), fine: fine, year: -1}
+	j := &Judge{rule: r, marginal: marginalOf(r.Household, marginal{}), fine: fine, year: -1}
 	e := r.Household.Earnings
 	if !fine || e.Transitory.SD == 0 {
 		j.fine = false
@@ -112,7 +112,10 @@ func (j *Judge) implied(t, node int, a, c float64) float64 {
 		v += (1 - h.Survival[t]) * b.Weight * j.relative(x+b.Shift-j.shift, c)
 	}
 	v *= h.DiscountFactor * (1 + h.Return)
-	if j.kind == exponentialKind {
+	switch j.kind {
+	case powerKind:
+		return j.inward.at(v) + j.shift
+	case exponentialKind:
 		return c - math.Log(v)/j.alpha
 	}
 	return h.Utility.Inverse(v)

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 
 	"cistern/income"
 )
@@ -102,6 +103,19 @@ func (h Household) MeanIncome(t int) float64 {
 	return mean
 }
 
+// peakIncome returns the highest mean income of any year, in money; 1 where nobody
+// has any.
+func (h Household) peakIncome() float64 {
+	peak := 0.0
+	for t := range h.Years() {
+		peak = math.Max(peak, math.Abs(h.MeanIncome(t)))
+	}
+	if peak == 0 {
+		return 1
+	}
+	return peak
+}
+
 // Validate reports every fault at once, each as a *FieldError.
 func (h Household) Validate() error {
 	var errs []error
@@ -144,8 +158,28 @@ func (h Household) Validate() error {
 		bad("Limit", "none", "0, an amount or natural: with "+h.Utility.Family()+" utility debt without limit has no solution")
 	}
 	if len(errs) == 0 {
-		_, err := h.bounds()
-		return err
+		bounds, err := h.bounds()
+		if err != nil {
+			return err
+		}
+		return h.validateEstate(bounds)
 	}
 	return errors.Join(errs...)
+}
+
+// validateEstate sees to it that no estate that the limit allows is one that the
+// bequest motive cannot bear.
+func (h Household) validateEstate(bounds [][]float64) error {
+	floor := h.Utility.Infimum()
+	if h.Bequest.Weight == 0 || math.IsInf(floor, -1) {
+		return nil
+	}
+	for t, s := range h.Survival {
+		worst := (1 + h.Return) * slices.Min(bounds[t])
+		if s < 1 && worst+h.Bequest.Shift < floor {
+			return &FieldError{"Bequest.Shift", h.Bequest.Shift, fmt.Sprintf("at least %.6g: who dies at age %d may owe %.6g, and utility of the estate must bear it",
+				floor-worst, h.FirstAge+t, -worst)}
+		}
+	}
+	return nil
 }

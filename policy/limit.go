@@ -10,14 +10,15 @@ import (
 // hold at the end of year t, [t][node], in money; −Inf under LimitNone (but 0 in
 // the last year).
 //
-// What can be repaid at the end of year t is the present value of the lowest
-// income still to come net of the consumption that utility cannot go below,
+// What can be owed at the end of year t is what next year's lowest income and the
+// debt then allowed can bear, net of the consumption that utility cannot go below,
 //
-//	N_t = min_{z′} ( N_{t+1}(z′) + inf y_{t+1}(z′) − c̲ ) / R,   N_T = 0
+//	N_t = min_{z′} ( b_{t+1}(z′) + inf y_{t+1}(z′) − c̲ ) / R,   b_T = 0,
 //
-// (Aiyagari 1994, Quarterly Journal of Economics 109, eq. 3, for an infinite
-// horizon), over all nodes while the node can change, over the household's own
-// from then on. Under LimitNatural inf y is the infimum of the continuous law, so
+// over all nodes while the node can change, over the household's own from then on.
+// Under LimitNatural b = N, the present value of all lowest income (Aiyagari 1994,
+// Quarterly Journal of Economics 109, eq. 3, for an infinite horizon); under
+// LimitAmount b is the smaller of N and the amount. Under LimitNatural inf y is the infimum of the continuous law, so
 // that debt is repaid for certain. Under LimitAmount it is the lowest income the
 // solver reckons with.
 func (h Household) bounds() ([][]float64, error) {
@@ -39,11 +40,11 @@ func (h Household) bounds() ([][]float64, error) {
 	if free {
 		floor = 0
 	}
-	repay := make([]float64, nz)
+	repay := make([]float64, nz) // what can be owed at the end of the year, [node]
 	for t := T - 2; t >= 0; t-- {
 		for j := range repay {
 			low := h.lowestIncome(t+1, j)
-			repay[j] = (repay[j] + low - floor) / (1 + h.Return)
+			repay[j] = (low - b[t+1][j] - floor) / (1 + h.Return)
 			if repay[j] < -1e-9*math.Max(math.Abs(low), floor) {
 				return nil, h.infeasible(t+1, low, floor)
 			}

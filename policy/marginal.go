@@ -8,6 +8,7 @@ type marginal struct {
 	kind    marginalKind
 	u       Utility
 	gamma   float64     // γ, power kind
+	unit    int         // powers are of consumption in units of 2^unit of money
 	shift   float64     // subsistence c̲, power kind
 	forward *powerTable // x^−γ
 	inward  *powerTable // x^(−1/γ)
@@ -24,14 +25,17 @@ const (
 	anyKind
 )
 
-// marginalOf returns the marginal utility of u, with the tables of last where
-// they are the same.
-func marginalOf(u Utility, last marginal) marginal {
+// marginalOf returns the marginal utility of a household, with the tables of last
+// where they are the same. Powers are taken in a unit of money near its income: a
+// factor common to both sides of every Euler equation.
+func marginalOf(h Household, last marginal) marginal {
+	u := h.Utility
+	unit := int(math.Round(math.Log2(h.peakIncome())))
 	switch f := u.(type) {
 	case CRRA:
-		return last.power(u, f.gamma, 0)
+		return last.power(u, f.gamma, 0, unit)
 	case StoneGeary:
-		return last.power(u, f.gamma, f.subsistence)
+		return last.power(u, f.gamma, f.subsistence, unit)
 	case CARA:
 		return marginal{kind: exponentialKind, u: u, alpha: f.alpha}
 	case Quadratic:
@@ -40,10 +44,10 @@ func marginalOf(u Utility, last marginal) marginal {
 	return marginal{kind: anyKind, u: u}
 }
 
-func (last marginal) power(u Utility, gamma, shift float64) marginal {
-	m := marginal{kind: powerKind, u: u, gamma: gamma, shift: shift, forward: last.forward, inward: last.inward}
-	if m.forward == nil || last.gamma != gamma {
-		m.forward, m.inward = newPowerTable(-gamma), newPowerTable(-1/gamma)
+func (last marginal) power(u Utility, gamma, shift float64, unit int) marginal {
+	m := marginal{kind: powerKind, u: u, gamma: gamma, shift: shift, unit: unit, forward: last.forward, inward: last.inward}
+	if m.forward == nil || last.gamma != gamma || last.unit != unit {
+		m.forward, m.inward = newScaledPowerTable(-gamma, unit, 0), newScaledPowerTable(-1/gamma, 0, unit)
 	}
 	return m
 }

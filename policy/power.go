@@ -30,7 +30,12 @@ const (
 	exponentOne  = 1023 << 52 // exponent bits of numbers in [1, 2)
 )
 
-func newPowerTable(g float64) *powerTable {
+func newPowerTable(g float64) *powerTable { return newScaledPowerTable(g, 0, 0) }
+
+// newScaledPowerTable computes 2^out·(x/2^in)^g instead: powers of amounts of money
+// in a unit near them, which strong curvature would otherwise drive out of the
+// range of numbers.
+func newScaledPowerTable(g float64, in, out int) *powerTable {
 	p := new(powerTable)
 	base := p.expand(g)
 	for k := range p.cell {
@@ -38,7 +43,7 @@ func newPowerTable(g float64) *powerTable {
 		p.cell[k] = [2]float64{inverse, base * math.Pow(1/inverse, g)}
 	}
 	for i := range p.scale {
-		p.scale[i] = powerScale(g, i)
+		p.scale[i] = math.Ldexp(powerScale(g, i, in), out)
 	}
 	return p
 }
@@ -63,10 +68,10 @@ func (p *powerTable) expand(g float64) float64 {
 	return base
 }
 
-// powerScale returns 2^(e·g) for the sign and exponent bits i of a number, minding
-// that e·g rounds.
-func powerScale(g float64, i int) float64 {
-	e := float64(i - 1023)
+// powerScale returns 2^((e−in)·g) for the sign and exponent bits i of a number,
+// minding that the product rounds.
+func powerScale(g float64, i, in int) float64 {
+	e := float64(i - 1023 - in)
 	switch {
 	case i > 2048 && g > 0:
 		return math.NaN() // negative

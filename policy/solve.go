@@ -102,20 +102,13 @@ func (s *Solver) begin(h Household, o Options) error {
 	if err != nil {
 		return err
 	}
-	peak := 0.0
-	for t := range h.Years() {
-		peak = math.Max(peak, math.Abs(h.MeanIncome(t)))
-	}
-	if peak == 0 {
-		peak = 1
-	}
-	o = o.resolve(peak)
+	o = o.resolve(h.peakIncome())
 	limited := h.Limit.Kind != LimitNone
 	top := o.HighestAssets
 	if !limited {
 		top -= o.LowestAssets
 	}
-	s.problem = problem{h: h, o: o, bounds: bounds, marginal: marginalOf(h.Utility, s.marginal), returns: 1 + h.Return,
+	s.problem = problem{h: h, o: o, bounds: bounds, marginal: marginalOf(h, s.marginal), returns: 1 + h.Return,
 		offsets: assetOffsets(o.AssetPoints, top, o.AssetScale, limited)}
 	for i := 0; i < len(s.offsets)-1; i += max(1, len(s.offsets)/sparseNodes) {
 		s.sparse = append(s.sparse, s.offsets[i])
