@@ -45,7 +45,7 @@ func (h Household) bounds() ([][]float64, error) {
 		for j := range repay {
 			low := h.lowestIncome(t+1, j)
 			repay[j] = (low - b[t+1][j] - floor) / (1 + h.Return)
-			if repay[j] < -1e-9*math.Max(math.Abs(low), floor) {
+			if math.IsInf(low, -1) || repay[j] < -1e-9*math.Max(math.Abs(low), floor) {
 				return nil, h.infeasible(t+1, low, floor)
 			}
 			repay[j] = math.Max(repay[j], 0)
