@@ -302,7 +302,7 @@ func TestExistingFolder(t *testing.T) {
 // A run that is stopped keeps its whole parts and goes on to the same end.
 func TestInterruptAndResume(t *testing.T) {
 	inFolder(t)
-	if status, _, stderr := cistern(t, "simulate", "port.yaml", "--out", "whole", "--quiet"); status != 0 {
+	if status, _, stderr := cistern(t, "simulate", "port.yaml", "--households", "60000", "--out", "whole", "--quiet"); status != 0 {
 		t.Fatal(stderr)
 	}
 	ctx, cancel := context.WithCancel(context.Background())
@@ -315,7 +315,7 @@ func TestInterruptAndResume(t *testing.T) {
 			time.Sleep(time.Millisecond)
 		}
 	}()
-	status, stdout, stderr := cisternIn(t, ctx, "simulate", "port.yaml", "--out", "stopped", "--workers", "1")
+	status, stdout, stderr := cisternIn(t, ctx, "simulate", "port.yaml", "--households", "60000", "--out", "stopped", "--workers", "1")
 	if status == 0 {
 		t.Skip("the run was over before it could be stopped")
 	}
@@ -325,7 +325,7 @@ func TestInterruptAndResume(t *testing.T) {
 	if _, err := os.Stat("stopped/run.json"); err == nil {
 		t.Error("a stopped run looks finished")
 	}
-	if status, _, stderr = cistern(t, "simulate", "port.yaml", "--out", "stopped"); status != 0 || !strings.Contains(stderr, "going on with the unfinished run") {
+	if status, _, stderr = cistern(t, "simulate", "port.yaml", "--households", "60000", "--out", "stopped"); status != 0 || !strings.Contains(stderr, "going on with the unfinished run") {
 		t.Fatalf("status %d: %s", status, stderr)
 	}
 	sameFiles(t, "whole", "stopped", "run.json")
