@@ -5,7 +5,7 @@ import (
 	"math"
 	"sync"
 
-	"gonum.org/v1/gonum/stat/distuv"
+	"gonum.org/v1/gonum/mathext"
 )
 
 // Estimate is a figure with its Monte Carlo error. Lower and Upper bound a
@@ -88,9 +88,21 @@ func StudentQuantile(p float64, degrees int) float64 {
 	if t, known := studentQuantiles.Load(question{p, degrees}); known {
 		return t.(float64)
 	}
-	t := distuv.StudentsT{Mu: 0, Sigma: 1, Nu: float64(degrees)}.Quantile(p)
+	t := studentQuantile(float64(degrees), p)
 	studentQuantiles.Store(question{p, degrees}, t)
 	return t
 }
 
 var studentQuantiles sync.Map
+
+// studentQuantile inverts Student's distribution function with nu degrees of
+// freedom through the incomplete beta function: P(|T| > t) = I_x(ν/2, ½) with
+// x = ν/(ν + t²) (Abramowitz & Stegun 1964, 26.7.1). The distributions package that
+// has it would bring all of linear algebra into the program.
+func studentQuantile(nu, p float64) float64 {
+	if p > 0.5 {
+		return -studentQuantile(nu, 1-p)
+	}
+	x := mathext.InvRegIncBeta(nu/2, 0.5, 2*p)
+	return -math.Sqrt(nu * (1 - x) / x)
+}
