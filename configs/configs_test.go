@@ -2,6 +2,7 @@ package configs
 
 import (
 	"errors"
+	"fmt"
 	"math"
 	"os"
 	"path/filepath"
@@ -296,6 +297,33 @@ func TestTables(t *testing.T) {
 				t.Errorf("got %v, want %q", err, tt.want)
 			}
 		})
+	}
+}
+
+// Tables of a million rows that are all wrong, or all of another kind, are answered
+// at once and with a bounded list.
+func TestLargeWrongTables(t *testing.T) {
+	var wrong, distinct strings.Builder
+	wrong.WriteString("age,sex,year,q\n")
+	distinct.WriteString("age,sex,year,q\n")
+	for i := range 300_000 {
+		fmt.Fprintf(&wrong, "30,female,2010,%d\n", i+2)
+		fmt.Fprintf(&distinct, "30,s%d,2010,0.5\n", i)
+	}
+	for name, csv := range map[string]string{"wrong": wrong.String(), "distinct": distinct.String()} {
+		dir := t.TempDir()
+		scenario := filepath.Join(dir, "s.yaml")
+		text := strings.Replace(small, "survival: certain", "survival: {table: q.csv, sex: female, year: 2010}", 1)
+		if err := errors.Join(os.WriteFile(filepath.Join(dir, "q.csv"), []byte(csv), 0o666), os.WriteFile(scenario, []byte(text), 0o666)); err != nil {
+			t.Fatal(err)
+		}
+		_, err := Load(scenario, nil)
+		if !IsFault(err) || strings.Count(err.Error(), "\n") > maxFaults {
+			t.Errorf("%s: got %.300v", name, err)
+		}
+		if name == "wrong" && !strings.Contains(err.Error(), "only the first 100 faults are listed") {
+			t.Errorf("got %.300v", err)
+		}
 	}
 }
 

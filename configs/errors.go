@@ -31,10 +31,21 @@ func (e *PosError) Error() string {
 	return s + ": " + e.Message
 }
 
-// faults collects position errors, each once.
-type faults struct{ list []*PosError }
+// maxFaults is how many faults are reported: whoever has more has one to begin
+// with.
+const maxFaults = 100
+
+// faults collects position errors, each once and at most maxFaults.
+type faults struct {
+	list []*PosError
+	more bool // there were others
+}
 
 func (f *faults) add(e *PosError) {
+	if len(f.list) >= maxFaults {
+		f.more = true
+		return
+	}
 	for _, x := range f.list {
 		if *x == *e {
 			return
@@ -51,6 +62,9 @@ func (f *faults) err() error {
 	var errs []error
 	for _, e := range f.list {
 		errs = append(errs, e)
+	}
+	if f.more {
+		errs = append(errs, fmt.Errorf("and more: only the first %d faults are listed", maxFaults))
 	}
 	return errors.Join(errs...)
 }

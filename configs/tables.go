@@ -125,6 +125,9 @@ func header(faults *faults, shown string, line int, record, columns []string) []
 	return at
 }
 
+// maxNamed bounds how many of a table's kinds of rows an error lists.
+const maxNamed = 20
+
 // lifeTable reads the rows of one sex and year.
 func (f *files) lifeTable(faults *faults, ref tableRef, sex string, year int) *income.LifeTable {
 	rows, lines, shown := f.table(faults, ref, "age", "sex", "year", "q")
@@ -132,8 +135,7 @@ func (f *files) lifeTable(faults *faults, ref tableRef, sex string, year int) *i
 	low, high := 1<<30, -1
 	var seen []string
 	for i, r := range rows {
-		key := r[1] + " " + r[2]
-		if !slices.Contains(seen, key) {
+		if key := r[1] + " " + r[2]; len(seen) <= maxNamed && !slices.Contains(seen, key) {
 			seen = append(seen, key)
 		}
 		if r[1] != sex || r[2] != strconv.Itoa(year) {
@@ -155,8 +157,8 @@ func (f *files) lifeTable(faults *faults, ref tableRef, sex string, year int) *i
 	}
 	if len(q) == 0 {
 		if len(rows) > 0 {
-			if len(seen) > 20 {
-				seen = append(seen[:20], "…")
+			if len(seen) > maxNamed {
+				seen = append(seen[:maxNamed], "…")
 			}
 			faults.add(&PosError{File: shown, Message: fmt.Sprintf("has no rows for sex %s and year %d, only for %s", sex, year, strings.Join(seen, ", "))})
 		}
