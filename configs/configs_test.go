@@ -276,6 +276,9 @@ func TestTables(t *testing.T) {
 		{"other year", strings.ReplaceAll(good, "2010", "2011"), "has no rows for sex female and year 2010, only for female 2011, male 2011"},
 		{"ragged", good + "1,2\n", "q.csv:7: wrong number of fields"},
 		{"empty", "", "q.csv:1: is empty"},
+		{"header alone", "age,sex,year,q\n", "q.csv:1: has a header but no rows"},
+		{"column twice", "age,sex,year,q,q\n30,female,2010,0.1,0.2\n", "q.csv:1: has column q twice"},
+		{"hexadecimal", strings.Replace(good, "0.2", "0x1p-2", 1), `q is "0x1p-2"`},
 		{"nan", strings.Replace(good, "0.2", "NaN", 1), `q is "NaN"`},
 	} {
 		t.Run(tt.name, func(t *testing.T) {
@@ -297,6 +300,34 @@ func TestTables(t *testing.T) {
 				t.Errorf("got %v, want %q", err, tt.want)
 			}
 		})
+	}
+}
+
+func TestProfileTables(t *testing.T) {
+	for _, tt := range []struct{ csv, want string }{
+		{"age,earnings\n30,100\n31,110\n", ""},
+		{"age,earnings\n", "y.csv:1: has a header but no rows"},
+		{"age,earnings\n30,100\n", "without 31, want every age from 30 to 31"},
+		{"age,earnings\n30,Inf\n31,1\n", `y.csv:2: earnings is "Inf", want a number`},
+		{"age,earnings\n30,1\n30,1\n", "y.csv:3: has age 30 a second time"},
+	} {
+		dir := t.TempDir()
+		scenario := filepath.Join(dir, "s.yaml")
+		text := strings.Replace(small, "{constant: 30000}", "{table: y.csv}", 1)
+		if err := errors.Join(os.WriteFile(filepath.Join(dir, "y.csv"), []byte(tt.csv), 0o666), os.WriteFile(scenario, []byte(text), 0o666)); err != nil {
+			t.Fatal(err)
+		}
+		sc, err := Load(scenario, []Override{{"public.pension.claim_age", "32"}})
+		switch {
+		case tt.want == "" && err != nil:
+			t.Error(err)
+		case tt.want == "":
+			if p := sc.Groups[0].Household.Earnings.Profile; len(p) != 2 || p[1] != 110 {
+				t.Errorf("profile %v", p)
+			}
+		case err == nil || !strings.Contains(err.Error(), tt.want):
+			t.Errorf("%q: got %v, want %q", tt.csv, err, tt.want)
+		}
 	}
 }
 

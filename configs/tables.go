@@ -97,8 +97,11 @@ func (f *files) table(faults *faults, ref tableRef, columns ...string) (rows [][
 		}
 		rows, lines = append(rows, row), append(lines, line)
 	}
-	if at == nil {
+	switch {
+	case at == nil:
 		faults.add(&PosError{File: shown, Line: 1, Message: "is empty, want a header and rows"})
+	case len(rows) == 0:
+		faults.add(&PosError{File: shown, Line: 1, Message: "has a header but no rows"})
 	}
 	return rows, lines, shown
 }
@@ -115,9 +118,14 @@ func unwrapped(err error) error {
 func header(faults *faults, shown string, line int, record, columns []string) []int {
 	var at []int
 	for _, c := range columns {
-		k := slices.IndexFunc(record, func(s string) bool { return strings.TrimSpace(s) == c })
+		named := func(s string) bool { return strings.TrimSpace(s) == c }
+		k := slices.IndexFunc(record, named)
 		if k < 0 {
 			faults.add(&PosError{File: shown, Line: line, Message: fmt.Sprintf("has no column %s, want columns %s", c, strings.Join(columns, ", "))})
+			return nil
+		}
+		if slices.IndexFunc(record[k+1:], named) >= 0 {
+			faults.add(&PosError{File: shown, Line: line, Message: fmt.Sprintf("has column %s twice", c)})
 			return nil
 		}
 		at = append(at, k)
@@ -146,7 +154,7 @@ func (f *files) lifeTable(faults *faults, ref tableRef, sex string, year int) *i
 		switch _, twice := q[age]; {
 		case err != nil || age < 0 || age > 200:
 			faults.add(&PosError{File: shown, Line: lines[i], Message: fmt.Sprintf("age is %q, want a whole number from 0 to 200", clip(r[0]))})
-		case err2 != nil || !(x >= 0 && x <= 1):
+		case err2 != nil || !decimal.MatchString(r[3]) || !(x >= 0 && x <= 1):
 			faults.add(&PosError{File: shown, Line: lines[i], Message: fmt.Sprintf("q is %q, want a probability from 0 to 1", clip(r[3]))})
 		case twice:
 			faults.add(&PosError{File: shown, Line: lines[i], Message: fmt.Sprintf("has age %d a second time for %s %d", age, sex, year)})
@@ -185,7 +193,7 @@ func (f *files) profileTable(faults *faults, ref tableRef) (ages []int, earnings
 		switch {
 		case err != nil || age < 0 || age > 200:
 			faults.add(&PosError{File: shown, Line: lines[i], Message: fmt.Sprintf("age is %q, want a whole number from 0 to 200", clip(r[0]))})
-		case err2 != nil || y-y != 0:
+		case err2 != nil || !decimal.MatchString(r[1]) || y-y != 0:
 			faults.add(&PosError{File: shown, Line: lines[i], Message: fmt.Sprintf("earnings is %q, want a number", clip(r[1]))})
 		case slices.Contains(ages, age):
 			faults.add(&PosError{File: shown, Line: lines[i], Message: fmt.Sprintf("has age %d a second time", age)})
