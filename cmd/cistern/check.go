@@ -23,7 +23,7 @@ and the allowed range; the exit status is then 2.`,
 			if err != nil {
 				return err
 			}
-			if err := affordable(sc, g.workers, g.out); err != nil {
+			if err := affordable(sc, g.workers, g.folder(sc)); err != nil {
 				return err
 			}
 			if _, err := g.stdout.Write(sc.YAML()); err != nil {

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"io"
 	"os"
+	"path/filepath"
 	"runtime"
 	"strconv"
 	"strings"
@@ -34,12 +35,33 @@ func (g *globals) addFlags(fs *pflag.FlagSet) {
 	fs.StringArrayVar(&g.set, "set", nil, "set a scenario key, as in `key.path=value` (repeatable)")
 	fs.Int64Var(&g.seed, "seed", 0, "use this `seed` in place of the scenario's")
 	fs.Int64Var(&g.households, "households", 0, "simulate `n` households in place of the scenario's number")
-	fs.IntVar(&g.workers, "workers", runtime.NumCPU(), "use `n` processors; results do not depend on it")
+	fs.IntVar(&g.workers, "workers", runtime.GOMAXPROCS(0), "use `n` processors; results do not depend on it")
 	fs.StringVar(&g.out, "out", "", "write the run to `folder`")
 	fs.BoolVar(&g.replace, "replace", false, "replace a finished run in that folder")
 	fs.StringVar(&g.format, "format", "table", "print results as `table`, csv or json")
 	fs.BoolVar(&g.quiet, "quiet", false, "print no progress and no messages")
 	g.flags = fs
+}
+
+// check refuses values of common flags that no command can do anything with.
+func (g *globals) check() error {
+	switch {
+	case g.workers < 1:
+		return usagef("--workers is %d, want at least 1", g.workers)
+	case g.format != "table" && g.format != "csv" && g.format != "json":
+		return usagef("--format is %s, want table, csv or json", g.format)
+	case g.flags.Changed("out") && g.out == "":
+		return usagef("--out is empty, want a folder")
+	}
+	return nil
+}
+
+// folder is where simulate writes a scenario's run.
+func (g *globals) folder(sc *configs.Scenario) string {
+	if g.out != "" {
+		return g.out
+	}
+	return filepath.Join("runs", sc.Name)
 }
 
 // overrides are --set, --seed and --households as settings of scenario keys.
@@ -63,12 +85,6 @@ func (g *globals) overrides() ([]configs.Override, error) {
 
 // scenario loads what a command's argument names: a file, or a built-in scenario.
 func (g *globals) scenario(args []string) (*configs.Scenario, error) {
-	if g.workers < 1 {
-		return nil, usagef("--workers is %d, want at least 1", g.workers)
-	}
-	if g.format != "table" && g.format != "csv" && g.format != "json" {
-		return nil, usagef("--format is %s, want table, csv or json", g.format)
-	}
 	overrides, err := g.overrides()
 	if err != nil {
 		return nil, err
@@ -76,6 +92,9 @@ func (g *globals) scenario(args []string) (*configs.Scenario, error) {
 	name := configs.Default
 	if len(args) > 0 {
 		name = args[0]
+	}
+	if name == "" {
+		return nil, usagef("the scenario's name is empty")
 	}
 	if _, err := os.Stat(name); err != nil && !strings.ContainsAny(name, "./\\") {
 		return configs.Builtin(name, overrides)

@@ -41,8 +41,6 @@ func main() {
 func execute(ctx context.Context, args []string, stdout, stderr io.Writer) int {
 	root := newRootCommand(&globals{stdout: stdout, stderr: stderr})
 	root.SetArgs(args)
-	root.SetOut(stdout)
-	root.SetErr(stderr)
 	err := root.ExecuteContext(ctx)
 	if err == nil {
 		return exitDone
@@ -100,25 +98,34 @@ household type's consumption rule, simulates a household panel with it, and says
 how much is saved because of risk, with the error of every number.
 
 A model's output under stated assumptions; no personal financial advice.`,
-		Example:       "  cistern simulate\n  cistern scenarios quayside > my-port.yaml\n  cistern check my-port.yaml\n  cistern simulate my-port.yaml --households 100000",
-		SilenceUsage:  true,
-		SilenceErrors: true,
-		Args: func(cmd *cobra.Command, args []string) error {
-			if len(args) > 0 {
-				return usagef("there is no command %q%s; see cistern --help", args[0], didYouMean(cmd.SuggestionsFor(args[0])))
-			}
-			return nil
-		},
-		RunE: func(cmd *cobra.Command, args []string) error { return cmd.Help() },
+		Example:           "  cistern simulate\n  cistern scenarios quayside > my-port.yaml\n  cistern check my-port.yaml\n  cistern simulate my-port.yaml --households 100000",
+		SilenceUsage:      true,
+		SilenceErrors:     true,
+		Args:              knownCommand,
+		PersistentPreRunE: func(cmd *cobra.Command, args []string) error { return g.check() },
+		RunE:              func(cmd *cobra.Command, args []string) error { return cmd.Help() },
 	}
+	root.SetOut(g.stdout)
+	root.SetErr(g.stderr)
 	root.SuggestionsMinimumDistance = 2
 	root.SetFlagErrorFunc(func(cmd *cobra.Command, err error) error {
-		return usagef("%w; see %s --help", err, cmd.CommandPath())
+		return usagef("%w%s; see %s --help", err, didYouMean(flagsLike(cmd, err)), cmd.CommandPath())
 	})
 	g.addFlags(root.PersistentFlags())
 	root.AddCommand(newSimulateCommand(g), newCheckCommand(g), newIncomeCommand(g), newSolveCommand(g),
 		newScenariosCommand(g), newVerifyCommand(g), newSchemaCommand(g), newVersionCommand(g))
+	addHelpAndCompletion(root)
 	return root
+}
+
+// knownCommand refuses arguments that lead to no command.
+func knownCommand(cmd *cobra.Command, args []string) error {
+	root := cmd.Root()
+	if _, rest, err := root.Find(args); err != nil || len(rest) > 0 {
+		name := args[max(0, len(args)-max(1, len(rest)))]
+		return usagef("there is no command %q%s; see cistern --help", name, didYouMean(root.SuggestionsFor(name)))
+	}
+	return nil
 }
 
 func didYouMean(words []string) string {

@@ -12,12 +12,16 @@ import (
 	"cistern/output"
 )
 
-// affordable reports a scenario that needs more memory or disk than there is.
+// affordable reports a scenario that needs more memory or, if a run of it is
+// written to the folder dir, more disk than there is.
 func affordable(sc *configs.Scenario, workers int, dir string) error {
 	c := sc.Cost(workers)
 	if free := freeMemory(); free > 0 && c.MemoryBytes > free {
 		return &configs.PosError{File: sc.Name, Message: fmt.Sprintf("the run would need about %s of memory, and %s are free; lower solver.asset_points, income.persistent.points or --workers",
 			size(c.MemoryBytes), size(free))}
+	}
+	if dir == "" {
+		return nil
 	}
 	if free := freeDisk(dir); free > 0 && c.DiskBytes > free {
 		return &configs.PosError{File: sc.Name, Key: "households", Message: fmt.Sprintf("is %d: the run would write about %s, and %s are free on the disk of %s; lower households, set panel.precision=single or panel.write=false",

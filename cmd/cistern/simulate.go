@@ -3,7 +3,6 @@ package main
 import (
 	"context"
 	"fmt"
-	"path/filepath"
 	"strings"
 
 	"github.com/spf13/cobra"
@@ -37,10 +36,7 @@ func simulate(ctx context.Context, g *globals, args []string) error {
 	if err != nil {
 		return err
 	}
-	dir := g.out
-	if dir == "" {
-		dir = filepath.Join("runs", sc.Name)
-	}
+	dir := g.folder(sc)
 	if err := affordable(sc, g.workers, dir); err != nil {
 		return err
 	}

@@ -33,7 +33,9 @@ func solve(ctx context.Context, g *globals, args []string) error {
 	if err != nil {
 		return err
 	}
-	if err := affordable(sc, g.workers, g.out); err != nil {
+	rules := *sc
+	rules.Panel.Write = false
+	if err := affordable(&rules, g.workers, g.out); err != nil {
 		return err
 	}
 	r := &run{g: g, sc: sc, problems: sc.Problems(), hash: scenarioHash(sc)}
