@@ -193,6 +193,8 @@ func TestFaults(t *testing.T) {
 		{"group named all", "seed: 7", "seed: 7\ngroups: [{name: all, share: 1}]", []string{"groups[0].name: is all, want a name"}},
 		{"several at once", "seed: 7\nhouseholds: 100", "seed: -7\nhouseholds: 0", []string{"seed: is -7", "households: is 0"}},
 		{"block", "seed: 7", "seed: 7\npanel: {block: 5000}", []string{"panel.block: is 5000, want a multiple of 4096"}},
+		{"nothing to consume", "  persistent", "  job_loss: {probability: 0.1}\n  persistent", []string{"s.yaml:1:1: start.assets: a household of group households begins with 0, want more than 0"}},
+		{"nothing to consume, at its place", "seed: 7", "seed: 7\nstart: {assets: {constant: -26000}}", []string{"s.yaml:4:17: start.assets: a household of group households begins with -26000, want more than -"}},
 		{"percentiles", "seed: 7", "seed: 7\nsummary: {percentiles: [50, 100]}", []string{"summary.percentiles[1]: is 100, want strictly between 0 and 100"}},
 	} {
 		t.Run(tt.name, func(t *testing.T) {
@@ -240,7 +242,7 @@ func TestOverrides(t *testing.T) {
 	if _, err := ParseOverride("saving.return"); !IsFault(err) {
 		t.Errorf("an override without = gives %v", err)
 	}
-	sc, err := Parse("s.yaml", []byte(small), []Override{{"saving.return", "0.05"}, {"income.job_loss", "{probability: 0.1}"}, {"income.profile", "{polynomial: [10, 0.01], from: 30}"}})
+	sc, err := Parse("s.yaml", []byte(small), []Override{{"saving.return", "0.05"}, {"income.job_loss", "{probability: 0.1, benefit_rate: 0.5}"}, {"income.profile", "{polynomial: [10, 0.01], from: 30}"}})
 	if err != nil {
 		t.Fatal(err)
 	}

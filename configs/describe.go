@@ -31,8 +31,30 @@ func describe(s *section, in *files) *Scenario {
 	s.done()
 	for i := range sc.Groups {
 		sc.Groups[i].Start = start
+		checkStart(s, &sc.Groups[i])
 	}
 	return sc
+}
+
+// checkStart refuses start assets with which the lowest income of the first year
+// would leave nothing to consume.
+func checkStart(s *section, g *Group) {
+	if g.Household.Utility == nil {
+		return // not built: at fault already
+	}
+	lowest, begins := g.Start.Constant, "begins with"
+	if g.Start.Median > 0 {
+		lowest = 0
+		if begins = "may begin with"; g.Start.ZeroShare == 0 {
+			begins = "may begin with hardly more than"
+		}
+	}
+	least := g.Household.LeastStart()
+	if lowest > least || g.Start.Median > 0 && g.Start.ZeroShare == 0 && least <= 0 {
+		return
+	}
+	s.at("start.assets", "a household of group %s %s %s, want more than %s: the lowest income of its first year would leave no consumption that its utility allows"+
+		" (or give it an income, such as income.job_loss.benefit_rate, or a saving.borrowing_limit)", g.Name, begins, format(lowest), format(least))
 }
 
 // commonBlocks are the blocks that groups may override.

@@ -94,3 +94,27 @@ func (h Household) infeasible(t int, low, floor float64) error {
 	}
 	return &FieldError{"Earnings", fmt.Sprintf("%.6g at age %d in the worst case", low, h.FirstAge+t), want}
 }
+
+// LeastStart returns, in money, the assets at the end of the year before the
+// first that every household must begin with more than: with these or less, the
+// lowest income of the first year would leave no consumption that its utility
+// allows,
+//
+//	(c̲ − b_0(z) − inf y_0(z)) / R   at its largest over the persistent nodes z
+//
+// that a household can begin at; −Inf where consumption may be negative. h must
+// be valid.
+func (h Household) LeastStart() float64 {
+	floor := h.Utility.Infimum()
+	least := math.Inf(-1)
+	bounds, err := h.bounds()
+	if err != nil || math.IsInf(floor, -1) {
+		return least
+	}
+	for j, p := range h.Earnings.Distribution[0] {
+		if p > 0 {
+			least = math.Max(least, (floor+bounds[0][j]-h.lowestIncome(0, j))/(1+h.Return))
+		}
+	}
+	return least
+}

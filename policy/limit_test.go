@@ -36,6 +36,24 @@ func TestBounds(t *testing.T) {
 	}
 }
 
+// With income 1 and R = 1.25 a household that may owe nothing must begin with more
+// than −1/1.25, and one that may owe 1.952 with more than −(1 + 1.952)/1.25
+// (derived by hand).
+func TestLeastStart(t *testing.T) {
+	h := certainHousehold(t, family(t)(NewCRRA(2)), constant(1), 4, 0.9, 0.25, Limit{})
+	if got := h.LeastStart(); math.Abs(got+0.8) > 1e-15 {
+		t.Errorf("without debt: %v, want -0.8", got)
+	}
+	h.Limit = Limit{Kind: LimitNatural}
+	if got := h.LeastStart(); math.Abs(got+2.952*0.8) > 1e-15 {
+		t.Errorf("with the natural limit: %v, want %v", got, -2.952*0.8)
+	}
+	h.Utility = family(t)(NewCARA(1))
+	if got := h.LeastStart(); !math.IsInf(got, -1) {
+		t.Errorf("where consumption may be negative: %v, want -Inf", got)
+	}
+}
+
 // Households that cannot live by what they face are refused, with the reason.
 func TestImpossibleHouseholds(t *testing.T) {
 	risky := riskyHousehold(t)
