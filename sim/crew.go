@@ -116,7 +116,7 @@ func (c *crew) live(k int) error {
 			c.slots = append(c.slots, c.slot[:alive]...)
 		}
 		c.dead = c.dead[:0]
-		c.read += tp.rule[t].Warm(alive)
+		c.read += tp.laws[t].rule.Warm(alive)
 		for from := 0; from < alive; from += chunk {
 			to := min(from+chunk, alive)
 			if err := c.year(tp, t, from, to, row+from); err != nil {

@@ -20,22 +20,15 @@ type plan struct {
 type typePlan struct {
 	h         policy.Household
 	group     int
-	rule      []*policy.Table // [t]
+	laws      []law           // [t]
 	twin      []*policy.Table // [t]; nil without twins
 	twinMoney []float64       // [t] the twin's certain income
 	nodes     [256]float64    // [node] z; indexed by a byte, so that no bound is checked
-	pension   [256]float64    // [node]
-	bound     [][]float64     // [t][node] lowest assets
 	floor     float64         // consumption lies above it
-	top       []float64       // [t] lowest top of the rule over the nodes
 
-	survive []uint64 // [t] of 2^32
-	jobLoss uint64   // of 2^32
 	initial []uint64 // [node] cumulated, of 2^32
 	moves   moves
 
-	factor    *normalTable // exp(ε − shift) in form log, ε in form level
-	epsilon   *normalTable // ε, where it is wanted
 	startLog  *normalTable // log of start assets over their median
 	zeroShare uint64       // of 2^32
 	start     Start
@@ -52,11 +45,12 @@ func newPlan(p *Population, want Columns) *plan {
 		wg.Add(1)
 		go func() {
 			defer wg.Done()
-			tp.rule = ruleTables(p.Types[i].Rule)
+			for t := range tp.laws {
+				tp.laws[t].follow(p.Types[i].Rule, t)
+			}
 			if p.Types[i].Twin != nil && want&Twins != 0 {
 				tp.twin = ruleTables(p.Types[i].Twin)
 			}
-			tp.setTops()
 		}()
 	}
 	wg.Wait()
@@ -86,47 +80,20 @@ func ruleTables(r *policy.Rule) []*policy.Table {
 	return tables
 }
 
-func (tp *typePlan) setTops() {
-	for _, tb := range tp.rule {
-		top := math.Inf(1)
-		for j := range tp.h.Nodes() {
-			top = math.Min(top, tb.Top(j))
-		}
-		tp.top = append(tp.top, top)
-	}
-}
-
 func (tp *typePlan) set(t *Type, want Columns, tables *tableCache) {
 	h := t.Rule.Household
 	e := h.Earnings
 	tp.h, tp.group, tp.start = h, t.Group, t.Start
 	tp.floor = h.Utility.Infimum()
 	copy(tp.nodes[:], e.Chain.Nodes)
-	for j := range h.Nodes() {
-		tp.pension[j] = h.Pension.Amount(e, j)
-	}
 	for y := range h.Years() {
-		bounds := make([]float64, h.Nodes())
-		for j := range bounds {
-			bounds[j] = t.Rule.Curves[y][j].Bound
-		}
-		tp.bound = append(tp.bound, bounds)
-		tp.survive = append(tp.survive, of32(h.Survival[y]))
+		tp.laws = append(tp.laws, newLaw(&h, y, want, tables))
 		if t.Twin != nil {
 			tp.twinMoney = append(tp.twinMoney, t.Twin.Household.MeanIncome(y))
 		}
 	}
-	tp.jobLoss = of32(e.JobLoss.Probability)
 	tp.initial = cumulated(e.Initial)
 	tp.moves = newMoves(e.Chain)
-	sd := e.Transitory.SD
-	if want&Shocks != 0 || e.Form == income.Level {
-		tp.epsilon = tables.get(tableKey{sd: sd})
-	}
-	tp.factor = tp.epsilon
-	if e.Form == income.Log {
-		tp.factor = tables.get(tableKey{sd: sd, shift: e.LogShift(), exp: true})
-	}
 	tp.startLog = tables.get(tableKey{sd: t.Start.LogSD})
 	tp.zeroShare = of32(t.Start.ZeroShare)
 }
