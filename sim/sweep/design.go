@@ -103,18 +103,38 @@ func (d Design) Lay() (*Layout, error) {
 		return l, nil
 	}
 	l.n = d.Points
-	l.cube = mat.NewDense(d.Points, len(d.Axes), nil)
-	cube := distmv.NewUnitUniform(len(d.Axes), nil)
-	if d.Kind == Halton {
-		samplemv.Halton{Kind: samplemv.Owen, Q: cube, Src: source(d.Seed)}.Sample(l.cube)
-	} else {
-		samplemv.LatinHypercube{Q: cube, Src: source(d.Seed)}.Sample(l.cube)
-	}
+	l.cube = d.sample()
 	return l, nil
 }
 
-// source returns a generator whose state is well mixed whatever the seed.
-func source(seed uint64) *rand.PCGSource {
+// sample draws the points of a design that is not factorial, [point][axis].
+func (d Design) sample() *mat.Dense {
+	points := mat.NewDense(d.Points, len(d.Axes), nil)
+	cube := distmv.NewUnitUniform(len(d.Axes), nil)
+	if d.Kind == Halton {
+		samplemv.Halton{Kind: samplemv.Owen, Q: cube, Src: Source(d.Seed)}.Sample(points)
+	} else {
+		samplemv.LatinHypercube{Q: cube, Src: Source(d.Seed)}.Sample(points)
+	}
+	return points
+}
+
+// Cube returns the points of a Latin hypercube or Halton design as they lie in the
+// unit cube, [point][axis]. A factorial design has none: its points are nil.
+func (d Design) Cube() ([][]float64, error) {
+	if err := d.Validate(); err != nil || d.Kind == Factorial {
+		return nil, err
+	}
+	points := d.sample()
+	rows := make([][]float64, d.Points)
+	for i := range rows {
+		rows[i] = points.RawRowView(i)
+	}
+	return rows, nil
+}
+
+// Source returns a generator whose state is well mixed whatever the seed.
+func Source(seed uint64) *rand.PCGSource {
 	var state [16]byte
 	binary.BigEndian.PutUint64(state[:8], seed*0x9e3779b97f4a7c15+0x7f4a7c15)
 	binary.BigEndian.PutUint64(state[8:], (seed^0xd1b54a32d192ed03)*0xbf58476d1ce4e5b9)

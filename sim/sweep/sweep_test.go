@@ -83,7 +83,7 @@ func TestHalton(t *testing.T) {
 		}
 	}
 	cube := mat.NewDense(n, 3, nil)
-	samplemv.Halton{Kind: samplemv.Owen, Q: distmv.NewUnitUniform(3, nil), Src: source(11)}.Sample(cube)
+	samplemv.Halton{Kind: samplemv.Owen, Q: distmv.NewUnitUniform(3, nil), Src: Source(11)}.Sample(cube)
 	for i := range n {
 		for j, v := range l.Point(i) {
 			if got, want := parse(t, v), cube.At(i, j); math.Abs(got-want) > 1e-12 {
