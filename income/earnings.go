@@ -19,6 +19,9 @@ type Earnings struct {
 
 	values  [][][]float64 // [t][node][outcome]
 	weights []float64     // [outcome]
+	final   []float64     // [node] see Final
+	changes []Change      // [t] nil where the process holds in every year
+	changed [][]float64   // [t][outcome] weights where it does not
 }
 
 // Build prepares the tables. An invalid process is reported as *FieldError, all
@@ -45,6 +48,7 @@ func (p Process) Build() (*Earnings, error) {
 			return nil, err
 		}
 	}
+	e.fillFinal()
 	return e, nil
 }
 
@@ -78,13 +82,20 @@ func (e *Earnings) placeShock() {
 			}
 		}
 	}
-	p := e.JobLoss.Probability
+	e.weights = e.weigh(e.JobLoss.Probability)
+}
+
+// weigh returns the probabilities of the outcomes where jobs are lost with
+// probability p.
+func (e *Earnings) weigh(p float64) []float64 {
+	weights := make([]float64, 0, len(e.Weight)+1)
 	for _, q := range e.Weight {
-		e.weights = append(e.weights, (1-p)*q)
+		weights = append(weights, (1-p)*q)
 	}
 	if p > 0 {
-		e.weights = append(e.weights, p)
+		weights = append(weights, p)
 	}
+	return weights
 }
 
 // fillYear fills the tables of year t.
@@ -93,30 +104,47 @@ func (e *Earnings) fillYear(t int) {
 	if e.meanInLogs() {
 		e.Kappa[t] = logMeanExp(e.Distribution[t], e.Chain.Nodes)
 	}
+	c := e.change(t)
 	e.Base[t], e.Benefit[t], e.values[t] = make([]float64, n), make([]float64, n), make([][]float64, n)
-	for j, z := range e.Chain.Nodes {
+	for j := range e.Chain.Nodes {
+		e.Base[t][j] = c.Factor * e.supported(t, j)
 		if e.Form == Log {
-			e.Base[t][j] = e.Profile[t] * math.Exp(z-e.Kappa[t])
-			e.Benefit[t][j] = e.JobLoss.BenefitRate * e.Base[t][j]
+			e.Benefit[t][j] = c.JobLoss.BenefitRate * e.Base[t][j]
 		} else {
-			e.Base[t][j] = e.Profile[t] + z
-			e.Benefit[t][j] = e.JobLoss.BenefitRate * e.Profile[t]
+			e.Benefit[t][j] = c.JobLoss.BenefitRate * (c.Factor * e.Profile[t])
 		}
-		e.values[t][j] = e.outcomes(e.Base[t][j], e.Benefit[t][j])
+		e.values[t][j] = e.outcomes(e.Base[t][j], e.Benefit[t][j], c)
 	}
 }
 
-// outcomes returns what can be earned at a node, in the order of e.weights.
-func (e *Earnings) outcomes(base, benefit float64) []float64 {
-	y := make([]float64, 0, len(e.weights))
+// supported returns the earnings that the persistent part supports in year t at a
+// node.
+func (e *Earnings) supported(t, node int) float64 {
+	z := e.Chain.Nodes[node] + e.change(t).Shift
+	if e.Form == Log {
+		return e.Profile[t] * math.Exp(z-e.Kappa[t])
+	}
+	return e.Profile[t] + z
+}
+
+func (e *Earnings) fillFinal() {
+	e.final = make([]float64, e.Chain.Len())
+	for j := range e.final {
+		e.final[j] = e.supported(e.Years()-1, j)
+	}
+}
+
+// outcomes returns what can be earned at a node, in the order of the weights.
+func (e *Earnings) outcomes(base, benefit float64, c Change) []float64 {
+	y := make([]float64, 0, len(e.Factor)+1)
 	for _, f := range e.Factor {
 		if e.Form == Log {
 			y = append(y, base*f)
 		} else {
-			y = append(y, base+f)
+			y = append(y, base+float64(c.Factor*f))
 		}
 	}
-	if e.JobLoss.Probability > 0 {
+	if c.JobLoss.Probability > 0 {
 		y = append(y, benefit)
 	}
 	return y
@@ -137,10 +165,17 @@ func (e *Earnings) Years() int { return len(e.Profile) }
 
 // Outcomes returns what a household at a node can earn in year t as the solver
 // reckons, money, with probabilities: one outcome a quadrature node and, where
-// there is job loss, the benefit last. The probabilities are the same for every t
-// and node. The caller must not change either.
+// there is job loss, the benefit last. The probabilities are the same for every
+// node and, but for a [Change], every t. The caller must not change either.
 func (e *Earnings) Outcomes(t, node int) (values, weights []float64) {
-	return e.values[t][node], e.weights
+	return e.values[t][node], e.outcomeWeights(t)
+}
+
+func (e *Earnings) outcomeWeights(t int) []float64 {
+	if e.changed == nil {
+		return e.weights
+	}
+	return e.changed[t]
 }
 
 // LogShift returns σ_ε²/2 where the profile is a mean in form log, 0 elsewhere.
@@ -152,12 +187,12 @@ func (e *Earnings) LogShift() float64 {
 }
 
 // At returns the earnings, in money, of an employed household at a node in year t
-// whose transitory shock is epsilon.
+// whose transitory shock, as the process draws it, is epsilon.
 func (e *Earnings) At(t, node int, epsilon float64) float64 {
 	if e.Form == Log {
 		return e.Base[t][node] * math.Exp(epsilon-e.LogShift())
 	}
-	return e.Base[t][node] + epsilon
+	return e.Base[t][node] + float64(e.change(t).Factor*epsilon)
 }
 
 // Mean returns mean earnings in year t, in money, over nodes, transitory shock and
@@ -167,7 +202,7 @@ func (e *Earnings) Mean(t int) float64 {
 	if e.Form == Log && e.ProfileIs == Median {
 		factor = math.Exp(e.Transitory.SD * e.Transitory.SD / 2)
 	}
-	p := e.JobLoss.Probability
+	p := e.JobLossIn(t).Probability
 	mean := 0.0
 	for j, q := range e.Distribution[t] {
 		mean += q * ((1-p)*factor*e.Base[t][j] + p*e.Benefit[t][j])
@@ -180,7 +215,7 @@ func (e *Earnings) Mean(t int) float64 {
 // transitory shock is drawn, −Inf in form level.
 func (e *Earnings) Infimum(t int) float64 {
 	low := math.Inf(1)
-	p := e.JobLoss.Probability
+	p := e.JobLossIn(t).Probability
 	for j := range e.Chain.Nodes {
 		if p > 0 {
 			low = math.Min(low, e.Benefit[t][j])
@@ -189,7 +224,7 @@ func (e *Earnings) Infimum(t int) float64 {
 			continue
 		}
 		switch {
-		case e.Transitory.SD == 0:
+		case e.TransitorySD(t) == 0:
 			low = math.Min(low, e.Base[t][j])
 		case e.Form == Log:
 			low = math.Min(low, 0)

@@ -25,7 +25,7 @@ type Judge struct {
 	fine   bool
 	ahead  frontier  // the rule of year, as records
 	year   int       // which year ahead holds
-	shock  []float64 // what earnings are multiplied by (form log) or raised by (form level), ascending; fine only
+	shock  []float64 // what earnings of that year are multiplied by (form log) or raised by (form level), ascending; fine only
 	weight []float64
 }
 
@@ -41,27 +41,29 @@ const (
 // if fine, with a far finer quadrature of the transitory shock. It is not safe
 // for concurrent use; several judges of one rule are.
 func NewJudge(r *Rule, fine bool) *Judge {
-	j := &Judge{rule: r, marginal: marginalOf(r.Household, marginal{}), fine: fine, year: -1}
-	e := r.Household.Earnings
-	if !fine || e.Transitory.SD == 0 {
-		j.fine = false
-		return j
-	}
+	return &Judge{rule: r, marginal: marginalOf(r.Household, marginal{}), year: -1,
+		fine: fine && r.Household.Earnings.Transitory.SD > 0}
+}
+
+// refine places the fine quadrature of year t.
+func (j *Judge) refine(t int) {
+	e := j.rule.Household.Earnings
+	sd := e.TransitorySD(t)
+	j.shock, j.weight = j.shock[:0], j.weight[:0]
 	sum := 0.0
 	for i := range fineNodes {
 		x := fineSpan * (2*float64(i)/(fineNodes-1) - 1)
 		w := math.Exp(-x * x / 2)
 		sum += w
 		j.weight = append(j.weight, w)
-		j.shock = append(j.shock, e.Transitory.SD*x)
+		j.shock = append(j.shock, sd*x)
 		if e.Form == income.Log {
 			j.shock[i] = math.Exp(j.shock[i] - e.LogShift())
 		}
 	}
 	for i := range j.weight {
-		j.weight[i] *= (1 - e.JobLoss.Probability) / sum
+		j.weight[i] *= (1 - e.JobLossIn(t).Probability) / sum
 	}
-	return j
 }
 
 // Error returns the Euler-equation error in year t at a persistent node with
@@ -94,7 +96,8 @@ func (j *Judge) Error(t, node int, m float64) (e float64, atLimit bool) {
 // that it neither overflows nor vanishes.
 func (j *Judge) implied(t, node int, a, c float64) float64 {
 	h := j.rule.Household
-	x := (1 + h.Return) * a
+	R := 1 + h.ReturnIn(t+1)
+	x := R * a
 	v := 0.0
 	if s := h.Survival[t]; s > 0 {
 		j.look(t + 1)
@@ -111,7 +114,7 @@ func (j *Judge) implied(t, node int, a, c float64) float64 {
 	if b := h.Bequest; b.Weight > 0 {
 		v += (1 - h.Survival[t]) * b.Weight * j.relative(x+b.Shift-j.shift, c)
 	}
-	v *= h.DiscountFactor * (1 + h.Return)
+	v *= h.DiscountFactor * R
 	switch j.kind {
 	case powerKind:
 		return j.inward.at(v) + j.shift
@@ -130,6 +133,9 @@ func (j *Judge) look(t int) {
 	j.ahead.reset(len(j.rule.Curves[t]))
 	for n := range j.rule.Curves[t] {
 		j.ahead.set(n, &j.rule.Curves[t][n], 0, j.shift)
+	}
+	if j.fine && j.rule.Household.Working(t) {
+		j.refine(t)
 	}
 }
 
@@ -159,7 +165,7 @@ func (j *Judge) overIncome(t, node int, x, c float64) float64 {
 		return v
 	}
 	e := h.Earnings
-	if p := e.JobLoss.Probability; p > 0 {
+	if p := e.JobLossIn(t).Probability; p > 0 {
 		m := x + e.Benefit[t][node]
 		next, _ := find(sg, m).at(m)
 		v = p * j.relative(next, c)

@@ -154,7 +154,7 @@ func (h Household) discount() []float64 {
 func (h Household) gross() []float64 {
 	g := make([]float64, h.Years()-1)
 	for t := range g {
-		g[t] = 1 + h.Return
+		g[t] = 1 + h.ReturnIn(t+1)
 	}
 	return g
 }

@@ -15,8 +15,9 @@
 // answer where there is one.
 //
 // Units: money is real, in the scenario's currency unit; rates are per year as
-// fractions. Index t counts years from the first age. Shapes are [t][node], node
-// the persistent node.
+// fractions. R = 1 + r is that of the year ahead where it differs from year to
+// year. Index t counts years from the first age. Shapes are [t][node], node the
+// persistent node.
 //
 // Accuracy: with cubic interpolation errors between nodes fall with the fourth
 // power of their distance; with linear, with the second. More nodes alone are the

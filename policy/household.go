@@ -55,7 +55,8 @@ type Household struct {
 	Utility        Utility
 	DiscountFactor float64 // β, a year, > 0
 	Bequest        Bequest
-	Return         float64 // r, a year, > −1
+	Return         float64   // r, a year, > −1
+	Returns        []float64 // [T] r of each year, earned on what was kept the year before, where it differs from year to year; nil: Return in all
 	Limit          Limit
 	Earnings       *income.Earnings // working ages FirstAge … ClaimAge−1
 	Pension        Pension
@@ -67,6 +68,14 @@ func (h Household) Years() int { return len(h.Survival) }
 // WorkingYears returns the number of years before the claim age.
 func (h Household) WorkingYears() int { return min(h.Earnings.Years(), h.Years()) }
 
+// ReturnIn returns r of year t, which is earned on the assets kept in year t−1.
+func (h Household) ReturnIn(t int) float64 {
+	if t < len(h.Returns) {
+		return h.Returns[t]
+	}
+	return h.Return
+}
+
 // Nodes returns the number of persistent nodes.
 func (h Household) Nodes() int { return h.Earnings.Chain.Len() }
 
@@ -75,13 +84,12 @@ func (h Household) Working(t int) bool { return t < h.WorkingYears() }
 
 // Income returns the net income that a household at persistent node can meet in
 // year t, as values (money) with their probabilities, the same probabilities for
-// every t and node of working life and a single certain value from the claim age
-// on. The transitory shock stands at its quadrature nodes.
+// every node of a working year and a single certain value from the claim age on. The transitory shock stands at its quadrature nodes.
 func (h Household) Income(t, node int) (values, weights []float64) {
 	if h.Working(t) {
 		return h.Earnings.Outcomes(t, node)
 	}
-	return []float64{h.Pension.Amount(h.Earnings, node)}, certainty
+	return []float64{h.PensionIn(t, node)}, certainty
 }
 
 var certainty = []float64{1}
@@ -98,7 +106,7 @@ func (h Household) MeanIncome(t int) float64 {
 	last := h.Earnings.Distribution[h.WorkingYears()-1]
 	mean := 0.0
 	for j, p := range last {
-		mean += p * h.Pension.Amount(h.Earnings, j)
+		mean += p * h.PensionIn(t, j)
 	}
 	return mean
 }
@@ -145,6 +153,22 @@ func (h Household) Validate() error {
 	if !(h.Return > -1) || math.IsInf(h.Return, 1) {
 		bad("Return", h.Return, "above -1 and finite")
 	}
+	if n := len(h.Returns); n != 0 && n != h.Years() {
+		bad("Returns", fmt.Sprintf("%d returns", n), fmt.Sprintf("%d, one for each year of life, or none", h.Years()))
+	}
+	for t, r := range h.Returns {
+		if !(r > -1) || math.IsInf(r, 1) {
+			bad(fmt.Sprintf("Returns[%d]", t), r, "above -1 and finite")
+		}
+	}
+	if n := len(h.Pension.Worth); n != 0 && n != h.Years() {
+		bad("Pension.Worth", fmt.Sprintf("%d values", n), fmt.Sprintf("%d, one for each year of life, or none", h.Years()))
+	}
+	for t, x := range h.Pension.Worth {
+		if !(x >= 0) || math.IsInf(x, 1) {
+			bad(fmt.Sprintf("Pension.Worth[%d]", t), x, "at least 0 and finite")
+		}
+	}
 	if !(h.Bequest.Weight >= 0) || math.IsInf(h.Bequest.Weight, 1) {
 		bad("Bequest.Weight", h.Bequest.Weight, "at least 0 and finite")
 	}
@@ -175,7 +199,7 @@ func (h Household) validateEstate(bounds [][]float64) error {
 		return nil
 	}
 	for t, s := range h.Survival {
-		worst := (1 + h.Return) * slices.Min(bounds[t])
+		worst := (1 + h.ReturnIn(t+1)) * slices.Min(bounds[t])
 		if s < 1 && worst+h.Bequest.Shift < floor {
 			return &FieldError{"Bequest.Shift", h.Bequest.Shift, fmt.Sprintf("at least %.6g: who dies at age %d may owe %.6g, and utility of the estate must bear it",
 				floor-worst, h.FirstAge+t, -worst)}

@@ -13,7 +13,7 @@ import (
 // What can be owed at the end of year t is what next year's lowest income and the
 // debt then allowed can bear, net of the consumption that utility cannot go below,
 //
-//	N_t = min_{z′} ( b_{t+1}(z′) + inf y_{t+1}(z′) − c̲ ) / R,   b_T = 0,
+//	N_t = min_{z′} ( b_{t+1}(z′) + inf y_{t+1}(z′) − c̲ ) / R_{t+1},   b_T = 0,
 //
 // over all nodes while the node can change, over the household's own from then on.
 // Under LimitNatural b = N, the present value of all lowest income (Aiyagari 1994,
@@ -44,7 +44,7 @@ func (h Household) bounds() ([][]float64, error) {
 	for t := T - 2; t >= 0; t-- {
 		for j := range repay {
 			low := h.lowestIncome(t+1, j)
-			repay[j] = (low - b[t+1][j] - floor) / (1 + h.Return)
+			repay[j] = (low - b[t+1][j] - floor) / (1 + h.ReturnIn(t+1))
 			if math.IsInf(low, -1) || repay[j] < -1e-9*math.Max(math.Abs(low), floor) {
 				return nil, h.infeasible(t+1, low, floor)
 			}
@@ -113,7 +113,7 @@ func (h Household) LeastStart() float64 {
 	}
 	for j, p := range h.Earnings.Distribution[0] {
 		if p > 0 {
-			least = math.Max(least, (floor+bounds[0][j]-h.lowestIncome(0, j))/(1+h.Return))
+			least = math.Max(least, (floor+bounds[0][j]-h.lowestIncome(0, j))/(1+h.ReturnIn(0)))
 		}
 	}
 	return least

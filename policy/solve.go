@@ -47,6 +47,7 @@ type Solver struct {
 	kinks  []sighting // kinks of next year's rule as this year's assets
 	assets []float64  // this year's asset grid
 	gross  []float64  // R·assets
+	earned float64    // the R in gross
 	plain  bool       // assets hold the fixed grid alone
 	sound  bool       // the year's rules looked possible as they were laid out
 	work   scratch
@@ -70,7 +71,7 @@ type problem struct {
 	offsets []float64 // asset grid above the limit
 	sparse  []float64 // a few of them, for rules that are lines between kinks
 	marginal
-	returns float64 // R
+	returns float64 // R of the year ahead
 }
 
 // Solve is the function Solve on this Solver's memory. It trusts h and o to be
@@ -79,16 +80,21 @@ func (s *Solver) Solve(ctx context.Context, h Household, o Options) (*Rule, erro
 	if err := s.begin(h, o); err != nil {
 		return nil, err
 	}
-	T := h.Years()
-	for t := T - 1; t >= 0; t-- {
+	return s.back(ctx, 0, h.Years())
+}
+
+// back solves the years from … to−1, the last first.
+func (s *Solver) back(ctx context.Context, from, to int) (*Rule, error) {
+	for t := to - 1; t >= from; t-- {
+		age := s.h.FirstAge + t
 		if ctx.Err() != nil {
-			return nil, fmt.Errorf("policy: stopped at age %d: %w", h.FirstAge+t, context.Cause(ctx))
+			return nil, fmt.Errorf("policy: stopped at age %d: %w", age, context.Cause(ctx))
 		}
 		if err := s.year(t); err != nil {
 			return nil, err
 		}
-		if o.OnAge != nil {
-			o.OnAge(h.FirstAge + t)
+		if s.o.OnAge != nil {
+			s.o.OnAge(age)
 		}
 	}
 	return &s.rule, nil
@@ -108,7 +114,7 @@ func (s *Solver) begin(h Household, o Options) error {
 	if !limited {
 		top -= o.LowestAssets
 	}
-	s.problem = problem{h: h, o: o, bounds: bounds, marginal: marginalOf(h, s.marginal), returns: 1 + h.Return,
+	s.problem = problem{h: h, o: o, bounds: bounds, marginal: marginalOf(h, s.marginal),
 		offsets: assetOffsets(o.AssetPoints, top, o.AssetScale, limited)}
 	for i := 0; i < len(s.offsets)-1; i += max(1, len(s.offsets)/sparseNodes) {
 		s.sparse = append(s.sparse, s.offsets[i])
@@ -130,7 +136,7 @@ func (s *Solver) begin(h Household, o Options) error {
 // year solves year t from next year's records and leaves its own in their place.
 func (s *Solver) year(t int) error {
 	all := s.rule.Curves[t]
-	s.sound = true
+	s.sound, s.returns = true, 1+s.h.ReturnIn(t+1)
 	switch {
 	case t == s.h.Years()-1 && s.h.Bequest.Weight == 0:
 		for j := range all {
@@ -245,7 +251,7 @@ func (s *Solver) placeAssets(t, from, to int) {
 		}
 		slices.SortFunc(s.kinks, bySighting)
 	}
-	if len(s.kinks) == 0 && s.plain && s.assets[0] == bottom && s.o.Interpolation == Linear {
+	if len(s.kinks) == 0 && s.plain && s.assets[0] == bottom && s.earned == s.returns && s.o.Interpolation == Linear {
 		return // the same grid again
 	}
 	s.plain = len(s.kinks) == 0
@@ -254,7 +260,7 @@ func (s *Solver) placeAssets(t, from, to int) {
 		offsets = s.sparse
 	}
 	s.assets = mergeAssets(s.assets[:0], bottom, offsets, s.kinks, s.tolerance())
-	s.gross = s.gross[:0]
+	s.gross, s.earned = s.gross[:0], s.returns
 	for _, a := range s.assets {
 		s.gross = append(s.gross, s.returns*a)
 	}

@@ -27,7 +27,9 @@ func (h Household) Twin() (Household, error) {
 	twin.Earnings = earnings
 	twin.Pension.FinalEarningsRate, twin.Pension.Flat = 0, 0
 	if h.WorkingYears() < h.Years() {
-		twin.Pension.Flat = h.MeanIncome(h.WorkingYears())
+		whole := h
+		whole.Pension.Worth = nil // the twin's pension lags behind prices as h's does
+		twin.Pension.Flat = whole.MeanIncome(h.WorkingYears())
 	}
 	return twin, nil
 }

@@ -30,17 +30,17 @@ type law struct {
 
 // newLaw returns the law of year t of h, but for the rule.
 func newLaw(h *policy.Household, t int, want Columns, tables *tableCache) law {
-	l := law{returns: 1 + h.Return, working: h.Working(t), survive: of32(h.Survival[t]), moves: h.Moves(t)}
+	l := law{returns: 1 + h.ReturnIn(t), working: h.Working(t), survive: of32(h.Survival[t]), moves: h.Moves(t)}
 	e := h.Earnings
 	l.form = e.Form
 	if !l.working {
 		l.pension = make([]float64, h.Nodes())
 		for j := range l.pension {
-			l.pension[j] = h.Pension.Amount(e, j)
+			l.pension[j] = h.PensionIn(t, j)
 		}
 		return l
 	}
-	l.base, l.benefit, l.jobLoss, l.sd = e.Base[t], e.Benefit[t], of32(e.JobLoss.Probability), e.Transitory.SD
+	l.base, l.benefit, l.jobLoss, l.sd = e.Base[t], e.Benefit[t], of32(e.JobLossIn(t).Probability), e.TransitorySD(t)
 	if want&Shocks != 0 || l.form == income.Level {
 		l.epsilon = tables.get(tableKey{sd: l.sd})
 	}

@@ -121,7 +121,7 @@ func (c *crew) liveTwins(tp *typePlan, t int, twin []float64, row, end int) int 
 		}
 		return -1
 	}
-	R := 1 + tp.h.Return
+	R := tp.laws[t].returns
 	for i, a := range twin {
 		kept[i] = float64(R*a) + tp.twinMoney[t]
 	}

@@ -1,0 +1,55 @@
+package policy
+
+import (
+	"context"
+	"errors"
+	"fmt"
+)
+
+// Continue returns the rule of a household that from year from on lives as ahead
+// says: the years first … from−1 are solved backwards from ahead's rule of year
+// from, with the returns, earnings and pensions that h has in them, and the rest is
+// ahead's own. With from equal to h's years everything is solved and ahead is not
+// looked at. Curves before first are nil.
+//
+// It serves problems that change from year to year: a household that at some age
+// learns of a change, and knows how long it lasts, follows this rule from that age
+// on. That the years from from on are those of ahead's household is the caller's
+// part to see to.
+//
+// Faults are reported as by [Solve].
+func Continue(ctx context.Context, h Household, o Options, ahead *Rule, from, first int) (*Rule, error) {
+	if err := errors.Join(h.Validate(), o.Validate()); err != nil {
+		return nil, err
+	}
+	T := h.Years()
+	if first < 0 || from < first || from > T || from < T && (len(ahead.Curves) != T || len(ahead.Curves[from]) != h.Nodes()) {
+		panic(fmt.Sprintf("policy: years %d to %d of %d cannot go on from that rule", first, from-1, T))
+	}
+	s := NewSolver(from - first)
+	if err := s.begin(h, o); err != nil {
+		return nil, err
+	}
+	if from < T {
+		for t := from; t < T; t++ {
+			s.rule.Curves[t] = ahead.Curves[t]
+		}
+		s.takeUp(ahead.Curves[from])
+	}
+	for t := range first {
+		s.rule.Curves[t] = nil
+	}
+	return s.back(ctx, first, from)
+}
+
+// takeUp makes curves the rule of next year.
+func (s *Solver) takeUp(curves []Curve) {
+	for j := range curves {
+		c := &curves[j]
+		if s.lined() {
+			s.next.setLines(j, c, make([]float64, len(c.Cash)+1), s.tolerance(), s.shift)
+		} else {
+			s.next.set(j, c, s.tolerance(), s.shift)
+		}
+	}
+}
