@@ -16,6 +16,7 @@ const (
 	Fates                          // Died
 	Propensity                     // Propensity, AtLimit
 	Twins                          // TwinAssets, TwinConsumption
+	Changes                        // LastAssets, LastConsumption, JobLost
 	All        Columns = 1<<iota - 1
 )
 
@@ -56,6 +57,9 @@ type Block struct {
 	AtLimit         []bool    // the borrowing limit binds
 	TwinAssets      []float64 // of the certain twin; NaN where the type has none
 	TwinConsumption []float64
+	LastAssets      []float64 // at the end of last year; in the first year those it began with
+	LastConsumption []float64 // last year's; NaN in a household's first year
+	JobLost         []bool    // earnings are lost this year
 }
 
 // resize makes room for n rows in the columns that are wanted.
@@ -85,6 +89,9 @@ func (b *Block) resize(n int, want Columns) {
 	if want&Propensity != 0 {
 		b.AtLimit = grow(b.AtLimit, n)
 	}
+	if want&Changes != 0 {
+		b.JobLost = grow(b.JobLost, n)
+	}
 	float(&b.Persistent, States)
 	float(&b.Transitory, Shocks)
 	float(&b.Earnings, Sources)
@@ -93,6 +100,8 @@ func (b *Block) resize(n int, want Columns) {
 	float(&b.Propensity, Propensity)
 	float(&b.TwinAssets, Twins)
 	float(&b.TwinConsumption, Twins)
+	float(&b.LastAssets, Changes)
+	float(&b.LastConsumption, Changes)
 }
 
 // grow returns a slice of length n that begins with x's entries.

@@ -19,6 +19,7 @@ type crew struct {
 	streams []state
 	node    []uint8
 	assets  []float64 // at the end of last year
+	spent   []float64 // consumption of last year; NaN before the first
 	twin    []float64 // the twins' assets
 	lives   []int32   // by place in the block: years lived
 	slots   []int32   // of every row, where Position is wanted
@@ -40,7 +41,8 @@ type birth struct {
 func newCrew(pl *plan, want Columns) *crew {
 	c := &crew{pl: pl, want: want, members: make([][]int32, len(pl.types)), births: make([]birth, Unit),
 		slot: make([]int32, Unit), streams: make([]state, Unit), node: make([]uint8, Unit),
-		assets: make([]float64, Unit), twin: make([]float64, Unit), lives: make([]int32, Unit), dead: make([]int32, 0, Unit), counts: make([]Count, len(pl.p.Groups))}
+		assets: make([]float64, Unit), spent: make([]float64, Unit), twin: make([]float64, Unit), lives: make([]int32, Unit),
+		dead: make([]int32, 0, Unit), counts: make([]Count, len(pl.p.Groups))}
 	rows := int(Unit * pl.longestLife() * 1.03)
 	c.out.resize(rows, want)
 	if want&Order != 0 {
@@ -105,6 +107,7 @@ func (c *crew) live(k int) error {
 	for i, place := range c.members[k] {
 		b := &c.births[place]
 		c.slot[i], c.streams[i], c.node[i], c.assets[i], c.twin[i] = place, b.stream, b.node, b.assets, b.assets
+		c.spent[i] = math.NaN()
 	}
 	for t := 0; t < c.pl.years && alive > 0; t++ {
 		row := c.out.N
@@ -135,7 +138,7 @@ func (c *crew) bury(t, alive int) int {
 		c.lives[c.slot[i]] = int32(t + 1)
 		alive--
 		c.slot[i], c.streams[i], c.node[i] = c.slot[alive], c.streams[alive], c.node[alive]
-		c.assets[i], c.twin[i] = c.assets[alive], c.twin[alive]
+		c.assets[i], c.spent[i], c.twin[i] = c.assets[alive], c.spent[alive], c.twin[alive]
 	}
 	return alive
 }

@@ -114,6 +114,17 @@ func (l *law) shocks(x0, x2 []uint64, epsilon []float64, employed []bool) {
 	}
 }
 
+// jobLosses says who loses earnings, from the year's draws 2.
+func (l *law) jobLosses(x2 []uint64, lost []bool) {
+	if l.jobLoss == 0 {
+		clear(lost)
+		return
+	}
+	for i, x := range x2[:len(lost)] {
+		lost[i] = x>>32 < l.jobLoss
+	}
+}
+
 // retire sets the income of a retired year.
 func (l *law) retire(node []uint8, y []float64) {
 	var pension [256]float64

@@ -37,7 +37,7 @@ func (b *Block) hash(sum uint64) uint64 {
 	for k, id := range b.Household {
 		sum = scramble(sum + uint64(id)<<32 + uint64(b.Position[k]))
 		sum = scramble(sum + uint64(b.Node[k]))
-		for _, flag := range []bool{b.Employed[k], b.Died[k], b.AtLimit[k]} {
+		for _, flag := range []bool{b.Employed[k], b.Died[k], b.AtLimit[k], b.JobLost[k]} {
 			if sum = sum<<1 | sum>>63; flag {
 				sum++
 			}

@@ -28,6 +28,11 @@ func (c *crew) year(tp *typePlan, t, from, to, row int) error {
 	if c.highestCash = math.Max(c.highestCash, highest); highest > l.top {
 		c.counts[tp.group].AboveTop += l.above(node, cash)
 	}
+	if c.want&Changes != 0 {
+		copy(b.LastAssets[row:end], c.assets[from:to])
+		copy(b.LastConsumption[row:end], c.spent[from:to])
+		copy(c.spent[from:to], consumption)
+	}
 	copy(c.assets[from:to], assets)
 	c.describe(tp, l, from, to, row)
 	if c.want&Twins != 0 {
@@ -87,6 +92,9 @@ func (c *crew) work(l *law, from, to, row int) {
 	if c.want&Shocks != 0 {
 		l.shocks(x0, x2, b.Transitory[row:end], b.Employed[row:end])
 	}
+	if c.want&Changes != 0 {
+		l.jobLosses(x2, b.JobLost[row:end])
+	}
 	if c.want&Sources != 0 {
 		copy(b.Earnings[row:end], y)
 		clear(b.Pension[row:end])
@@ -102,6 +110,9 @@ func (c *crew) retire(l *law, node []uint8, row, end int) {
 	if c.want&Shocks != 0 {
 		clear(b.Transitory[row:end])
 		clear(b.Employed[row:end])
+	}
+	if c.want&Changes != 0 {
+		clear(b.JobLost[row:end])
 	}
 	if c.want&Sources != 0 {
 		clear(b.Earnings[row:end])
