@@ -20,9 +20,13 @@ const (
 	All        Columns = 1<<iota - 1
 )
 
+// underEvent marks the columns of an event. It is set where there is one.
+const underEvent Columns = 1 << 31
+
 // Run is a stretch of rows with one year and type: From ≤ row < To.
 type Run struct {
 	T, Type, Group int // year from the first age, type, group
+	Year           int // calendar year, under an [Event]; 0 without
 	From, To       int
 }
 
@@ -60,6 +64,15 @@ type Block struct {
 	LastAssets      []float64 // at the end of last year; in the first year those it began with
 	LastConsumption []float64 // last year's; NaN in a household's first year
 	JobLost         []bool    // earnings are lost this year
+
+	// Under an Event only, for every row: the same household, with the same draws,
+	// under the event.
+	EventIncome      []float64
+	EventConsumption []float64
+	EventAssets      []float64
+	EventJobLost     []bool    // where JobLost is filled
+	Lowest           []float64 // the lowest assets that the borrowing limit allows, −Inf without limit
+	EventLowest      []float64
 }
 
 // resize makes room for n rows in the columns that are wanted.
@@ -102,6 +115,14 @@ func (b *Block) resize(n int, want Columns) {
 	float(&b.TwinConsumption, Twins)
 	float(&b.LastAssets, Changes)
 	float(&b.LastConsumption, Changes)
+	float(&b.EventIncome, underEvent)
+	float(&b.EventConsumption, underEvent)
+	float(&b.EventAssets, underEvent)
+	float(&b.Lowest, underEvent)
+	float(&b.EventLowest, underEvent)
+	if want&underEvent != 0 && want&Changes != 0 {
+		b.EventJobLost = grow(b.EventJobLost, n)
+	}
 }
 
 // grow returns a slice of length n that begins with x's entries.
@@ -121,6 +142,7 @@ type StateError struct {
 	Age         int
 	Household   int64
 	Twin        bool    // it is the household's certain twin
+	Event       bool    // it is the household under the event
 	Cash        float64 // money
 	Consumption float64 // money
 }
@@ -130,7 +152,10 @@ func (e *StateError) Error() string {
 	if e.Twin {
 		who = "the certain twin of "
 	}
-	return fmt.Sprintf("sim: %shousehold %d (group %s) at age %d has cash-on-hand %.6g and would consume %.6g, which its utility does not allow: "+
-		"its start assets or income can fall lower than its borrowing limit or subsistence reckons with",
-		who, e.Household, e.Group, e.Age, e.Cash, e.Consumption)
+	why := "its start assets or income can fall lower than its borrowing limit or subsistence reckons with"
+	if e.Event {
+		why = "under the event its income or assets fall lower than its borrowing limit or subsistence reckons with"
+	}
+	return fmt.Sprintf("sim: %shousehold %d (group %s) at age %d has cash-on-hand %.6g and would consume %.6g, which its utility does not allow: %s",
+		who, e.Household, e.Group, e.Age, e.Cash, e.Consumption, why)
 }

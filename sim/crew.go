@@ -23,6 +23,7 @@ type crew struct {
 	twin    []float64 // the twins' assets
 	lives   []int32   // by place in the block: years lived
 	slots   []int32   // of every row, where Position is wanted
+	event   *eventCrew
 
 	x0, x1, x2  [chunk]uint64
 	dead        []int32
@@ -44,7 +45,12 @@ func newCrew(pl *plan, want Columns) *crew {
 		assets: make([]float64, Unit), spent: make([]float64, Unit), twin: make([]float64, Unit), lives: make([]int32, Unit),
 		dead: make([]int32, 0, Unit), counts: make([]Count, len(pl.p.Groups))}
 	rows := int(Unit * pl.longestLife() * 1.03)
-	c.out.resize(rows, want)
+	if pl.event != nil {
+		c.event = newEventCrew()
+		c.want |= underEvent
+		rows = min(rows, Unit*(pl.event.last-pl.event.first+1))
+	}
+	c.out.resize(rows, c.want)
 	if want&Order != 0 {
 		c.slots = make([]int32, 0, rows)
 	}
@@ -59,10 +65,15 @@ func (c *crew) block(first int64, n int) error {
 	c.slots = c.slots[:0]
 	c.bear(first, n)
 	for k := range c.members {
-		if len(c.members[k]) > 0 {
-			if err := c.live(k); err != nil {
-				return err
-			}
+		if len(c.members[k]) == 0 {
+			continue
+		}
+		live := c.live
+		if c.event != nil {
+			live = c.liveThrough
+		}
+		if err := live(k); err != nil {
+			return err
 		}
 	}
 	c.out.resize(c.out.N, c.want)
@@ -103,12 +114,7 @@ func (c *crew) bear(first int64, n int) {
 func (c *crew) live(k int) error {
 	tp := &c.pl.types[k]
 	alive := len(c.members[k])
-	c.counts[tp.group].Households += int64(alive)
-	for i, place := range c.members[k] {
-		b := &c.births[place]
-		c.slot[i], c.streams[i], c.node[i], c.assets[i], c.twin[i] = place, b.stream, b.node, b.assets, b.assets
-		c.spent[i] = math.NaN()
-	}
+	c.begin(k)
 	for t := 0; t < c.pl.years && alive > 0; t++ {
 		row := c.out.N
 		c.out.N += alive
@@ -129,6 +135,16 @@ func (c *crew) live(k int) error {
 		alive = c.bury(t, alive)
 	}
 	return nil
+}
+
+// begin makes the households of type k those that live, in the order of members.
+func (c *crew) begin(k int) {
+	c.counts[c.pl.types[k].group].Households += int64(len(c.members[k]))
+	for i, place := range c.members[k] {
+		b := &c.births[place]
+		c.slot[i], c.streams[i], c.node[i], c.assets[i], c.twin[i] = place, b.stream, b.node, b.assets, b.assets
+		c.spent[i] = math.NaN()
+	}
 }
 
 // bury replaces the dead, noted in ascending order, by the last of the living.

@@ -51,13 +51,19 @@ func newLaw(h *policy.Household, t int, want Columns, tables *tableCache) law {
 	return l
 }
 
-// follow sets the rule of year t.
+// follow sets the rule to year t of r.
 func (l *law) follow(r *policy.Rule, t int) {
-	l.rule = r.Table(t)
-	l.top = math.Inf(1)
-	for j := range r.Curves[t] {
-		l.top = math.Min(l.top, l.rule.Top(j))
-		l.bound = append(l.bound, r.Curves[t][j].Bound)
+	bounds := make([]float64, len(r.Curves[t]))
+	for j := range bounds {
+		bounds[j] = r.Curves[t][j].Bound
+	}
+	l.setRule(r.Table(t), bounds)
+}
+
+func (l *law) setRule(table *policy.Table, bounds []float64) {
+	l.rule, l.bound, l.top = table, bounds, math.Inf(1)
+	for j := range bounds {
+		l.top = math.Min(l.top, table.Top(j))
 	}
 }
 
@@ -122,6 +128,13 @@ func (l *law) jobLosses(x2 []uint64, lost []bool) {
 	}
 	for i, x := range x2[:len(lost)] {
 		lost[i] = x>>32 < l.jobLoss
+	}
+}
+
+// lowest sets the lowest assets that the limit allows.
+func (l *law) lowest(dst []float64, node []uint8) {
+	for i, j := range node[:len(dst)] {
+		dst[i] = l.bound[j]
 	}
 }
 

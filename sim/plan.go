@@ -14,6 +14,7 @@ type plan struct {
 	p     *Population
 	years int
 	types []typePlan
+	event *eventPlan // nil without an event
 }
 
 // typePlan is what the years of one type need.
@@ -34,8 +35,9 @@ type typePlan struct {
 	start     Start
 }
 
-// newPlan prepares p for simulation with the wanted columns.
-func newPlan(p *Population, want Columns) *plan {
+// newPlan prepares p for simulation with the wanted columns, through e unless it is
+// nil.
+func newPlan(p *Population, want Columns, e *Event) *plan {
 	pl := &plan{p: p, years: p.Years(), types: make([]typePlan, len(p.Types))}
 	tables := tableCache{}
 	var wg sync.WaitGroup
@@ -54,6 +56,9 @@ func newPlan(p *Population, want Columns) *plan {
 		}()
 	}
 	wg.Wait()
+	if e != nil {
+		pl.event = newEventPlan(pl, e, want, &tables)
+	}
 	return pl
 }
 

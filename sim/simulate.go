@@ -15,6 +15,7 @@ type Options struct {
 	Columns Columns // optional columns to fill
 	From    int64   // first household id; a multiple of Unit
 	To      int64   // one past the last id; 0: all
+	Event   *Event  // what households meet; nil: nothing
 
 	// OnProgress, if set, is called after every block, one call at a time, with the
 	// number of households done and to do.
@@ -65,6 +66,11 @@ func Simulate(ctx context.Context, p *Population, o Options, work Work) (Result,
 	if o.From < 0 || o.From%Unit != 0 || o.To < o.From || o.To > p.Households {
 		return Result{}, fmt.Errorf("sim: households %d to %d: want a range within 0 to %d that begins at a multiple of %d", o.From, o.To, p.Households, Unit)
 	}
+	if o.Event != nil {
+		if err := o.Event.validate(p, o.Columns); err != nil {
+			return Result{}, err
+		}
+	}
 	r := newRunner(ctx, p, o, work)
 	var wg sync.WaitGroup
 	blocks := (o.To - o.From + Unit - 1) / Unit
@@ -101,7 +107,7 @@ type runner struct {
 }
 
 func newRunner(ctx context.Context, p *Population, o Options, work Work) *runner {
-	r := &runner{ctx: ctx, p: p, o: o, work: work, plan: newPlan(p, o.Columns), committed: o.From,
+	r := &runner{ctx: ctx, p: p, o: o, work: work, plan: newPlan(p, o.Columns, o.Event), committed: o.From,
 		result: Result{Groups: make([]Count, len(p.Groups))}}
 	r.next.Store(o.From)
 	r.turn = sync.NewCond(&r.mu)

@@ -42,6 +42,11 @@ func (c *crew) year(tp *typePlan, t, from, to, row int) error {
 			return err
 		}
 	}
+	if c.event != nil {
+		if err := c.yearThrough(tp, t, from, to, row); err != nil {
+			return err
+		}
+	}
 	drawFates(c.streams[from:to], c.x1[:to-from])
 	c.fates(tp, l, from, node, row, end)
 	return nil
