@@ -1,0 +1,198 @@
+package distribution
+
+import (
+	"math"
+	"slices"
+	"sync"
+	"sync/atomic"
+
+	"cistern/output/stats"
+)
+
+// At most sorters samples are sorted at a time, and of those that hold more than
+// smallShare of the rows one: fixed, so that the choice of method does not depend
+// on the number of workers.
+const (
+	sorters    = 4
+	smallShare = 0.125
+)
+
+// result is what is known of one held variable in one target.
+type result struct {
+	rows  int64   // with a value
+	total int64   // their weight in units
+	scale float64 // units per weight; 0: every row is one unit
+
+	levels    []float64  // of the quantiles, in percent
+	quantiles []quantile // by level
+	gini      stats.Estimate
+	giniBound float64 // on the error of gini.Value from binning; 0 where exact
+	squares   float64 // Σ units²
+	edges     []edge  // thresholds of partial sums, in the order of Options
+	partial   *partial
+}
+
+// edge is the value at which the cumulated weight reaches rank, in units.
+type edge struct {
+	rank  int64
+	value float64
+}
+
+// unit is the weight of a row in a cell of the given weight, in whole units.
+func (r *result) unit(weight float64) uint64 {
+	if r.scale == 0 {
+		return 1
+	}
+	return units(weight, r.scale)
+}
+
+// size counts the rows of a result and sets the unit of its weights: the whole
+// weighs about 2^61 units, more than a float tells apart.
+func (s *Study) size(k int) {
+	t, v := &s.o.Targets[k/len(s.held)], s.held[k%len(s.held)]
+	r := &s.results[k]
+	mass := 0.0
+	for _, c := range t.Cells {
+		m := &s.moments[c.Index]
+		if m.vars == nil {
+			continue
+		}
+		for g := range m.vars[v].sums {
+			mass += float64(c.Weight * m.vars[v].sums[g].mass)
+			r.rows += int64(m.vars[v].sums[g].mass) // rows, where rows have no weights
+		}
+	}
+	if mass == 0 {
+		r.rows = 0
+		return
+	}
+	if s.o.Weighted || t.weighted() {
+		r.scale = math.Ldexp(1, 61) / mass
+	}
+	if s.o.Weighted {
+		r.rows = 0 // counted when they are sorted
+		return
+	}
+	for _, c := range t.Cells {
+		if m := &s.moments[c.Index]; m.vars != nil {
+			u := r.unit(c.Weight)
+			for g := range m.vars[v].sums {
+				n := m.vars[v].sums[g].mass
+				r.total += int64(n) * int64(u)
+				r.squares += n * float64(u) * float64(u)
+			}
+		}
+	}
+}
+
+// analyseStore describes what the store holds, result by result. If the store is
+// whole, quantiles are final; otherwise it is a sample that yields the errors of
+// Gini coefficients and the design effects, and the quantiles remain to be found.
+func (s *Study) analyseStore(whole bool) {
+	index := s.store.index(s.o.Cells)
+	var next atomic.Int64
+	var wg sync.WaitGroup
+	var large sync.Mutex
+	for range min(s.o.Workers, sorters) {
+		wg.Go(func() {
+			var so sampler
+			for {
+				k := int(next.Add(1)) - 1
+				if k >= len(s.results) {
+					return
+				}
+				t := &s.o.Targets[k/len(s.held)]
+				if float64(len(t.Cells)) > smallShare*float64(s.o.Cells) {
+					large.Lock()
+					s.analyse(new(sampler), index, k, whole)
+					large.Unlock()
+					continue
+				}
+				s.analyse(&so, index, k, whole)
+			}
+		})
+	}
+	wg.Wait()
+}
+
+// analyse describes result k.
+func (s *Study) analyse(so *sampler, index [][]piece, k int, whole bool) {
+	r := &s.results[k]
+	nan := math.NaN()
+	r.gini = stats.Estimate{Value: nan, StandardError: nan, Lower: nan, Upper: nan}
+	t, slot := &s.o.Targets[k/len(s.held)], k%len(s.held)
+	wants := t.Wants[s.held[slot]]
+	if wants == 0 || r.rows == 0 && !s.o.Weighted {
+		return
+	}
+	so.load(index, t, slot, r.scale)
+	if s.o.Weighted {
+		r.rows, r.total = int64(so.whole.rows), 0
+		for _, u := range so.units {
+			r.total += int64(u)
+		}
+	}
+	if r.rows == 0 || r.total == 0 {
+		r.rows = 0
+		return
+	}
+	switch {
+	case wants&Percentiles != 0:
+		r.levels = s.o.Percentiles
+	case wants&Median != 0:
+		r.levels = []float64{50}
+	}
+	for _, p := range r.levels {
+		effect := 1.0
+		if !t.Independent {
+			effect = so.designEffect(p / 100)
+		}
+		r.quantiles = append(r.quantiles, plan(r.rows, r.total, r.scale > 0, p/100, effect))
+	}
+	if wants&Gini != 0 {
+		value, se, groups := so.gini()
+		r.gini = stats.JackknifeInterval(value, se*math.Sqrt(so.whole.rows/float64(r.rows)), groups, confidence)
+	}
+	if wants&sums != 0 {
+		r.planEdges(&s.o)
+	}
+	if whole {
+		at := map[int64]float64{}
+		w := so.walk()
+		for _, rank := range r.ranks() {
+			at[rank] = w.at(rank)
+		}
+		r.set(at)
+	}
+}
+
+// setGini puts the coefficient of binned values in place of the sample's.
+func (r *result) setGini(bins []bin) {
+	value, bound := giniOfBins(bins, float64(r.rows), r.squares)
+	half := (r.gini.Upper - r.gini.Lower) / 2
+	r.gini = stats.Estimate{Value: value, StandardError: r.gini.StandardError, Lower: value - half, Upper: value + half}
+	r.giniBound = bound
+}
+
+// ranks lists all positions that the result needs, ascending, each once.
+func (r *result) ranks() []int64 {
+	var ranks []int64
+	for i := range r.quantiles {
+		ranks = append(ranks, r.quantiles[i].ranks(r.total)...)
+	}
+	for _, e := range r.edges {
+		ranks = append(ranks, e.rank)
+	}
+	slices.Sort(ranks)
+	return slices.Compact(ranks)
+}
+
+// set fills in the values found at the positions.
+func (r *result) set(at map[int64]float64) {
+	for i := range r.quantiles {
+		r.quantiles[i].set(r.total, func(rank int64) float64 { return at[rank] })
+	}
+	for i := range r.edges {
+		r.edges[i].value = at[r.edges[i].rank]
+	}
+}

@@ -1,0 +1,334 @@
+package distribution
+
+import (
+	"math"
+
+	"cistern/output/stats"
+)
+
+// Result is what a finished study says of one target. Variables are numbered as in
+// Options.Variables, levels as in the lists of Options. A figure that does not
+// exist (of no rows, of a concentration where the mean is not positive, of a bound
+// beyond the extremes) is NaN.
+type Result struct {
+	s      *Study
+	t      *Target
+	target int
+	sums   *cellSums
+}
+
+// Target returns what the study says of target i. It panics before the last
+// EndPass.
+func (s *Study) Target(i int) *Result {
+	if s.phase != done {
+		panic("distribution: study is not finished")
+	}
+	t := &s.o.Targets[i]
+	return &Result{s: s, t: t, target: i, sums: s.pool(t)}
+}
+
+// CellRows returns the number of rows of a cell.
+func (s *Study) CellRows(cell int) int64 {
+	var n int64
+	for _, m := range s.moments[cell].rows {
+		n += m
+	}
+	return n
+}
+
+// Rows returns the number of rows of the target, with a value of any variable or
+// without.
+func (r *Result) Rows() int64 {
+	var n int64
+	for _, m := range r.sums.rows {
+		n += m
+	}
+	return n
+}
+
+// values is the number of rows with a value, as far as it is known: rows with
+// weights that lack one count.
+func (r *Result) values(v int) float64 {
+	if r.s.o.Weighted {
+		return float64(r.Rows())
+	}
+	n := 0.0
+	for _, c := range r.t.Cells {
+		if m := &r.s.moments[c.Index]; m.vars != nil {
+			n += m.vars[v].total().mass
+		}
+	}
+	return n
+}
+
+// Values returns the number of rows with a value of variable v; of weighted rows,
+// where v is not Held, the number of rows.
+func (r *Result) Values(v int) int64 {
+	if k := r.s.slot[v]; k >= 0 && r.t.Wants[v] != 0 {
+		return r.of(v).rows
+	}
+	return int64(r.values(v))
+}
+
+var missing = stats.Estimate{Value: math.NaN(), StandardError: math.NaN(), Lower: math.NaN(), Upper: math.NaN()}
+
+// Mean returns the mean of variable v.
+func (r *Result) Mean(v int) stats.Estimate {
+	if !r.sums.vars[v].any {
+		return missing
+	}
+	return r.sums.vars[v].mean()
+}
+
+// SD returns the standard deviation of variable v, with the factor n/(n−1).
+func (r *Result) SD(v int) stats.Estimate {
+	if !r.sums.vars[v].any {
+		return missing
+	}
+	return r.sums.vars[v].sd(r.values(v))
+}
+
+// Share returns the share of rows that threshold i of variable v counts.
+func (r *Result) Share(v, i int) stats.Estimate {
+	if !r.sums.vars[v].any {
+		return missing
+	}
+	return r.sums.vars[v].share(i, r.values(v), r.t.Independent)
+}
+
+// Proportion returns the mean of variable v, which is 0 or 1, with the interval of
+// a share.
+func (r *Result) Proportion(v int) stats.Estimate {
+	e := r.Mean(v)
+	if math.IsNaN(e.Value) {
+		return e
+	}
+	n := r.values(v)
+	if p := e.Value; !r.t.Independent && e.StandardError > 0 {
+		n = min(n, p*(1-p)/(e.StandardError*e.StandardError))
+	}
+	e.Lower, e.Upper = stats.ProportionInterval(e.Value, max(1, n), confidence)
+	return e
+}
+
+// Ratio returns the mean of variable v over the mean of variable by; NaN unless the
+// latter is positive.
+func (r *Result) Ratio(v, by int) stats.Estimate {
+	if !r.sums.vars[v].any || !r.sums.vars[by].any {
+		return missing
+	}
+	return r.sums.vars[v].ratio(&r.sums.vars[by])
+}
+
+// of returns the result of a held variable.
+func (r *Result) of(v int) *result {
+	return &r.s.results[r.target*len(r.s.held)+r.s.slot[v]]
+}
+
+// wants panics unless the target asked for the part.
+func (r *Result) wants(v int, part Set) *result {
+	if r.t.Wants[v]&part == 0 {
+		panic("distribution: the target did not ask for this of " + r.s.o.Variables[v].Name)
+	}
+	return r.of(v)
+}
+
+// Percentile returns percentile i of variable v.
+func (r *Result) Percentile(v, i int) stats.Estimate {
+	k := r.wants(v, Percentiles)
+	if k.rows == 0 {
+		return missing
+	}
+	return k.quantiles[i].value
+}
+
+// Median returns the median of variable v, of a target that asked for Median alone.
+func (r *Result) Median(v int) stats.Estimate {
+	k := r.wants(v, Median)
+	if k.rows == 0 {
+		return missing
+	}
+	for i, level := range k.levels {
+		if level == 50 {
+			return k.quantiles[i].value
+		}
+	}
+	return missing
+}
+
+// Gini returns the Gini coefficient of variable v, half the mean absolute
+// difference between two rows drawn without replacement over the mean.
+func (r *Result) Gini(v int) stats.Estimate { return r.wants(v, Gini).gini }
+
+// GiniBound returns by how much the Gini coefficient may be off since it comes from
+// binned values: 0 where it does not.
+func (r *Result) GiniBound(v int) float64 { return r.wants(v, Gini).giniBound }
+
+// Lorenz returns the share of the total that the poorest Options.Lorenz[i] per cent
+// have.
+func (r *Result) Lorenz(v, i int) stats.Estimate {
+	k := r.wants(v, Concentration)
+	return k.share(func(h *held) float64 { return h.lorenz(r.s.o.Lorenz[i]/100, i) })
+}
+
+// TopShare returns the share of the total that the richest Options.TopShares[i] per
+// cent have.
+func (r *Result) TopShare(v, i int) stats.Estimate {
+	k, o := r.wants(v, Concentration), &r.s.o
+	return k.share(func(h *held) float64 { return 1 - h.lorenz(1-o.TopShares[i]/100, len(o.Lorenz)+i) })
+}
+
+// QuintileRatio returns S80/S20: what the richest fifth have over what the poorest
+// fifth have; NaN unless the poorest fifth have something.
+func (r *Result) QuintileRatio(v int) stats.Estimate {
+	k, o := r.wants(v, Concentration), &r.s.o
+	at := len(o.Lorenz) + len(o.TopShares)
+	return k.share(func(h *held) float64 {
+		poorest := h.lorenz(0.2, at)
+		if !(poorest > 0) {
+			return math.NaN()
+		}
+		return (1 - h.lorenz(0.8, at+1)) / poorest
+	})
+}
+
+// Shortfall returns the mean of the lowest Options.Shortfalls[i] per cent.
+func (r *Result) Shortfall(v, i int) stats.Estimate {
+	k, o := r.wants(v, Shortfall), &r.s.o
+	at := len(o.Lorenz) + len(o.TopShares) + 2 + i
+	p := o.Shortfalls[i] / 100
+	return k.share(func(h *held) float64 { return h.lowest(p, at) / (p * h.mass) })
+}
+
+// Hill returns Hill's index of the upper Options.Tails[i] per cent, with the number
+// of rows above the threshold. It is NaN unless the threshold is positive.
+func (r *Result) Hill(v, i int) (alpha stats.Estimate, rows int64) {
+	k, o := r.wants(v, Tail), &r.s.o
+	if k.partial == nil {
+		return missing, 0
+	}
+	at := k.partial.of[len(o.Lorenz)+len(o.TopShares)+2+len(o.Shortfalls)+i]
+	if !(k.partial.limits[at] > 0) {
+		return missing, 0
+	}
+	above := 0.0
+	for class := at + 1; class < len(k.partial.own.mass); class++ {
+		for g := range Groups {
+			above += k.partial.own.mass[class][g]
+		}
+	}
+	alpha = k.share(func(h *held) float64 {
+		mass, logs := 0.0, 0.0
+		for g := range Groups {
+			if g != h.without {
+				logs += k.partial.logs[i][g]
+				for class := at + 1; class < len(k.partial.own.mass); class++ {
+					mass += k.partial.own.mass[class][g]
+				}
+			}
+		}
+		return mass / logs
+	})
+	return alpha, int64(math.Round(above / float64(k.total) * float64(k.rows)))
+}
+
+// MeanIn returns the mean of Options.Means[m] among the rows in class, from 0, of
+// variable v. Rows of one value are in one class, the lower.
+func (r *Result) MeanIn(v, class, m int) stats.Estimate {
+	k, o := r.wants(v, Classes), &r.s.o
+	if k.partial == nil {
+		return missing
+	}
+	first := len(o.Lorenz) + len(o.TopShares) + 2 + len(o.Shortfalls) + len(o.Tails)
+	from, to := 0, len(k.partial.own.mass)
+	if class > 0 {
+		from = k.partial.of[first+class-1] + 1
+	}
+	if class < o.Classes-1 {
+		to = k.partial.of[first+class] + 1
+	}
+	c := &k.partial.means[m]
+	var masses, sums [Groups]float64
+	var mass, sum float64
+	for j := from; j < to; j++ {
+		for g := range Groups {
+			masses[g] += c.mass[j][g]
+			sums[g] += c.sum[j][g]
+		}
+	}
+	for g := range Groups {
+		mass += masses[g]
+		sum += sums[g]
+	}
+	if mass == 0 {
+		return missing
+	}
+	return jackknife(&masses, func(without int) float64 {
+		if without < 0 {
+			return sum / mass
+		}
+		return (sum - sums[without]) / (mass - masses[without])
+	})
+}
+
+// held is a sample of partial sums, all of it or without a jackknife group.
+type held struct {
+	p           *partial
+	without     int
+	mass, total float64 // Σ w, Σ w·x
+}
+
+// share returns a figure made of partial sums with its error.
+func (k *result) share(of func(*held) float64) stats.Estimate {
+	if k.partial == nil {
+		return missing
+	}
+	var masses [Groups]float64
+	var sums [Groups]float64
+	h := held{p: k.partial}
+	for class := range k.partial.own.mass {
+		for g := range Groups {
+			masses[g] += k.partial.own.mass[class][g]
+			sums[g] += k.partial.own.sum[class][g]
+		}
+	}
+	for g := range Groups {
+		h.mass += masses[g]
+		h.total += sums[g]
+	}
+	all := h
+	return jackknife(&masses, func(without int) float64 {
+		h := all
+		if h.without = without; without >= 0 {
+			h.mass -= masses[without]
+			h.total -= sums[without]
+		}
+		return of(&h)
+	})
+}
+
+// lowest returns p·N·x_p − D_p, what the lowest share p have, the threshold being
+// that of edge i.
+func (h *held) lowest(p float64, i int) float64 {
+	at := h.p.of[i]
+	x := h.p.limits[at]
+	mass, sum := 0.0, 0.0
+	for class := range at + 1 {
+		for g := range Groups {
+			if g != h.without {
+				mass += h.p.own.mass[class][g]
+				sum += h.p.own.sum[class][g]
+			}
+		}
+	}
+	return p*h.mass*x - (x*mass - sum)
+}
+
+// lorenz is what the lowest share p have of the total; NaN unless that is
+// positive.
+func (h *held) lorenz(p float64, i int) float64 {
+	if !(h.total > 0) {
+		return math.NaN()
+	}
+	return h.lowest(p, i) / h.total
+}

@@ -1,0 +1,171 @@
+package distribution
+
+import "math"
+
+// Bytes that a held value takes, those that a row takes beside, and those that a
+// value takes while it is sorted.
+const (
+	valueBytes   = 8
+	rowBytes     = 1
+	weightBytes  = 8
+	sortingBytes = 2*(8+4) + 8 + 1
+)
+
+// store holds the values of the blocks that start below end, in the order of
+// blocks.
+type store struct {
+	end    int64
+	blocks []*block
+}
+
+// block holds the values of one block.
+type block struct {
+	spans   []Span
+	values  [][]float64 // [place in Study.stored][row]; the held variables come first, by slot
+	tags    []uint8     // [row] jackknife group
+	weights []float64   // [row]; nil where all weigh the same
+}
+
+func (s *Study) newBlock(r *Rows) *block {
+	b := &block{tags: make([]uint8, r.N), values: make([][]float64, len(s.stored))}
+	for i, v := range s.stored {
+		b.values[i] = append(make([]float64, 0, r.N), r.Values[v][:r.N]...)
+	}
+	for k, u := range r.Unit[:r.N] {
+		b.tags[k] = uint8(u & (Groups - 1))
+	}
+	if s.o.Weighted {
+		b.weights = append(make([]float64, 0, r.N), r.Weight[:r.N]...)
+	}
+	for _, sp := range r.Spans {
+		if sp.From < sp.To {
+			b.spans = append(b.spans, sp)
+		}
+	}
+	return b
+}
+
+// piece is a run of rows of one cell in the store.
+type piece struct {
+	b        *block
+	from, to int
+}
+
+// index lists the pieces of every cell, in the order of blocks.
+func (st *store) index(cells int) [][]piece {
+	index := make([][]piece, cells)
+	for _, b := range st.blocks {
+		for _, sp := range b.spans {
+			index[sp.Cell] = append(index[sp.Cell], piece{b, sp.From, sp.To})
+		}
+	}
+	return index
+}
+
+// sample is the values of one variable in one target, sorted: all of them, or
+// those of the first blocks.
+type sample struct {
+	keys  []uint64
+	tags  []uint8  // [row] jackknife group
+	units []uint64 // [row] weight in whole units; nil where every row is one
+
+	plain [Groups]sizes
+	whole sizes
+}
+
+// sizes are a number of rows and their weight in units.
+type sizes struct{ rows, mass float64 }
+
+// sampler makes samples; its slices are reused.
+type sampler struct {
+	raw sorter
+	sample
+	weights []float64 // [row] before sorting, where rows have weights
+}
+
+// load takes the values of a held variable in the cells of a target and sorts
+// them. scale turns weights into units: the whole target weighs about 2^61. It is
+// 0 where every row is one unit.
+func (so *sampler) load(index [][]piece, t *Target, slot int, scale float64) {
+	so.raw.keys, so.raw.marks, so.weights = so.raw.keys[:0], so.raw.marks[:0], so.weights[:0]
+	rows := false
+	for i, c := range t.Cells {
+		for _, p := range index[c.Index] {
+			for k, x := range p.b.values[slot][p.from:p.to] {
+				if x != x {
+					continue
+				}
+				so.raw.keys = append(so.raw.keys, key(x))
+				if p.b.weights == nil {
+					so.raw.marks = append(so.raw.marks, uint32(i)<<8|uint32(p.b.tags[p.from+k]))
+					continue
+				}
+				rows = true
+				so.raw.marks = append(so.raw.marks, uint32(len(so.weights)))
+				so.weights = append(so.weights, p.b.weights[p.from+k]*t.Cells[i].Weight)
+				so.raw.rowTags = append(so.raw.rowTags[:len(so.weights)-1], p.b.tags[p.from+k])
+			}
+		}
+	}
+	so.raw.sort()
+	so.settle(t, scale, rows)
+}
+
+// settle turns the marks of the sorted rows into groups and weights.
+func (so *sampler) settle(t *Target, scale float64, rows bool) {
+	n := len(so.raw.keys)
+	s := &so.sample
+	s.keys = so.raw.keys
+	s.tags = resize(s.tags, n)
+	s.units = nil
+	s.plain, s.whole = [Groups]sizes{}, sizes{}
+	var ofCell []uint64
+	if scale > 0 {
+		so.raw.spareUnits = resize(so.raw.spareUnits, n)
+		s.units = so.raw.spareUnits
+		for _, c := range t.Cells {
+			ofCell = append(ofCell, units(c.Weight, scale))
+		}
+	}
+	for k, m := range so.raw.marks {
+		unit := uint64(1)
+		switch {
+		case rows:
+			s.tags[k] = so.raw.rowTags[m]
+			unit = units(so.weights[m], scale)
+		default:
+			s.tags[k] = uint8(m)
+			if ofCell != nil {
+				unit = ofCell[m>>8]
+			}
+		}
+		if s.units != nil {
+			s.units[k] = unit
+		}
+		g := &s.plain[s.tags[k]]
+		g.rows++
+		g.mass += float64(unit)
+	}
+	for g := range s.plain {
+		s.whole.rows += s.plain[g].rows
+		s.whole.mass += s.plain[g].mass
+	}
+}
+
+// units is a weight as a whole number.
+func units(weight, scale float64) uint64 { return uint64(math.Round(weight * scale)) }
+
+// unit is the weight of row k.
+func (s *sample) unit(k int) float64 {
+	if s.units == nil {
+		return 1
+	}
+	return float64(s.units[k])
+}
+
+func resize[E any](x []E, n int) []E {
+	if cap(x) < n {
+		return make([]E, n, n+n/4)
+	}
+	return x[:n]
+}
