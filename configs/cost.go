@@ -24,6 +24,9 @@ const (
 	bytesFixed         = 320 << 20
 	kinkNodes          = 1.4 // nodes of a cubic rule over those of the fixed grid
 	bytesPerPolicyNode = 40
+
+	secondsPerPass       = 60e-9 // simulation of a household-year and a look at it
+	secondsPerSecondLife = 40e-9 // of a household-year lived with a transfer
 )
 
 // Cost estimates a run on a number of workers.
@@ -39,7 +42,11 @@ func (sc *Scenario) Cost(workers int) Cost {
 			alive *= s
 		}
 		g := sc.Groups[p.Group]
-		c.HouseholdYears += float64(sc.Households) * g.Share / float64(len(g.Discounts)) * years
+		households := float64(sc.Households) * g.Share / float64(len(g.Discounts))
+		c.HouseholdYears += households * years
+		if t := sc.Experiments.Transfer; t != nil {
+			c.Seconds += households * t.secondLife(h) * secondsPerSecondLife / float64(workers)
+		}
 		points := float64(sc.Solver.AssetPoints)
 		if sc.Solver.Interpolation == policy.Cubic {
 			points *= kinkNodes
@@ -60,6 +67,10 @@ func (sc *Scenario) Cost(workers int) Cost {
 		c.DiskBytes += c.HouseholdYears * bytes
 	}
 	c.DiskBytes += nodes * bytesPerPolicyNode
-	c.Seconds = (c.NodeUpdates*secondsPerUpdate + c.HouseholdYears*perRow) / float64(workers)
+	if t := sc.Experiments.Transfer; t != nil {
+		perRow += 2 * secondsPerPass // wealth, response; with many households a few more
+		c.MemoryBytes += nodes*bytesPerRule/2 + t.bytes(len(sc.Groups), workers)
+	}
+	c.Seconds += (c.NodeUpdates*secondsPerUpdate + c.HouseholdYears*perRow) / float64(workers)
 	return c
 }

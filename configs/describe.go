@@ -28,6 +28,7 @@ func describe(s *section, in *files) *Scenario {
 	readSolver(s.section("solver", "accuracy of the solution", false), sc)
 	readPanel(s.section("panel", "what is written of the panel", false), sc)
 	readSummary(s.section("summary", "what the summary holds", false), sc)
+	readExperiments(s, sc)
 	s.done()
 	for i := range sc.Groups {
 		sc.Groups[i].Start = start

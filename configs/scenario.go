@@ -20,6 +20,8 @@ type Scenario struct {
 	Summary    Summary
 	Inputs     []Input // the files that the scenario names
 
+	Experiments Experiments
+
 	resolved *tree
 }
 

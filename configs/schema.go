@@ -87,6 +87,14 @@ func (d *schema) numbers(f number, def []float64, most int) {
 	d.put(f.key, f.required, p)
 }
 
+func (d *schema) integers(f number, def []int, most int) {
+	p := map[string]any{"type": "array", "items": rangeOf(f.in, "integer"), "minItems": 1, "maxItems": most, "description": f.meaning}
+	if def != nil {
+		p["default"] = def
+	}
+	d.put(f.key, f.required, p)
+}
+
 func (d *schema) words(key, meaning string, def, allowed []string) {
 	d.put(key, false, map[string]any{"type": "array", "items": map[string]any{"enum": allowed}, "uniqueItems": true, "description": meaning, "default": def})
 }

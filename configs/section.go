@@ -261,6 +261,36 @@ func (s *section) numbers(f number, def []float64, most int) []float64 {
 	return x
 }
 
+// integers reads a list of whole numbers.
+func (s *section) integers(f number, def []int, most int) []int {
+	v := s.child(f.key, f.required)
+	s.doc.integers(f, def, most)
+	x := def
+	if v != nil {
+		switch {
+		case v.kind != list:
+			s.fault(v, f.key, "is %s, want a list of whole numbers, such as [1, 2]", v.show())
+		case len(v.values) < 1 || len(v.values) > most:
+			s.fault(v, f.key, "has %d entries, want 1 to %d", len(v.values), most)
+		default:
+			x = nil
+			for i, e := range v.values {
+				entry := f
+				entry.key = fmt.Sprintf("%s[%d]", f.key, i)
+				if y, ok := s.whole(e, entry); ok {
+					x = append(x, int(y))
+				}
+			}
+		}
+	}
+	var words []string
+	for _, y := range x {
+		words = append(words, strconv.Itoa(y))
+	}
+	s.out.put(f.key, "["+strings.Join(words, ", ")+"]")
+	return x
+}
+
 // words reads a list of distinct words out of a few.
 func (s *section) words(key, meaning string, def []string, allowed ...string) []string {
 	v := s.child(key, false)
@@ -297,6 +327,15 @@ func (s *section) section(key, meaning string, required bool) *section {
 		sub.n = &node{kind: mapping, source: s.n.source, line: s.n.line, column: s.n.column}
 	}
 	return sub
+}
+
+// optional reads a mapping whose absence means something: it is nil then.
+func (s *section) optional(key, meaning string) *section {
+	if v := s.n.get(key); s.doc == nil && (v == nil || v.null) {
+		s.child(key, false)
+		return nil
+	}
+	return s.section(key, meaning, false)
 }
 
 // done reports keys that the format does not have.

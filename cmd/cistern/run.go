@@ -24,12 +24,13 @@ type run struct {
 	rules    []*policy.Rule
 	twins    []*policy.Rule
 
-	summary  *output.Summary
-	sample   *sample
-	result   sim.Result
-	accuracy *accuracy
-	timings  []output.Timing
-	warnings []string
+	summary     *output.Summary
+	transferred *output.Transfer // nil: no such experiment
+	sample      *sample
+	result      sim.Result
+	accuracy    *accuracy
+	timings     []output.Timing
+	warnings    []string
 }
 
 // startRun opens the run folder.
@@ -66,7 +67,11 @@ func (r *run) do(ctx context.Context) error {
 		{"simulate", r.simulate},
 		{"accuracy", r.judge},
 		{"tables", r.writeTables},
+		{"transfer", r.transfer},
 	} {
+		if step.name == "transfer" && r.sc.Experiments.Transfer == nil {
+			continue
+		}
 		start := time.Now()
 		if err := step.do(ctx); err != nil {
 			return err

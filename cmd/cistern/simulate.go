@@ -69,6 +69,9 @@ func (r *run) show() error {
 	say("")
 	say("%d households, %d household-years; means over the years of each age band",
 		r.result.Households, r.result.HouseholdYears)
+	if r.transferred != nil {
+		say("transfer: %s", r.transferSentence())
+	}
 	say("files:    %s", r.folder.Dir())
 	say("accuracy: %s", r.accuracy.sentence())
 	for _, w := range r.warnings {

@@ -1,0 +1,139 @@
+package main
+
+import (
+	"encoding/csv"
+	"math"
+	"os"
+	"strconv"
+	"strings"
+	"testing"
+)
+
+// records reads a CSV file as one map a row.
+func records(t *testing.T, file string) []map[string]string {
+	t.Helper()
+	data, err := os.ReadFile(file)
+	if err != nil {
+		t.Fatal(err)
+	}
+	r := csv.NewReader(strings.NewReader(string(data)))
+	r.Comment = '#'
+	lines, err := r.ReadAll()
+	if err != nil {
+		t.Fatal(err)
+	}
+	var all []map[string]string
+	for _, line := range lines[1:] {
+		row := map[string]string{}
+		for i, name := range lines[0] {
+			row[name] = line[i]
+		}
+		all = append(all, row)
+	}
+	return all
+}
+
+func float(t *testing.T, text string) float64 {
+	t.Helper()
+	x, err := strconv.ParseFloat(text, 64)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return x
+}
+
+// The experiment's files are there where it is asked for, and the same for any
+// number of workers; what is consumed and held in the first year is the transfer;
+// fifths hold a fifth each where assets differ.
+func TestTransferExperiment(t *testing.T) {
+	inFolder(t)
+	const ask = "experiments.transfer={amount: 2000, ages: [34, 42, 47, 58], years: 3}"
+	var first []byte
+	for _, workers := range []string{"1", "3"} {
+		status, _, stderr := cistern(t, "simulate", "port.yaml", "--set", ask, "--set", "panel.write=false", "--workers", workers, "--out", "run"+workers)
+		if status != 0 || !strings.Contains(stderr, "transfer: of 2000 crown that nobody expected, ") {
+			t.Fatalf("status %d: %s", status, stderr)
+		}
+		data, err := os.ReadFile("run" + workers + "/transfer.parquet")
+		if err != nil {
+			t.Fatal(err)
+		}
+		if first == nil {
+			first = data
+		} else if string(first) != string(data) {
+			t.Error("three workers write another transfer.parquet than one")
+		}
+	}
+	spent, households := map[string]float64{}, map[string]float64{}
+	for _, r := range records(t, "run1/transfer.csv") {
+		cell := strings.Join([]string{r["group"], r["first_age"], r["wealth_fifth"]}, "/")
+		x := float(t, r["estimate"])
+		households[cell] = float(t, r["households"])
+		switch key := r["variable"] + "/" + r["statistic"] + "/" + r["years_since"]; key {
+		case "consumption/share_of_transfer/0":
+			spent[cell] = x
+			if !(x > 0 && x <= 1) || !(float(t, r["standard_error"]) < 0.05) {
+				t.Errorf("%s: consumes %g (± %s) of it", cell, x, r["standard_error"])
+			}
+		case "consumption/mean_propensity/0":
+			if !(x > 0 && x < 1) {
+				t.Errorf("%s: propensity %g", cell, x)
+			}
+		case "assets/share_of_transfer/0":
+			if math.Abs(spent[cell]+x-1) > 1e-9 {
+				t.Errorf("%s: consumes %g and holds %g of it", cell, spent[cell], x)
+			}
+		case "consumption/share_to_date/3":
+			if !(x > spent[cell]) && households[cell] > 100 {
+				t.Errorf("%s: %g consumed in four years, %g in one", cell, x, spent[cell])
+			}
+		}
+	}
+	if len(spent) != 3*4*6 { // two groups and all; three bands and all ages; five fifths and all
+		t.Errorf("%d cells, want 72", len(spent))
+	}
+	for _, band := range []string{"40", "50"} { // at 30 many have nothing
+		for fifth := range 5 {
+			if got, want := households["all/"+band+"/"+strconv.Itoa(fifth+1)], households["all/"+band+"/"]/5; math.Abs(got-want) > 2 {
+				t.Errorf("fifth %d at %s holds %g of %g households", fifth+1, band, got, 5*want)
+			}
+		}
+	}
+	if !(spent["all/40/1"] > 1.2*spent["all/40/5"]) {
+		t.Errorf("the poorest fifth consumes %g of it, the richest %g", spent["all/40/1"], spent["all/40/5"])
+	}
+	status, _, stderr := cistern(t, "simulate", "port.yaml", "--set", "panel.write=false", "--out", "plain")
+	if status != 0 || strings.Contains(stderr, "transfer") {
+		t.Fatalf("status %d without the experiment: %s", status, stderr)
+	}
+	if _, err := os.Stat("plain/transfer.csv"); err == nil {
+		t.Error("a run without the experiment has its table")
+	}
+}
+
+// Bills that some cannot pay are counted; and those that nobody can.
+func TestBillExperiment(t *testing.T) {
+	inFolder(t)
+	for _, tt := range []struct{ amount, want string }{
+		{"-15000", "transfer: of a bill of 15000 crown that nobody expected, consumption bears "},
+		{"-1e9", "transfer: of a bill of 1e+09 crown nothing can be said: no household could pay it"},
+	} {
+		status, _, stderr := cistern(t, "simulate", "port.yaml", "--set", "experiments.transfer={amount: "+tt.amount+"}", "--set", "panel.write=false", "--replace")
+		if status != 0 || !strings.Contains(stderr, tt.want) {
+			t.Fatalf("status %d: %s", status, stderr)
+		}
+		unable := 0
+		for _, r := range records(t, "runs/port/transfer.csv") {
+			if r["statistic"] != "share_unable" {
+				continue
+			}
+			unable++
+			if x := float(t, r["estimate"]); tt.amount == "-1e9" && x != 1 || r["group"] == "all" && r["first_age"]+r["wealth_fifth"] == "" && !(x > 0.01) {
+				t.Errorf("bill of %s: %g cannot pay: %v", tt.amount, x, r)
+			}
+		}
+		if unable == 0 {
+			t.Error("no row says who cannot pay")
+		}
+	}
+}

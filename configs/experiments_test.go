@@ -1,0 +1,117 @@
+package configs
+
+import (
+	"encoding/json"
+	"math"
+	"reflect"
+	"strings"
+	"testing"
+)
+
+// TestExperiments reads what is asked for and what it is without being asked; what
+// is resolved reads back the same.
+func TestExperiments(t *testing.T) {
+	for _, tt := range []struct {
+		name, text string
+		want       Experiments
+		resolved   string
+	}{
+		{"none", "", Experiments{}, ""},
+		{"none of them", "experiments: {}\n", Experiments{}, "experiments: {}\n"},
+		{"transfer", "experiments: {transfer: {amount: 500}}\n",
+			Experiments{Transfer: &Transfer{500, []int{30, 35, 40, 45, 50, 55, 60, 65, 70, 75, 80}, 5}},
+			"    amount: 500\n    ages: [30, 35, 40, 45, 50, 55, 60, 65, 70, 75, 80]\n    years: 5\n"},
+		{"bill", "experiments:\n  transfer:\n    amount: -2e3\n    ages: [62, 31]\n    years: 0\n",
+			Experiments{Transfer: &Transfer{-2000, []int{31, 62}, 0}}, "    amount: -2000\n    ages: [62, 31]\n    years: 0\n"},
+	} {
+		sc, err := Parse("s.yaml", []byte(small+tt.text), nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if !reflect.DeepEqual(sc.Experiments, tt.want) {
+			t.Errorf("%s: %+v", tt.name, sc.Experiments)
+		}
+		again, err := Parse("s.yaml", sc.YAML(), nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if !strings.HasSuffix(string(sc.YAML()), tt.resolved) || strings.Contains(string(sc.YAML()), "experiments") != (tt.text != "") ||
+			!reflect.DeepEqual(again.Experiments, sc.Experiments) || string(again.YAML()) != string(sc.YAML()) {
+			t.Errorf("%s: resolved to\n%s", tt.name, sc.YAML())
+		}
+	}
+}
+
+func TestExperimentFaults(t *testing.T) {
+	for _, tt := range []struct{ text, want string }{
+		{"experiments: 3", "s.yaml:15:14: experiments: is 3, want a block of keys"},
+		{"experiments: {transfers: {}}", "s.yaml:15:15: experiments.transfers: is not a key of the format; allowed here: "},
+		{"experiments: {transfer: {}}", "s.yaml:15:25: experiments.transfer.amount: is missing, and has no default"},
+		{"experiments: {transfer: }", "experiments.transfer: has no value"},
+		{"experiments: {transfer: {amount: 0}}", "s.yaml:15:34: experiments.transfer.amount: is 0, want an amount above 0, or below 0 for a bill"},
+		{"experiments: {transfer: {amount: -0.0}}", "experiments.transfer.amount: is 0, want"},
+		{"experiments: {transfer: {amount: lots}}", "experiments.transfer.amount: is lots, want a number from -1e+12 to 1e+12"},
+		{"experiments: {transfer: {amount: 1e13}}", "experiments.transfer.amount: is 1e13, want from -1e+12 to 1e+12"},
+		{"experiments: {transfer: {amount: 1, years: 61}}", "s.yaml:15:44: experiments.transfer.years: is 61, want a whole number from 0 to 60"},
+		{"experiments: {transfer: {amount: 1, ages: 40}}", "experiments.transfer.ages: is 40, want a list of whole numbers, such as [1, 2]"},
+		{"experiments: {transfer: {amount: 1, ages: []}}", "experiments.transfer.ages: has 0 entries, want 1 to 121"},
+		{"experiments: {transfer: {amount: 1, ages: [29]}}", "s.yaml:15:44: experiments.transfer.ages[0]: is 29, want a whole number from 30 to 80"},
+		{"experiments: {transfer: {amount: 1, ages: [40, 81]}}", "experiments.transfer.ages[1]: is 81, want a whole number from 30 to 80"},
+		{"experiments: {transfer: {amount: 1, ages: [40.5]}}", "experiments.transfer.ages[0]: is 40.5, want a whole number"},
+		{"experiments: {transfer: {amount: 1, ages: [40, 40]}}", "experiments.transfer.ages: has 40 twice"},
+	} {
+		_, err := Parse("s.yaml", []byte(small+tt.text+"\n"), nil)
+		if err == nil || !IsFault(err) || !strings.Contains(err.Error(), tt.want) {
+			t.Errorf("%s: %v\nwant %q in it", tt.text, err, tt.want)
+		}
+		if err != nil && strings.Contains(err.Error(), "\n") {
+			t.Errorf("%s: one mistake, several faults:\n%v", tt.text, err)
+		}
+	}
+}
+
+func TestExperimentsInSchema(t *testing.T) {
+	var schema struct {
+		Properties struct {
+			Experiments struct {
+				Properties struct {
+					Transfer struct {
+						Required   []string
+						Properties struct{ Ages, Years struct{ Default any } }
+					}
+				}
+			}
+		}
+	}
+	if err := json.Unmarshal(Schema(), &schema); err != nil {
+		t.Fatal(err)
+	}
+	transfer := schema.Properties.Experiments.Properties.Transfer
+	if !reflect.DeepEqual(transfer.Required, []string{"amount"}) || transfer.Properties.Ages.Default != nil || transfer.Properties.Years.Default != 5.0 {
+		t.Errorf("transfer in the schema: %+v", transfer)
+	}
+}
+
+// The experiment costs time in proportion to the years lived with the transfer
+// (derived: nobody dies before 80, so from two ages four years each).
+func TestTransferCost(t *testing.T) {
+	cost := func(text string) Cost {
+		sc, err := Parse("s.yaml", []byte(small+text), nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return sc.Cost(1)
+	}
+	none := cost("")
+	two := cost("experiments: {transfer: {amount: 1, ages: [40, 60], years: 3}}\n")
+	late := cost("experiments: {transfer: {amount: 1, ages: [40, 60, 79], years: 3}}\n") // two years to live
+	if lived := (late.Seconds - two.Seconds) / secondsPerSecondLife / 100; math.Abs(lived-2) > 1e-6 {
+		t.Errorf("receipt at 79 adds %g household-years, want 2", lived)
+	}
+	if want := 100 * (8*secondsPerSecondLife + 51*2*secondsPerPass); math.Abs(two.Seconds-none.Seconds-want) > 1e-9 {
+		t.Errorf("two ages of receipt add %g seconds, want %g", two.Seconds-none.Seconds, want)
+	}
+	if !(late.MemoryBytes > two.MemoryBytes && two.MemoryBytes > none.MemoryBytes) || two.DiskBytes != none.DiskBytes {
+		t.Errorf("costs %+v, %+v and %+v", none, two, late)
+	}
+}
