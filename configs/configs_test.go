@@ -196,6 +196,13 @@ func TestFaults(t *testing.T) {
 		{"nothing to consume", "  persistent", "  job_loss: {probability: 0.1}\n  persistent", []string{"s.yaml:1:1: start.assets: a household of group households begins with 0, want more than 0"}},
 		{"nothing to consume, at its place", "seed: 7", "seed: 7\nstart: {assets: {constant: -26000}}", []string{"s.yaml:4:17: start.assets: a household of group households begins with -26000, want more than -"}},
 		{"percentiles", "seed: 7", "seed: 7\nsummary: {percentiles: [50, 100]}", []string{"summary.percentiles[1]: is 100, want strictly between 0 and 100"}},
+		{"percentile twice", "seed: 7", "seed: 7\nsummary: {percentiles: [50, 50.0]}", []string{"s.yaml:4:24: summary.percentiles: has 50 twice"}},
+		{"growth", "seed: 7", "seed: 7\npopulation: {growth: 0.2}", []string{"s.yaml:4:22: population.growth: is 0.2, want from -0.1 to 0.1"}},
+		{"population key", "seed: 7", "seed: 7\npopulation: {grows: 0}", []string{"s.yaml:4:14: population.grows: is not a key of the format; allowed here: growth"}},
+		{"lorenz", "seed: 7", "seed: 7\nsummary: {lorenz: [0, 50, 50]}", []string{"summary.lorenz[0]: is 0, want strictly between 0 and 100", "summary.lorenz: has 50 twice"}},
+		{"top shares", "seed: 7", "seed: 7\nsummary: {top_shares: 10}", []string{"summary.top_shares: is 10, want a list of numbers"}},
+		{"shortfall", "seed: 7", "seed: 7\nsummary: {shortfall: [5, 101]}", []string{"summary.shortfall[1]: is 101, want above 0 and at most 100"}},
+		{"tail", "seed: 7", "seed: 7\nsummary: {tail: 60}", []string{"summary.tail: is 60, want above 0 and at most 50"}},
 	} {
 		t.Run(tt.name, func(t *testing.T) {
 			if !strings.Contains(small, tt.old) {

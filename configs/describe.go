@@ -19,6 +19,7 @@ func describe(s *section, in *files) *Scenario {
 	sc.Currency = s.text("currency", "the unit of money, a label", "crown", false, 40)
 	sc.Seed = uint64(s.integer(number{key: "seed", meaning: "seed of all random numbers; two scenarios with one seed meet the same luck", in: within(0, math.MaxInt64), def: 1}))
 	sc.Households = s.integer(number{key: "households", meaning: "households to simulate", in: within(1, sim.Unit*1_000_000), def: 20000})
+	readPopulation(s.section("population", "the population that households of all ages make at a moment", false), sc)
 	blocks := readCommon(s)
 	groups := readGroups(s)
 	if s.n != nil {
@@ -246,14 +247,31 @@ func readPanel(s *section, sc *Scenario) {
 	s.done()
 }
 
+// readPopulation reads how many were born when: the ages of the whole population
+// weigh (1 + growth)^−age, beside those who survive to them.
+func readPopulation(s *section, sc *Scenario) {
+	sc.Growth = s.number(number{key: "growth", meaning: "growth of births, a year; in the summary's rows for all ages the young count (1 + growth) times for every year they are younger", in: within(-0.1, 0.1), def: 0})
+	s.done()
+}
+
 func readSummary(s *section, sc *Scenario) {
-	sc.Summary.Percentiles = s.numbers(number{key: "percentiles", meaning: "in percent, strictly between 0 and 100", in: between(0, 100)},
-		[]float64{1, 5, 10, 25, 50, 75, 90, 95, 99}, 100)
-	for i, p := range sc.Summary.Percentiles {
-		if slices.Contains(sc.Summary.Percentiles[:i], p) {
-			s.fault(s.n.get("percentiles"), "percentiles", "has %s twice", format(p))
+	o := &sc.Summary
+	o.Percentiles = s.levels("percentiles", "in percent, strictly between 0 and 100", between(0, 100), 1, 5, 10, 25, 50, 75, 90, 95, 99)
+	o.By = s.words("by", "what the summary tells apart", []string{"age", "group"}, "age", "group")
+	o.Lorenz = s.levels("lorenz", "Lorenz ordinates: what share of the total the poorest so many percent have", between(0, 100), 10, 20, 30, 40, 50, 60, 70, 80, 90)
+	o.TopShares = s.levels("top_shares", "what share of the total the richest so many percent have", between(0, 100), 10, 1, 0.1)
+	o.Shortfall = s.levels("shortfall", "expected shortfall: the mean of the worst so many percent", aboveTo(0, 100), 1, 5)
+	o.Tail = s.number(number{key: "tail", meaning: "share of the upper tail whose Pareto index is estimated, in percent", in: aboveTo(0, 50), def: 5})
+	s.done()
+}
+
+// levels reads a list of distinct levels in percent.
+func (s *section) levels(key, meaning string, in span, def ...float64) []float64 {
+	levels := s.numbers(number{key: key, meaning: meaning, in: in}, def, 100)
+	for i, p := range levels {
+		if slices.Contains(levels[:i], p) {
+			s.fault(s.n.get(key), key, "has %s twice", format(p))
 		}
 	}
-	sc.Summary.By = s.words("by", "what the summary tells apart", []string{"age", "group"}, "age", "group")
-	s.done()
+	return levels
 }

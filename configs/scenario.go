@@ -12,6 +12,7 @@ type Scenario struct {
 	Currency   string // unit of money, a label
 	Seed       uint64
 	Households int64
+	Growth     float64 // of births, a year: weighs the ages of the whole population
 	FirstAge   int
 	LastAge    int
 	Groups     []Group
@@ -55,6 +56,10 @@ type Panel struct {
 type Summary struct {
 	Percentiles []float64 // in percent
 	By          []string  // age, group
+	Lorenz      []float64 // poorest shares, in percent
+	TopShares   []float64 // richest shares, in percent
+	Shortfall   []float64 // worst shares, in percent
+	Tail        float64   // share of the upper tail whose index is estimated, in percent
 }
 
 // Input is a file that a scenario names.
