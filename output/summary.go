@@ -7,18 +7,11 @@ import (
 	"slices"
 	"sync"
 
-	"cistern/output/stats"
+	"cistern/output/distribution"
 )
 
 // Everyone is the name of the row that takes all groups together.
 const Everyone = "all"
-
-// confidence of every interval of a summary.
-const confidence = 0.95
-
-// groupsJackknife is the number of jackknife groups: household id modulo it.
-// A power of two; with 64 a standard error is itself known to about 9 %.
-const groupsJackknife = 64
 
 // Dimension is what a summary tells apart.
 type Dimension int
@@ -63,7 +56,12 @@ type SummaryOptions struct {
 	Groups            []string    // names of the groups, in the order of Span.Group; "all" is taken
 	Households        int64       // households of the panel, for the choice of method only
 	Percentiles       []float64   // in percent, each above 0 and below 100
-	By                []Dimension // what the table tells apart; none: one row set for everybody at all ages
+	Lorenz            []float64   // poorest shares, in percent, above 0 and below 100
+	TopShares         []float64   // richest shares, in percent, above 0 and below 100
+	Shortfalls        []float64   // worst shares, in percent, above 0 and at most 100
+	Tail              float64     // upper share whose tail index is wanted, in percent, below 100; 0: none
+	Growth            float64     // of births, a year, above −1: a household counts (1+Growth)^−(age − FirstAge) where ages are taken together
+	By                []Dimension // what the table tells apart beside all ages together; none: everybody
 	Bands             []Band      // age bands of [Summary.Bands]; nil for none
 	Workers           int         // goroutines that call Add, at least 1
 	MemoryBudget      int64       // bytes for values held at a time; 0 = DefaultMemoryBudget
@@ -71,7 +69,7 @@ type SummaryOptions struct {
 
 // DefaultMemoryBudget is 256 MiB: enough to hold all values of about 100,000
 // households over 76 ages.
-const DefaultMemoryBudget = 256 << 20
+const DefaultMemoryBudget = distribution.DefaultBudget
 
 // Validate reports every fault of the options at once.
 func (o SummaryOptions) Validate() error {
@@ -89,12 +87,24 @@ func (o SummaryOptions) Validate() error {
 	if o.Households < 1 || o.Households >= math.MaxUint32 {
 		bad("households is %d, want 1 to %d", o.Households, uint32(math.MaxUint32-1))
 	}
-	for i, p := range o.Percentiles {
-		if !(p > 0 && p < 100) {
-			bad("percentile %v, want above 0 and below 100", p)
-		} else if slices.Contains(o.Percentiles[:i], p) {
-			bad("percentile %v stands twice", p)
+	for _, l := range []struct {
+		name   string
+		levels []float64
+		most   string
+	}{{"percentile", o.Percentiles, "below 100"}, {"lorenz", o.Lorenz, "below 100"}, {"top share", o.TopShares, "below 100"}, {"shortfall", o.Shortfalls, "at most 100"}} {
+		for i, p := range l.levels {
+			if !(p > 0 && (p < 100 || p == 100 && l.most == "at most 100")) {
+				bad("%s %v, want above 0 and %s", l.name, p, l.most)
+			} else if slices.Contains(l.levels[:i], p) {
+				bad("%s %v stands twice", l.name, p)
+			}
 		}
+	}
+	if !(o.Tail >= 0 && o.Tail < 100) {
+		bad("tail of %v percent, want 0 (none) or more, below 100", o.Tail)
+	}
+	if !(o.Growth > -1 && o.Growth < 1) {
+		bad("growth of %v, want above -1 and below 1", o.Growth)
 	}
 	for i, d := range o.By {
 		if (d != ByAge && d != ByGroup) || slices.Contains(o.By[:i], d) {
@@ -115,21 +125,6 @@ func (o SummaryOptions) Validate() error {
 	return errors.Join(errs...)
 }
 
-// SummaryRows are the rows of one block of households, all their years alive,
-// as for [Rows]: spans of constant age and group adjoin from 0 to N, and every
-// column has N entries or more. Add keeps no reference.
-type SummaryRows struct {
-	First     int64 // id of the first household of the block
-	N         int
-	Spans     []Span
-	Household []int64
-
-	Income, Consumption, Assets []float64 // money
-	Propensity                  []float64 // marginal propensity to consume; nil: left out
-	AtLimit                     []bool    // borrowing limit binds; nil: left out
-	TwinAssets                  []float64 // money, assets of the certain twin; nil: left out
-}
-
 // Summary reduces the rows of a panel to a tidy table. It needs one pass over
 // the blocks of the panel, or, where the values exceed the memory budget,
 // several passes over the same blocks:
@@ -141,85 +136,52 @@ type SummaryRows struct {
 //	}
 //	table := s.Table()
 //
-// Every quantile is exact, whatever the number of passes; so are means, errors
-// and shares. Results are the same bits for any number of workers and any order
-// in which blocks are finished: sums of floats are formed within a block and
-// folded in block order, all else is counted in integers.
+// The method is that of [distribution.Study]: a cell is an age and a group, a unit
+// a household. Every quantile is exact, whatever the number of passes; so are
+// means, shares of the total, tails and errors. Results are the same bits for any
+// number of workers and any order in which blocks are finished.
 //
-// Several passes: the first counts values by sign, exponent and six bits of the
-// mantissa, by age, group and variable. Each later pass looks only into the
-// bins that hold a wanted order statistic, and either counts them by further
-// bits or, when few values are left, collects them (radix selection). Three
-// passes are usual, seven the most. Then the Gini coefficient follows from the
-// counts and sums of the bins, with a bound on its error in the table's notes;
-// its standard error, and the effect of pooling on the intervals of percentiles,
-// from the first households of the panel, as many as a quarter of the budget holds.
+// In several passes the Gini coefficient follows from counts and sums of bins,
+// with a bound on its error in the table's notes; its standard error, and the
+// effect of pooling on the intervals of percentiles, from the first households of
+// the panel, as many as a quarter of the budget holds.
 type Summary struct {
 	o       SummaryOptions
-	cells   int // (age − FirstAge)·len(Groups) + group
 	targets []target
-	pass    int
+	spaces  []workspace // by worker
 	done    bool
-	fault   error
-	mu      sync.Mutex // guards spare, seen, fault
 
-	seen    columns       // which optional columns every block had
-	moments []cellSums    // by cell; written by commits only
-	spare   []*blockSums  // partial sums to reuse
-	store   store         // values of all or of the first households, until the first pass ends
-	sampled int64         // households whose blocks were held
-	hist    *histograms   // pass 1 where values do not fit; nil otherwise
-	refine  *refinement   // later passes
-	next    int64         // id from which the next commit must start
-	results []valueResult // [target·variables + variable]
+	mu        sync.Mutex // guards what follows until the first block is there
+	fault     error
+	variables []summaryVariable   // that the blocks have
+	study     *distribution.Study // of those
 }
 
-// columns says which optional columns are there.
-type columns struct{ propensity, atLimit, twin, known bool }
-
 // NewSummary prepares a summary. Whether the values are held in memory or need
-// several passes follows from the options: households, ages and budget.
+// several passes follows from the options (households, ages and budget) and from
+// the columns of the first block.
 func NewSummary(o SummaryOptions) (*Summary, error) {
 	if err := o.Validate(); err != nil {
 		return nil, err
 	}
-	if o.MemoryBudget == 0 {
-		o.MemoryBudget = DefaultMemoryBudget
+	for _, l := range []*[]float64{&o.Percentiles, &o.Lorenz, &o.Shortfalls} {
+		*l = slices.Sorted(slices.Values(*l))
 	}
-	o.Percentiles = slices.Sorted(slices.Values(o.Percentiles))
-	s := &Summary{o: o, pass: 1}
-	s.cells = (o.LastAge - o.FirstAge + 1) * len(o.Groups)
-	s.targets = newTargets(o)
-	s.moments = make([]cellSums, s.cells)
-	s.results = make([]valueResult, len(s.targets)*variables)
-	if s.valuesFit() {
-		s.store.end = math.MaxInt64
-	} else {
-		years := int64(o.LastAge - o.FirstAge + 1)
-		s.store.end = max(1, o.MemoryBudget/4/(years*storedBytes))
-		s.hist = newHistograms(s.cells, o.Workers)
-	}
+	o.TopShares = slices.Clone(o.TopShares)
+	s := &Summary{o: o, spaces: make([]workspace, o.Workers)}
+	s.targets = newTargets(&s.o)
 	return s, nil
 }
 
-// sorters is how many pools of values are sorted at a time: fixed, so that the
-// choice of method does not depend on the number of workers.
-const sorters = 4
-
-// valuesFit reports whether all values can be held, together with what sorting
-// the largest pools of them takes.
-func (s *Summary) valuesFit() bool {
-	years := int64(s.o.LastAge - s.o.FirstAge + 1)
-	widest := int64(1)
-	for _, t := range s.targets {
-		widest = max(widest, int64(t.last-t.first+1))
-	}
-	row := storedBytes*years + sortingBytes*widest*sorters
-	return s.o.Households <= s.o.MemoryBudget/row
-}
-
 // Passes returns the number of passes begun so far.
-func (s *Summary) Passes() int { return s.pass }
+func (s *Summary) Passes() int {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	if s.study == nil {
+		return 1
+	}
+	return s.study.Passes()
+}
 
 // Add takes the rows of a block on goroutine worker, 0 … Workers−1. Several
 // workers may call it at once. commit may be nil; if not, commits must be
@@ -240,45 +202,32 @@ func (s *Summary) Add(worker int, rows *SummaryRows) (commit func() error, err e
 	if err := s.check(rows); err != nil {
 		return nil, s.fail(err)
 	}
-	if s.pass > 1 {
-		return nil, s.fail(s.refine.add(worker, rows, s.cellOf))
+	if rows.N == 0 {
+		return nil, nil
 	}
-	sums := s.take()
-	s.sum(sums, rows)
-	var held *block
-	if rows.First < s.store.end {
-		held = newBlock(rows, s.cellOf)
+	fold, err := s.study.Add(worker, s.translate(&s.spaces[worker], rows))
+	if err != nil {
+		return nil, s.fail(s.explain(err))
 	}
-	if s.hist != nil {
-		s.hist.add(worker, rows, s.cellOf)
+	if fold == nil {
+		return nil, nil
 	}
-	first, past := rows.First, rows.First+1
-	return func() error { return s.commit(first, past, sums, held) }, nil
+	return func() error {
+		if err := fold(); err != nil {
+			return s.fail(s.explain(err))
+		}
+		return nil
+	}, nil
 }
 
-// commit folds the sums of a block into those of the summary.
-func (s *Summary) commit(first, past int64, sums *blockSums, held *block) error {
-	if err := s.failed(); err != nil {
-		return err
+// explain says in the terms of the panel where a value is that is not finite.
+func (s *Summary) explain(err error) error {
+	var v *distribution.ValueError
+	if errors.As(err, &v) {
+		age, group := s.o.FirstAge+v.Cell/len(s.o.Groups), v.Cell%len(s.o.Groups)
+		return fmt.Errorf("output: summary: a value of %s is not finite: group %s, age %d, block of household %d", v.Variable, s.o.Groups[group], age, v.Block)
 	}
-	if first < s.next {
-		return s.fail(fmt.Errorf("output: summary: block of household %d committed after that of household %d", first, s.next-1))
-	}
-	s.next = past
-	for i := range sums.used {
-		part := &sums.cells[i]
-		if !part.finite() {
-			age, group := s.ageGroup(part.cell)
-			return s.fail(fmt.Errorf("output: summary: a value is not finite: group %s, age %d, block of household %d", s.o.Groups[group], age, first))
-		}
-		s.moments[part.cell].fold(part)
-	}
-	if held != nil {
-		s.store.blocks = append(s.store.blocks, held)
-		s.sampled += held.households
-	}
-	s.give(sums)
-	return nil
+	return fmt.Errorf("output: summary: %w", err)
 }
 
 // EndPass ends a pass over the blocks and reports whether another is needed.
@@ -290,29 +239,16 @@ func (s *Summary) EndPass() (more bool, err error) {
 	if s.done {
 		return false, nil
 	}
-	switch {
-	case s.pass > 1:
-		more, err = s.refine.end()
-	case s.hist == nil:
-		s.analyseStore(true)
-	default:
-		s.analyseStore(false)
-		more, err = s.beginRefinement()
+	if s.study == nil { // no blocks
+		if err := s.settle(&SummaryRows{}, fmt.Errorf); err != nil {
+			return false, s.fail(err)
+		}
 	}
-	if err != nil {
-		return false, s.fail(err)
+	if more, err = s.study.EndPass(); err != nil {
+		return false, s.fail(s.explain(err))
 	}
-	s.store = store{}
-	if more {
-		s.pass++
-		return true, nil
-	}
-	if s.refine != nil {
-		s.refine.finish(s.results, s.rows)
-		s.refine = nil
-	}
-	s.done = true
-	return false, nil
+	s.done = !more
+	return more, nil
 }
 
 func (s *Summary) failed() error {
@@ -329,15 +265,3 @@ func (s *Summary) fail(err error) error {
 	}
 	return err
 }
-
-// cellOf numbers the cell of a span.
-func (s *Summary) cellOf(sp Span) int {
-	return (int(sp.Age)-s.o.FirstAge)*len(s.o.Groups) + sp.Group
-}
-
-func (s *Summary) ageGroup(cell int) (age, group int) {
-	return s.o.FirstAge + cell/len(s.o.Groups), cell % len(s.o.Groups)
-}
-
-// quantileType is the definition of every percentile of a summary.
-const quantileType = stats.Type7

@@ -3,8 +3,9 @@ package output
 import "cistern/output/stats"
 
 // BandSummary describes the households of a group in a band of ages. A
-// household counts once for every year it lives in the band; errors come from
-// the jackknife over whole households, so that its years may be alike.
+// household counts once for every year it lives in the band, ages weighed by the
+// growth of births; errors come from the jackknife over whole households, so that
+// its years may be alike.
 type BandSummary struct {
 	Band       Band
 	Group      string
@@ -23,23 +24,27 @@ type BandSummary struct {
 // nobody lives are left out. It panics before the last EndPass.
 func (s *Summary) Bands() []BandSummary {
 	s.mustBeDone()
+	assets, consumption := s.variable("assets"), s.variable("consumption")
+	gap, limit := s.variable("twin_assets"), s.variable("at_limit")
 	var list []BandSummary
 	for i := range s.targets {
 		t := &s.targets[i]
-		if t.band < 0 || s.rows(i) == 0 {
+		if t.band < 0 {
 			continue
 		}
-		sums := s.pool(t)
+		r := s.study.Target(i)
+		if r.Rows() == 0 {
+			continue
+		}
 		b := BandSummary{
-			Band: s.o.Bands[t.band], Group: s.groupName(t), Households: s.households(t), Years: s.rows(i),
-			MedianAssets: s.results[i*variables+assets].quantiles[0].value,
-			MeanAssets:   sums.mean(assets), Consumption: sums.mean(consumption),
+			Band: s.o.Bands[t.band], Group: s.groupName(t), Households: s.households(t), Years: r.Rows(),
+			MedianAssets: r.Median(assets), MeanAssets: r.Mean(assets), Consumption: r.Mean(consumption),
 		}
-		if s.seen.twin {
-			b.Precautionary = sums.precautionary()
+		if gap >= 0 {
+			b.Precautionary = r.Mean(gap)
 		}
-		if s.seen.atLimit {
-			b.ShareAtLimit = sums.shareAtLimit(t.independent())
+		if limit >= 0 {
+			b.ShareAtLimit = r.Proportion(limit)
 		}
 		list = append(list, b)
 	}
@@ -56,12 +61,12 @@ func (s *Summary) BandTable(group, currency string) *Table {
 	median := t.AddFloat("assets_median", currency, "median assets at the end of the year")
 	mean := t.AddFloat("assets_mean", currency, "mean assets at the end of the year")
 	var gap, gapError, limit *Column
-	if s.seen.twin {
+	if s.variable("twin_assets") >= 0 {
 		gap = t.AddFloat("precautionary_mean", currency, "part of mean assets held because income is risky: assets less those of the certain twin")
 		gapError = t.AddFloat("precautionary_error", currency, "Monte Carlo standard error of the precautionary part, paired")
 	}
 	spent := t.AddFloat("consumption_mean", currency+" a year", "mean consumption")
-	if s.seen.atLimit {
+	if s.variable("at_limit") >= 0 {
 		limit = t.AddFloat("share_at_limit", "fraction", "share of household-years in which the borrowing limit binds")
 	}
 	for _, b := range s.Bands() {

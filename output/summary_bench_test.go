@@ -18,39 +18,49 @@ func BenchmarkSummaryAdd(b *testing.B) {
 				o.MemoryBudget = 64 << 20
 				o.Households = 1 << 24
 			}
-			s, err := NewSummary(o)
-			if err != nil {
-				b.Fatal(err)
-			}
+			const most = 16 // blocks of a summary: more would be held
+			rows := *block
+			var s *Summary
 			add := func() {
-				commit, err := s.Add(0, block)
+				rows.First += w.unit
+				commit, err := s.Add(0, &rows)
 				if err == nil && commit != nil {
-					s.next = 0
-					s.store.blocks = s.store.blocks[:0]
 					err = commit()
 				}
 				if err != nil {
 					b.Fatal(err)
 				}
 			}
-			if pass == "later" {
-				for range 64 {
+			begin := func() {
+				var err error
+				if s, err = NewSummary(o); err != nil {
+					b.Fatal(err)
+				}
+				rows.First = -w.unit
+				if pass == "first" {
+					rows.First = o.Households // most blocks of a large panel are not held
+				}
+				if pass != "later" {
+					return
+				}
+				for range most {
 					add()
 				}
-			}
-			if pass != "held" {
-				s.store.end = 0 // most blocks of a large panel are not held
-			}
-			if pass == "later" {
 				if more, err := s.EndPass(); !more || err != nil {
 					b.Fatal(more, err)
 				}
 			}
+			begin()
+			n := 0
 			for b.Loop() {
-				add()
-				if s.refine != nil {
-					s.refine.held[0] = s.refine.held[0][:0]
+				if n == most {
+					b.StopTimer()
+					begin()
+					n = 0
+					b.StartTimer()
 				}
+				n++
+				add()
 			}
 			b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(b.N)/float64(block.N), "ns/row")
 		})

@@ -3,7 +3,9 @@ package output
 import (
 	"fmt"
 	"math"
+	"slices"
 
+	"cistern/output/distribution"
 	"cistern/output/stats"
 )
 
@@ -13,26 +15,38 @@ import (
 //
 //	group, age, variable, statistic, level, estimate, standard_error, lower, upper, households
 //
+// Rows without an age take all ages together: the population of all ages at a
+// moment, ages weighed by survival, which the panel has of itself, and by the growth
+// of births. Without groups to tell apart every row has "all".
+//
 // Variables and statistics:
 //
 //   - income, consumption, assets: mean, sd (divisor n−1), percentile (level in
-//     percent, type 7 of Hyndman and Fan), gini (with the factor n/(n−1));
+//     percent, type 7 of Hyndman and Fan; the least value that the share reaches
+//     where ages weigh differently), gini (with the factor n/(n−1)),
+//     share_nonpositive (at or below zero);
+//   - the same for everybody at an age and for all ages of a group: lorenz (what share of
+//     the total the poorest level percent have), top_share (the richest level
+//     percent), s80_s20 (what the richest fifth have over what the poorest have),
+//     expected_shortfall (mean of the lowest level percent), hill (index of the
+//     Pareto tail from the highest level percent; households says from how many);
 //   - consumption: mean_propensity, the mean marginal propensity to consume;
 //   - assets: share_at_limit, the share of households whose borrowing limit binds;
 //   - precautionary_assets: mean, the mean of assets less those of the certain
-//     twin, and share_of_mean_assets.
+//     twin, and share_of_mean_assets;
+//   - wealth_to_income: ratio_of_means, mean assets over mean income.
 //
 // lower and upper bound a 95 % interval: order statistics for percentiles,
-// Clopper–Pearson for share_at_limit, Student's t on the jackknife error for the
-// rest, on the logarithm for sd. (The sd of a heavy tail is the hardest: among
+// Clopper–Pearson for shares of households, Student's t on the jackknife error for
+// the rest, on the logarithm for sd. (The sd of a heavy tail is the hardest: among
 // 400 households with lognormal income, log sd 0.5, its interval holds 93 %.)
 // The standard error of a percentile is the width of its interval over
-// that of a normal one with error 1. Rows without group or age where the table
-// does not tell them apart have "all" and no age; there the years of a household
-// are pooled, the jackknife deletes whole households, and the intervals of
-// percentiles and shares are widened accordingly. What does not exist for a
+// that of a normal one with error 1. Where ages are taken together the years of a
+// household are pooled, the jackknife deletes whole households, and the intervals
+// of percentiles and shares are widened accordingly. What does not exist for a
 // sample (the Gini coefficient where the mean is not positive, a bound beyond
-// the extremes, an error from one household) is missing.
+// the extremes, an error from one household) is missing. A share of fewer than 20
+// rows is not described on its own.
 //
 // Table panics before the last EndPass.
 func (s *Summary) Table() *Table {
@@ -40,75 +54,48 @@ func (s *Summary) Table() *Table {
 	t := NewTable("summary")
 	w := &summaryWriter{
 		group:     t.AddString("group", "", "group of households; \"all\" for all groups together"),
-		age:       t.AddInt("age", "year", "age of the household"),
+		age:       t.AddInt("age", "year", "age of the household; missing for all ages together, as they are at a moment"),
 		variable:  t.AddString("variable", "", "what is described; money in currency units a year, assets in currency units at the end of the year"),
 		statistic: t.AddString("statistic", "", "which figure of the variable's distribution"),
-		level:     t.AddFloat("level", "percent", "share of households at or below a percentile"),
-		estimate:  t.AddFloat("estimate", "", "the figure, in the unit of the variable; gini and shares are fractions"),
+		level:     t.AddFloat("level", "percent", "share of households that the figure is about: at or below a percentile, the poorest (lorenz), the richest (top_share, hill), the lowest (expected_shortfall)"),
+		estimate:  t.AddFloat("estimate", "", "the figure, in the unit of the variable; gini, lorenz and shares are fractions, ratios and hill pure numbers"),
 		se:        t.AddFloat("standard_error", "", "Monte Carlo standard error of the estimate"),
 		lower:     t.AddFloat("lower", "", "lower end of the 95 % confidence interval"),
 		upper:     t.AddFloat("upper", "", "upper end of the 95 % confidence interval"),
 		count:     t.AddInt("households", "household", "number of households behind the estimate"),
 	}
-	var bound float64
 	for i := range s.targets {
-		tg := &s.targets[i]
-		if tg.band >= 0 {
-			continue
+		if s.targets[i].band < 0 {
+			w.target(s, i)
 		}
-		if s.rows(i) == 0 {
-			continue
-		}
-		w.target(s, i)
-		for v := range variables {
-			bound = max(bound, s.results[i*variables+v].giniBound)
-		}
+	}
+	t.Notes = append(t.Notes, s.notes(w.bound)...)
+	return t
+}
+
+// notes says what a reader of the table must know of this run.
+func (s *Summary) notes(bound float64) []string {
+	var notes []string
+	if len(s.o.Lorenz)+len(s.o.TopShares)+len(s.o.Shortfalls) > 0 || s.o.Tail > 0 {
+		notes = append(notes, fmt.Sprintf("Lorenz ordinates, top shares, s80_s20, expected shortfalls and tail indices are left out where the share they are about has fewer than %d rows, and at single ages of single groups.", leastRows))
+	}
+	if s.o.Growth != 0 {
+		notes = append(notes, fmt.Sprintf("Where ages are taken together, a household of age a weighs (1 + %v)^-(a - %d): births grow by that much a year.", s.o.Growth, s.o.FirstAge))
 	}
 	if bound > 0 {
-		t.Notes = append(t.Notes, fmt.Sprintf("Gini coefficients come from binned values and are at most %.1g off; their errors, and by how much pooled years widen intervals of percentiles, come from the first %d households.", bound, s.sampled))
+		notes = append(notes, fmt.Sprintf("Gini coefficients come from binned values and are at most %.1g off; their errors, and by how much pooled years widen intervals of percentiles, come from the first %d household-years.", bound, s.study.Sampled()))
 	}
-	return t
+	return notes
+}
+
+// variable returns the place of a variable, −1 if it is not there.
+func (s *Summary) variable(key string) int {
+	return slices.IndexFunc(s.variables, func(v summaryVariable) bool { return v.key == key })
 }
 
 func (s *Summary) mustBeDone() {
 	if !s.done {
 		panic("output: summary is not finished")
-	}
-}
-
-// summaryWriter appends rows to the columns of the table.
-type summaryWriter struct {
-	group, age, variable, statistic, level, estimate, se, lower, upper, count *Column
-
-	households int64
-	of         *target
-	name       string
-}
-
-// target appends the rows of one target.
-func (w *summaryWriter) target(s *Summary, i int) {
-	t := &s.targets[i]
-	w.of, w.households, w.name = t, s.households(t), s.groupName(t)
-	sums := s.pool(t)
-	for v := range variables {
-		name := variableNames[v]
-		w.row(name, "mean", math.NaN(), sums.mean(v))
-		w.row(name, "sd", math.NaN(), sums.sd(v))
-		r := &s.results[i*variables+v]
-		for k, p := range t.percentiles(&s.o, v) {
-			w.row(name, "percentile", p, r.quantiles[k].value)
-		}
-		w.row(name, "gini", math.NaN(), r.gini)
-		if v == consumption && s.seen.propensity {
-			w.row(name, "mean_propensity", math.NaN(), sums.meanPropensity())
-		}
-		if v == assets && s.seen.atLimit {
-			w.row(name, "share_at_limit", math.NaN(), sums.shareAtLimit(t.independent()))
-		}
-	}
-	if s.seen.twin {
-		w.row("precautionary_assets", "mean", math.NaN(), sums.precautionary())
-		w.row("precautionary_assets", "share_of_mean_assets", math.NaN(), sums.precautionaryShare())
 	}
 }
 
@@ -119,9 +106,100 @@ func (s *Summary) groupName(t *target) string {
 	return s.o.Groups[t.group]
 }
 
+// noLevel is the level of a statistic that has none.
+var noLevel = math.NaN()
+
+// leastRows is how many rows a share must have to be described on its own.
+const leastRows = 20
+
+// summaryWriter appends rows to the columns of the table.
+type summaryWriter struct {
+	group, age, variable, statistic, level, estimate, se, lower, upper, count *Column
+
+	households int64
+	of         *target
+	name       string
+	bound      float64 // of all Gini coefficients so far
+}
+
+// target appends the rows of one target.
+func (w *summaryWriter) target(s *Summary, i int) {
+	t := &s.targets[i]
+	r := s.study.Target(i)
+	if r.Rows() == 0 {
+		return
+	}
+	w.of, w.households, w.name = t, s.households(t), s.groupName(t)
+	for v := range s.variables {
+		w.distribution(s, t, r, v)
+	}
+	for _, q := range summaryRatios {
+		if of, by := s.variable(q.of), s.variable(q.by); of >= 0 && by >= 0 {
+			w.row(q.name, q.statistic, noLevel, r.Ratio(of, by))
+		}
+	}
+}
+
+// distribution appends what the target wants of a variable.
+func (w *summaryWriter) distribution(s *Summary, t *target, r *distribution.Result, v int) {
+	of := &s.variables[v]
+	row := func(statistic string, level float64, e stats.Estimate) { w.row(of.name, statistic, level, e) }
+	if of.flags != nil {
+		row(of.mean, noLevel, r.Proportion(v))
+		return
+	}
+	row(of.mean, noLevel, r.Mean(v))
+	wants := t.wants(of)
+	if wants&distribution.Percentiles != 0 {
+		row("sd", noLevel, r.SD(v))
+		for k, p := range s.o.Percentiles {
+			row("percentile", p, r.Percentile(v, k))
+		}
+	}
+	if wants&distribution.Gini != 0 {
+		row("gini", noLevel, r.Gini(v))
+		w.bound = max(w.bound, r.GiniBound(v))
+	}
+	if of.shares != nil {
+		for k, share := range of.shares(&s.o) {
+			row(share.statistic, share.level, r.Share(v, k))
+		}
+	}
+	enough := func(percent float64) bool { return float64(r.Values(v))*percent/100 >= leastRows }
+	if wants&distribution.Concentration != 0 {
+		for k, p := range s.o.Lorenz {
+			if enough(min(p, 100-p)) {
+				row("lorenz", p, r.Lorenz(v, k))
+			}
+		}
+		for k, p := range s.o.TopShares {
+			if enough(p) {
+				row("top_share", p, r.TopShare(v, k))
+			}
+		}
+		if enough(20) {
+			row("s80_s20", noLevel, r.QuintileRatio(v))
+		}
+	}
+	if wants&distribution.Shortfall != 0 {
+		for k, p := range s.o.Shortfalls {
+			if enough(p) {
+				row("expected_shortfall", p, r.Shortfall(v, k))
+			}
+		}
+	}
+	if wants&distribution.Tail != 0 && s.o.Tail > 0 && enough(s.o.Tail) {
+		alpha, rows := r.Hill(v, 0)
+		households := w.households
+		w.households = rows
+		row("hill", s.o.Tail, alpha)
+		w.households = households
+	}
+}
+
 func (w *summaryWriter) row(variable, statistic string, level float64, e stats.Estimate) {
 	w.group.AppendString(w.name)
-	if w.of.independent() {
+	if !w.of.whole {
 		w.age.AppendInt(int64(w.of.first))
 	} else {
 		w.age.AppendMissing()

@@ -177,7 +177,7 @@ func passName(pass int) string {
 	if pass == 0 {
 		return "simulating"
 	}
-	return fmt.Sprintf("percentiles, pass %d", pass+1)
+	return fmt.Sprintf("distribution, pass %d", pass+1)
 }
 
 // joinAbort removes the unfinished part of the panel after a failure.
@@ -282,6 +282,7 @@ func (r *run) newSummary() error {
 	}
 	s, err := output.NewSummary(output.SummaryOptions{FirstAge: r.sc.FirstAge, LastAge: r.sc.LastAge, Groups: r.groupNames(),
 		Households: r.sc.Households, Percentiles: r.sc.Summary.Percentiles, By: by,
+		Lorenz: r.sc.Summary.Lorenz, TopShares: r.sc.Summary.TopShares, Shortfalls: r.sc.Summary.Shortfall, Tail: r.sc.Summary.Tail, Growth: r.sc.Growth,
 		Bands: output.DefaultBands(r.sc.FirstAge, r.sc.LastAge), Workers: r.g.workers})
 	r.summary = s
 	return err

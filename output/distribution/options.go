@@ -96,9 +96,9 @@ func (o Options) Validate() error {
 	if len(o.Variables) == 0 || len(o.Variables) > 250 {
 		bad("%d variables, want 1 to 250", len(o.Variables))
 	}
-	if o.Cells < 1 || o.Rows < 0 || o.Rows >= math.MaxUint32 || o.Extent < 1 || o.Workers < 1 || o.Budget < 0 {
+	if o.Cells < 1 || o.Rows < 0 || o.Rows >= 1<<50 || o.Extent < 1 || o.Workers < 1 || o.Budget < 0 {
 		bad("%d cells, %d rows, extent %d, %d workers, %d bytes: want at least 1 cell, rows from 0 to %d, extent and workers from 1, bytes from 0",
-			o.Cells, o.Rows, o.Extent, o.Workers, o.Budget, uint32(math.MaxUint32-1))
+			o.Cells, o.Rows, o.Extent, o.Workers, o.Budget, int64(1<<50-1))
 	}
 	for _, l := range []struct {
 		name   string

@@ -271,7 +271,7 @@ func (r *refinement) add(worker int, rows *Rows, held []int) error {
 		}
 	}
 	if int64(len(r.held[worker])) > r.keepRows {
-		return errPassesDiffer
+		return ErrPassesDiffer
 	}
 	return nil
 }

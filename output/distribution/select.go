@@ -6,8 +6,8 @@ import (
 	"slices"
 )
 
-// errPassesDiffer says that a later pass was given other rows than the first.
-var errPassesDiffer = errors.New("distribution: the blocks of a later pass differ from those of the first")
+// ErrPassesDiffer says that a later pass was given other rows than the first.
+var ErrPassesDiffer = errors.New("distribution: the blocks of a later pass differ from those of the first")
 
 // end takes what the pass found, narrows every wanted rank, and prepares the
 // next pass; more is false when all are found.
@@ -46,7 +46,7 @@ func (r *refinement) gather() error {
 			found[id] += uint64(n)
 		}
 		if found[id] != r.inside[id].expected {
-			return errPassesDiffer
+			return ErrPassesDiffer
 		}
 		if r.nodes[id].collect {
 			r.inside[id].keys = make([]uint64, 0, found[id])

@@ -234,6 +234,7 @@ func (s *Study) endMeasuring() (more bool, err error) {
 	for k := range s.results {
 		s.size(k)
 	}
+	s.spare = nil
 	whole := s.hist == nil
 	s.analyseStore(whole)
 	if whole {
