@@ -13,6 +13,13 @@ import (
 // Everyone is the name of the row that takes all groups together.
 const Everyone = "all"
 
+// confidence of every interval.
+const confidence = 0.95
+
+// groupsJackknife is the number of jackknife groups: household id modulo it.
+// A power of two; with 64 a standard error is itself known to about 9 %.
+const groupsJackknife = distribution.Groups
+
 // Dimension is what a summary tells apart.
 type Dimension int
 
