@@ -209,21 +209,22 @@ func TestReturnOfOneYear(t *testing.T) {
 	}
 }
 
-// Prices 8 % above incomes for two years: in year 0 every crown of income and of
-// wealth buys 1/1.08, in year 1 every crown of income, and no more after that
-// (the definition in the package comment). Where wealth keeps its value it buys as
-// much as usual.
+// Prices 8 % above incomes, and 3 % a year later: in year 0 every crown of income
+// and of wealth buys 1/1.08, in year 1 every crown of income 1/1.03, and incomes
+// have caught up after that, while wealth does not get back what it lost (the
+// definition in the package comment). Where wealth keeps its value it buys as much
+// as usual.
 func TestPrices(t *testing.T) {
 	p := port(t, sim.Unit, dockers(t, nil))
-	jump := year(func(y *Year) { y.Prices = 0.08 })
+	gap := []float64{0.08, 0.03}
 	for _, keeps := range []bool{false, true} {
-		e := everyone(jump, jump)
+		e := everyone(year(func(y *Year) { y.Prices = gap[0] }), year(func(y *Year) { y.Prices = gap[1] }))
 		e.WealthKeepsValue = keeps
 		kept := map[int64]float64{}
 		for _, r := range live(t, p, e, Window{1, 3}) {
 			income, R := r.income, 1.03
 			if r.year == 0 || r.year == 1 {
-				income /= 1.08
+				income /= 1 + gap[r.year]
 			}
 			if r.year == 0 && !keeps {
 				R /= 1.08
