@@ -50,8 +50,8 @@ func plan(n, total int64, weighted bool, p, effect float64) quantile {
 // units is reached; a product that misses a whole number by rounding only counts
 // as that number.
 func position(total int64, p float64) int64 {
-	j, _ := stats.Type1.Position(float64(total), p)
-	return min(max(1, int64(j)), total)
+	j, g := stats.Type1.Position(float64(total), p)
+	return min(max(1, int64(j+g)), total) // g is 1 where j falls short
 }
 
 // ranks lists the positions that the quantile needs.
