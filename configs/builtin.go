@@ -7,7 +7,7 @@ import (
 	"strings"
 )
 
-//go:embed scenarios data
+//go:embed scenarios stresses data
 var shipped embed.FS
 
 // Default is the scenario of a run that names none.
@@ -15,16 +15,7 @@ const Default = "quayside"
 
 // Names returns the built-in scenarios, the default first.
 func Names() []string {
-	entries, err := shipped.ReadDir("scenarios")
-	if err != nil {
-		panic("configs: " + err.Error()) // embedded
-	}
-	var names []string
-	for _, e := range entries {
-		if name, ok := strings.CutSuffix(e.Name(), ".yaml"); ok {
-			names = append(names, name)
-		}
-	}
+	names := shippedNames("scenarios")
 	slices.SortFunc(names, func(a, b string) int {
 		if (a == Default) != (b == Default) {
 			if a == Default {

@@ -103,7 +103,7 @@ func plain(message string) string {
 	case strings.Contains(message, "tab character"), strings.Contains(message, "cannot start any token"):
 		return message + "; indent with spaces, not tabs"
 	case strings.Contains(message, "document"):
-		return message + "; a scenario is one document"
+		return message + "; the file is one document"
 	}
 	return message
 }
@@ -171,8 +171,11 @@ func (c *converter) fault(y *yaml.Node, path, message string) {
 }
 
 func join(path, key string) string {
-	if path == "" {
+	switch {
+	case path == "":
 		return key
+	case key == "":
+		return path
 	}
 	return path + "." + key
 }

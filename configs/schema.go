@@ -166,12 +166,20 @@ func (d *schema) object() map[string]any {
 // Schema returns the JSON Schema of the scenario format. It is made by the same
 // description of the format that reads scenarios.
 func Schema() []byte {
-	w := &walk{faults: new(faults)}
+	return schemaOf("cistern scenario, format 1", func(s *section) { describe(s, nil) })
+}
+
+// StressSchema is Schema for stress files.
+func StressSchema() []byte {
+	return schemaOf("cistern stress, format 1", func(s *section) { describeStress(s, nil) })
+}
+
+func schemaOf(title string, describe func(*section)) []byte {
 	doc := new(schema)
-	describe(&section{w: w, doc: doc}, nil)
+	describe(&section{w: &walk{faults: new(faults)}, doc: doc})
 	o := doc.object()
 	o["$schema"] = "https://json-schema.org/draft/2020-12/schema"
-	o["title"] = "cistern scenario, format 1"
+	o["title"] = title
 	var b bytes.Buffer
 	e := json.NewEncoder(&b)
 	e.SetEscapeHTML(false)
