@@ -262,6 +262,7 @@ func readSummary(s *section, sc *Scenario) {
 	o.TopShares = s.levels("top_shares", "what share of the total the richest so many percent have", between(0, 100), 10, 1, 0.1)
 	o.Shortfall = s.levels("shortfall", "expected shortfall: the mean of the worst so many percent", aboveTo(0, 100), 1, 5)
 	o.Tail = s.number(number{key: "tail", meaning: "share of the upper tail whose Pareto index is estimated, in percent", in: aboveTo(0, 50), def: 5})
+	o.Mobility = s.mobility(sc)
 	s.done()
 }
 

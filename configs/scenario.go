@@ -60,6 +60,7 @@ type Summary struct {
 	TopShares   []float64 // richest shares, in percent
 	Shortfall   []float64 // worst shares, in percent
 	Tail        float64   // share of the upper tail whose index is estimated, in percent
+	Mobility    []Mobility
 }
 
 // Input is a file that a scenario names.

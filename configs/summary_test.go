@@ -15,7 +15,7 @@ func TestSummaryKeys(t *testing.T) {
 		t.Fatal(err)
 	}
 	want := Summary{Percentiles: []float64{1, 5, 10, 25, 50, 75, 90, 95, 99}, By: []string{"age", "group"}, Lorenz: []float64{10, 20, 30, 40, 50, 60, 70, 80, 90},
-		TopShares: []float64{10, 1, 0.1}, Shortfall: []float64{1, 5}, Tail: 5}
+		TopShares: []float64{10, 1, 0.1}, Shortfall: []float64{1, 5}, Tail: 5, Mobility: []Mobility{{35, 55, 5}}}
 	if !reflect.DeepEqual(sc.Summary, want) || sc.Growth != 0 {
 		t.Errorf("unasked: %+v, growth %v, want %+v and 0", sc.Summary, sc.Growth, want)
 	}
@@ -23,7 +23,7 @@ func TestSummaryKeys(t *testing.T) {
 	if sc, err = Parse("small.yaml", []byte(text), nil); err != nil {
 		t.Fatal(err)
 	}
-	want = Summary{Percentiles: []float64{99.9}, Lorenz: []float64{50}, TopShares: []float64{0.01}, Shortfall: []float64{100}, Tail: 0.5}
+	want = Summary{Percentiles: []float64{99.9}, Lorenz: []float64{50}, TopShares: []float64{0.01}, Shortfall: []float64{100}, Tail: 0.5, Mobility: []Mobility{{35, 55, 5}}}
 	if !reflect.DeepEqual(sc.Summary, want) || sc.Growth != -0.004 {
 		t.Errorf("asked: %+v, growth %v, want %+v and -0.004", sc.Summary, sc.Growth, want)
 	}

@@ -10,6 +10,7 @@ import (
 
 	"cistern/configs"
 	"cistern/output"
+	"cistern/output/mobility"
 	"cistern/policy"
 	"cistern/sim"
 )
@@ -24,7 +25,9 @@ type run struct {
 	rules    []*policy.Rule
 	twins    []*policy.Rule
 
+	reductions  []*reduction // of the panel: summary and mobility
 	summary     *output.Summary
+	mobility    []*mobility.Study
 	transferred *output.Transfer // nil: no such experiment
 	sample      *sample
 	result      sim.Result
@@ -123,11 +126,11 @@ func (r *run) solve(ctx context.Context) error {
 	return nil
 }
 
-// simulate runs the panel through writer and summary, as many times as the summary
-// asks for.
+// simulate runs the panel through writer and reductions, as many times as these ask
+// for.
 func (r *run) simulate(ctx context.Context) error {
 	population := r.sc.Population(r.rules, r.twins)
-	if err := r.newSummary(); err != nil {
+	if err := r.newReductions(); err != nil {
 		return err
 	}
 	r.sample = newSample(len(r.sc.Groups), population.Years())
@@ -163,7 +166,7 @@ func (r *run) simulate(ctx context.Context) error {
 			}
 		}
 		runtime.GC() // a pass leaves its blocks and buffers behind: the next must not come on top of them
-		more, err := r.summary.EndPass()
+		more, err := r.endPass()
 		if err != nil {
 			return err
 		}
@@ -192,8 +195,7 @@ func joinAbort(err error, panel *output.Panel) error {
 func (r *run) work(pass int, panel *output.Panel, from int64) sim.Work {
 	return func(worker int, b *sim.Block) (func() error, error) {
 		spans := r.spans(b)
-		add, err := r.summary.Add(worker, &output.SummaryRows{First: b.First, N: b.N, Spans: spans, Household: b.Household,
-			Income: b.Income, Consumption: b.Consumption, Assets: b.Assets, Propensity: b.Propensity, AtLimit: b.AtLimit, TwinAssets: b.TwinAssets})
+		add, err := r.reduce(worker, b, spans)
 		if err != nil || pass > 0 {
 			return add, err
 		}

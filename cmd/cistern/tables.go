@@ -6,6 +6,7 @@ import (
 
 	"cistern/configs"
 	"cistern/output"
+	"cistern/output/mobility"
 	"cistern/policy"
 )
 
@@ -23,6 +24,16 @@ func (r *run) writeTables(context.Context) error {
 	}
 	if err := r.write("summary.csv", summary.WriteCSV); err != nil {
 		return err
+	}
+	if len(r.mobility) > 0 {
+		moves := mobility.Table(r.mobility)
+		moves.Provenance = r.provenance()
+		if err := r.write("mobility.parquet", moves.WriteParquet); err != nil {
+			return err
+		}
+		if err := r.write("mobility.csv", moves.WriteCSV); err != nil {
+			return err
+		}
 	}
 	return r.write("accuracy.csv", r.accuracy.table(r.sc.LastAge-r.sc.FirstAge+1).WriteCSV)
 }

@@ -16,6 +16,9 @@ const Parts = distribution.Groups
 // DefaultHeld is 131,072 households: 3 MiB.
 const DefaultHeld = 1 << 17
 
+// budget is the memory for assets while limits are looked for.
+const budget = 32 << 20
+
 // Options says which ages and classes a [Study] compares.
 type Options struct {
 	FromAge, ToAge int      // FromAge < ToAge
@@ -107,7 +110,7 @@ func NewStudy(o Options) (*Study, error) {
 	}
 	wants := []distribution.Set{distribution.Percentiles, distribution.Percentiles}
 	d := distribution.Options{Variables: []distribution.Variable{{Name: "assets at the first age", Held: true}, {Name: "assets at the second age", Held: true}},
-		Cells: len(o.Groups), Percentiles: s.levels, Rows: o.Households, Extent: o.Households, Workers: o.Workers}
+		Cells: len(o.Groups), Percentiles: s.levels, Rows: o.Households, Extent: o.Households, Workers: o.Workers, Budget: budget}
 	everybody := distribution.Target{Wants: wants, Independent: true}
 	for g := range o.Groups {
 		cell := distribution.Cell{Index: g, Weight: 1}
