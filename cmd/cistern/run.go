@@ -32,6 +32,7 @@ type run struct {
 	sample      *sample
 	result      sim.Result
 	accuracy    *accuracy
+	tables      struct{ summary, policy, accuracy *output.Table } // as written
 	timings     []output.Timing
 	warnings    []string
 }
@@ -71,6 +72,7 @@ func (r *run) do(ctx context.Context) error {
 		{"accuracy", r.judge},
 		{"tables", r.writeTables},
 		{"transfer", r.transfer},
+		{"report", r.report},
 	} {
 		if step.name == "transfer" && r.sc.Experiments.Transfer == nil {
 			continue
@@ -294,10 +296,6 @@ func (r *run) newSummary() error {
 func (r *run) finish() error {
 	counts := map[string]int64{"households": r.result.Households, "household_years": r.result.HouseholdYears,
 		"household_years_above_grid": r.result.AboveTop, "types": int64(len(r.problems)), "summary_passes": int64(r.summary.Passes())}
-	var inputs []output.FileHash
-	for _, in := range r.sc.Inputs {
-		inputs = append(inputs, output.FileHash{Path: in.Name, Bytes: int64(len(in.Data)), SHA256: output.HashBytes(in.Data)})
-	}
-	return r.folder.Finish(output.Run{Version: version(), Title: r.sc.Title, Seed: r.sc.Seed, Scenario: r.hash, Inputs: inputs,
+	return r.folder.Finish(output.Run{Version: version(), Title: r.sc.Title, Seed: r.sc.Seed, Scenario: r.hash, Inputs: r.inputHashes(),
 		Counts: counts, Timings: r.timings, Warnings: r.warnings, Caution: caution})
 }

@@ -35,7 +35,9 @@ func (r *run) writeTables(context.Context) error {
 			return err
 		}
 	}
-	return r.write("accuracy.csv", r.accuracy.table(r.sc.LastAge-r.sc.FirstAge+1).WriteCSV)
+	errors := r.accuracy.table(r.sc.LastAge - r.sc.FirstAge + 1)
+	r.tables.summary, r.tables.policy, r.tables.accuracy = summary, rule, errors
+	return r.write("accuracy.csv", errors.WriteCSV)
 }
 
 // policyTable is policy.parquet: the rules at their nodes. Where a borrowing limit

@@ -1,0 +1,312 @@
+package report
+
+import (
+	"bytes"
+	"crypto/sha256"
+	"encoding/base64"
+	"encoding/json"
+	"encoding/xml"
+	"fmt"
+	"html"
+	"io"
+	"math"
+	"regexp"
+	"strings"
+	"testing"
+
+	"cistern/output"
+)
+
+// figures makes a summary table of two groups and all together over some ages.
+func figures(ages int, more func(add func(group string, age int, variable, statistic string, level, estimate, se float64))) *output.Table {
+	t := output.NewTable("summary")
+	group, age := t.AddString("group", "", ""), t.AddInt("age", "", "")
+	variable, statistic := t.AddString("variable", "", ""), t.AddString("statistic", "", "")
+	level, estimate, se := t.AddFloat("level", "", ""), t.AddFloat("estimate", "", ""), t.AddFloat("standard_error", "", "")
+	lower, upper, count := t.AddFloat("lower", "", ""), t.AddFloat("upper", "", ""), t.AddInt("households", "", "")
+	add := func(g string, a int, v, s string, l, e, error float64) {
+		group.AppendString(g)
+		if a < 0 {
+			age.AppendMissing()
+		} else {
+			age.AppendInt(int64(a))
+		}
+		variable.AppendString(v)
+		statistic.AppendString(s)
+		if math.IsNaN(l) {
+			level.AppendMissing()
+		} else {
+			level.AppendFloat(l)
+		}
+		estimate.AppendFloat(e)
+		se.AppendFloat(error)
+		lower.AppendFloat(e - 2*error)
+		upper.AppendFloat(e + 2*error)
+		count.AppendInt(100)
+	}
+	for _, g := range []string{"dockers", "clerks", output.Everyone} {
+		for a := range ages {
+			x := 1000 * float64(a) * float64(ages-a)
+			add(g, 30+a, "assets", "mean", nan, x, 20)
+			add(g, 30+a, "income", "mean", nan, 20000, 5)
+			add(g, 30+a, "consumption", "mean", nan, 19000, 5)
+			for _, p := range []float64{10, 25, 50, 75, 90} {
+				add(g, 30+a, "assets", "percentile", p, x*p/50, 30)
+			}
+			add(g, 30+a, "precautionary_assets", "mean", nan, x/4, 4)
+			add(g, 30+a, "precautionary_assets", "share_of_mean_assets", nan, 0.25, 0.004)
+		}
+	}
+	if more != nil {
+		more(add)
+	}
+	return t
+}
+
+func newRun() *Run {
+	return &Run{Name: "port", Title: "Port", Currency: "crown", Households: 100, Summary: figures(40, nil), Caution: "No advice.",
+		Assumptions: []Assumption{{"saving.return", "0.03", "a year"}}, Provenance: [][2]string{{"seed", "7"}}}
+}
+
+func write(t *testing.T, runs ...*Run) string {
+	t.Helper()
+	p, err := Compare(runs)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var b bytes.Buffer
+	if err := p.Write(&b); err != nil {
+		t.Fatal(err)
+	}
+	return b.String()
+}
+
+// The page's own words come from the numbers: derived by hand from figures.
+func TestLead(t *testing.T) {
+	got := strings.Join(Lead(newRun()), "\n")
+	want := "Wealth is highest at age 50: 400,000 crown on average (95 % interval 399,960 to 400,040), and 400,000 for the household in the middle.\n" +
+		"Of that mean, 100,000 crown (standard error 4), or 25.0 %, is held because income is risky: so much less the same households would hold if every income came at its mean."
+	if got != want {
+		t.Errorf("got\n%s\nwant\n%s", got, want)
+	}
+}
+
+// The policy of the page allows its own script and style, by their hashes, and
+// nothing else.
+func TestContentSecurityPolicy(t *testing.T) {
+	text := write(t, newRun())
+	policy := html.UnescapeString(regexp.MustCompile(`http-equiv="Content-Security-Policy" content="([^"]*)"`).FindStringSubmatch(text)[1])
+	if !strings.HasPrefix(policy, "default-src 'none'; ") {
+		t.Errorf("policy %s", policy)
+	}
+	for _, tag := range []string{"style", "script"} {
+		all := regexp.MustCompile(`(?s)<`+tag+`>(.*?)</`+tag+`>`).FindAllStringSubmatch(text, -1)
+		if len(all) != 1 {
+			t.Fatalf("%d elements <%s>, want 1", len(all), tag)
+		}
+		h := sha256.Sum256([]byte(all[0][1]))
+		if want := fmt.Sprintf("%s-src 'sha256-%s'", tag, base64.StdEncoding.EncodeToString(h[:])); !strings.Contains(policy, want) {
+			t.Errorf("the policy does not allow the page's own %s: want %s in %s", tag, want, policy)
+		}
+	}
+	if m := regexp.MustCompile(`\s(style|on[a-z]+|src)\s*=|https?://|url\(`).FindString(strings.ReplaceAll(text, `"http://www.w3.org/2000/svg"`, "")); m != "" {
+		t.Errorf("the page has %q", m)
+	}
+}
+
+const hostile = `</script><script>alert(1)</script><img src=x onerror=alert(2)>"'&{{.}}<!--`
+
+// Text from a scenario stays text, wherever it stands.
+func TestHostileText(t *testing.T) {
+	r := newRun()
+	r.Title, r.Currency, r.Name = hostile, hostile, hostile
+	r.Warnings = []string{hostile}
+	r.Assumptions = []Assumption{{hostile, hostile, hostile}}
+	r.Provenance = [][2]string{{hostile, hostile}}
+	group := r.Summary.Column("group")
+	for i, g := range group.Strings {
+		if g == "dockers" {
+			group.Strings[i] = hostile
+		}
+	}
+	r.Policy = output.PolicyTable("crown", false, false)
+	for _, c := range r.Policy.Columns {
+		for k := range 3 {
+			switch c.Kind {
+			case output.String:
+				c.AppendString(hostile)
+			case output.Int:
+				c.AppendInt(35)
+			default:
+				c.AppendFloat(float64(k) * 100)
+			}
+		}
+	}
+	for _, runs := range [][]*Run{{r}, {r, newRun()}} {
+		if len(runs) == 2 {
+			runs[1].Currency = hostile
+		}
+		text := write(t, runs...)
+		if n := strings.Count(text, "<script"); n != 2 {
+			t.Errorf("%d script elements, want 2", n)
+		}
+		if strings.Contains(text, "<img") || strings.Contains(text, "alert(1)</script>") {
+			t.Error("text became markup")
+		}
+		data := regexp.MustCompile(`(?s)<script type="application/json" id="data">(.*?)</script>`).FindStringSubmatch(text)[1]
+		var charts []struct{ Views []struct{ Group string } }
+		if err := json.Unmarshal([]byte(data), &charts); err != nil {
+			t.Fatalf("the data are no JSON: %v", err)
+		}
+		found := false
+		for _, c := range charts {
+			for _, v := range c.Views {
+				found = found || v.Group == hostile
+			}
+		}
+		if !found {
+			t.Error("the group's name did not survive")
+		}
+	}
+}
+
+// Every picture is well-formed.
+func TestPictures(t *testing.T) {
+	text := write(t, newRun())
+	pictures := regexp.MustCompile(`(?s)<svg.*?</svg>`).FindAllString(text, -1)
+	if len(pictures) < 9 {
+		t.Fatalf("%d pictures, want some for every group", len(pictures))
+	}
+	for _, p := range pictures {
+		d := xml.NewDecoder(strings.NewReader(p))
+		for {
+			if _, err := d.Token(); err == io.EOF {
+				break
+			} else if err != nil {
+				t.Fatalf("%v in %.200s", err, p)
+			}
+		}
+		if strings.Contains(p, "NaN") || strings.Contains(p, "Inf") {
+			t.Errorf("a place is no number in %.300s", p)
+		}
+	}
+}
+
+// What a run does not have leaves no trace, and what there is comes in order.
+func TestSections(t *testing.T) {
+	ids := func(r *Run) string {
+		var list []string
+		for _, s := range Sections(r) {
+			list = append(list, s.ID)
+		}
+		return strings.Join(list, " ")
+	}
+	if got, want := ids(newRun()), "wealth precaution flows percentiles accuracy assumptions provenance"; got != want {
+		t.Errorf("sections %s, want %s", got, want)
+	}
+	if got := ids(&Run{Title: "nothing"}); got != "" {
+		t.Errorf("sections %s of nothing", got)
+	}
+	r := newRun()
+	r.Summary = figures(40, func(add func(string, int, string, string, float64, float64, float64)) {
+		add(output.Everyone, -1, "assets", "lorenz", 50, 0.1, 0.01)
+		add(output.Everyone, 40, "runway_months", "share_below", 3, 0.2, 0.01)
+		add(output.Everyone, -1, "propensity_by_wealth", "mean", 1, 0.5, 0.01)
+	})
+	r.Extra = []Section{{ID: "extra", Title: "Extra", Words: []string{"more"}}}
+	if got, want := ids(r), "wealth precaution flows concentration percentiles runway propensity extra accuracy assumptions provenance"; got != want {
+		t.Errorf("sections %s, want %s", got, want)
+	}
+	if text := write(t, &Run{Title: "nothing", Caution: "No advice."}); !strings.Contains(text, "No advice.") {
+		t.Error("an empty page lacks the caution")
+	}
+}
+
+// The same content gives the same bytes, and many groups do not make a large page.
+func TestPageSize(t *testing.T) {
+	if write(t, newRun()) != write(t, newRun()) {
+		t.Error("the same run gives two pages")
+	}
+	r := newRun()
+	r.Summary = figures(70, func(add func(string, int, string, string, float64, float64, float64)) {
+		for k := range 60 {
+			for a := range 70 {
+				for _, p := range []float64{10, 25, 50, 75, 90} {
+					for _, v := range []string{"assets", "consumption", "income"} {
+						add(fmt.Sprintf("quay %d", k), 30+a, v, "percentile", p, 1000.123456789*float64(a)*p, 3)
+					}
+				}
+			}
+		}
+	})
+	text := write(t, r)
+	if len(text) > MostBytes {
+		t.Errorf("the page takes %d bytes", len(text))
+	}
+	if !strings.Contains(text, "The charts leave out the last") {
+		t.Error("groups are left out without a word")
+	}
+}
+
+// Several runs stand in one chart; what differs between them is listed.
+func TestCompare(t *testing.T) {
+	a, b := newRun(), newRun()
+	b.Name = "port-67"
+	b.Assumptions[0].Value = "0.04"
+	p, err := Compare([]*Run{a, b})
+	if err != nil {
+		t.Fatal(err)
+	}
+	series := p.Sections[0].Charts[0].Views[0].Series
+	if len(series) != 2 || series[0].Name != "port" || series[1].Name != "port-67" {
+		t.Errorf("series %+v", series)
+	}
+	if rows := p.Sections[1].Tables[0].Rows; len(rows) != 1 || rows[0][1] != "0.03" || rows[0][2] != "0.04" {
+		t.Errorf("differences %v", rows)
+	}
+	b.Currency = "shilling"
+	if _, err := Compare([]*Run{a, b}); err == nil {
+		t.Error("two currencies stand in one chart")
+	}
+	if _, err := Compare(nil); err == nil {
+		t.Error("a page about nothing")
+	}
+}
+
+// Numbers are written with the digits that their errors warrant.
+func TestRounded(t *testing.T) {
+	for _, tt := range []struct {
+		x, se float64
+		want  string
+	}{{201394.2, 1120, "201,400"}, {201394.2, 0.4, "201,394.2"}, {-5.5, 0.3, "−5.5"}, {0.01234, 0.001, "0.0123"}, {0, 0, "0"}, {1234567, nan, "1,235,000"}, {nan, 1, "–"}, {-0.0001, 1, "0.0"}} {
+		if got := rounded(tt.x, tt.se); got != tt.want {
+			t.Errorf("%v with error %v is written %s, want %s", tt.x, tt.se, got, tt.want)
+		}
+	}
+}
+
+// Ticks are round and hold the values between them.
+func TestScale(t *testing.T) {
+	for _, tt := range []struct {
+		low, high float64
+		a         Axis
+		want      string
+	}{
+		{0, 412000, Axis{Zero: true}, "0|100,000|200,000|300,000|400,000|500,000"},
+		{25, 100, Axis{Integer: true}, "40|60|80|100"},
+		{0, 0.98, Axis{Share: true, Zero: true}, "0 %|20 %|40 %|60 %|80 %|100 %"},
+		{0, 1.01, Axis{Share: true, Zero: true}, "0 %|25 %|50 %|75 %|100 %"},
+		{1, 5, Axis{Integer: true}, "1|2|3|4|5"},
+		{-12, 30, Axis{Zero: true}, "−20|−10|0|10|20|30"},
+		{7, 7, Axis{}, "6.0|6.5|7.0|7.5|8.0"},
+	} {
+		s := newScale(tt.low, tt.high, tt.a, 5)
+		var got []string
+		for _, x := range s.ticks {
+			got = append(got, s.tick(x, tt.a))
+		}
+		if strings.Join(got, "|") != tt.want {
+			t.Errorf("%v to %v: %s, want %s", tt.low, tt.high, strings.Join(got, "|"), tt.want)
+		}
+	}
+}
