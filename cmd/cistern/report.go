@@ -4,10 +4,11 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"io"
 	"os"
 	"path/filepath"
 	"slices"
+	"sync"
+	"sync/atomic"
 
 	"github.com/spf13/cobra"
 
@@ -97,6 +98,17 @@ func readReportRun(dir string) (*report.Run, error) {
 	if r.Policy, err = output.ReadTable(filepath.Join(dir, "policy.parquet")); err != nil {
 		return nil, err
 	}
+	for _, t := range []struct {
+		name string
+		to   **output.Table
+	}{{"mobility.parquet", &r.Mobility}, {"transfer.parquet", &r.Transfer}} {
+		if !slices.ContainsFunc(record.Files, func(f output.FileHash) bool { return f.Path == t.name }) {
+			continue
+		}
+		if *t.to, err = output.ReadTable(filepath.Join(dir, t.name)); err != nil {
+			return nil, err
+		}
+	}
 	file, err := os.Open(filepath.Join(dir, "accuracy.csv"))
 	if err != nil {
 		return nil, err
@@ -111,7 +123,7 @@ func readReportRun(dir string) (*report.Run, error) {
 // unchanged reports files of a run that a page is made of and that are not as they
 // were written.
 func unchanged(dir string, record *output.Run) error {
-	made := []string{"scenario.yaml", "summary.parquet", "policy.parquet", "accuracy.csv"}
+	made := []string{"scenario.yaml", "summary.parquet", "policy.parquet", "mobility.parquet", "transfer.parquet", "accuracy.csv"}
 	for _, f := range record.Files {
 		if !slices.Contains(made, f.Path) {
 			continue
@@ -153,13 +165,43 @@ func (r *run) inputHashes() []output.FileHash {
 }
 
 // report writes the page and the figures.
-func (r *run) report(context.Context) error {
+func (r *run) report(ctx context.Context) error {
 	p := reportRun(r.sc, version(), r.hash, r.inputHashes())
 	p.Households, p.AboveGrid, p.Warnings = r.result.Households, r.result.AboveTop, r.warnings
 	p.Summary, p.Policy, p.Accuracy = r.tables.summary, r.tables.policy, r.tables.accuracy
+	p.Mobility, p.Transfer = r.tables.mobility, r.tables.transfer
 	page, err := report.Compare([]*report.Run{p})
 	if err != nil {
 		return err
 	}
-	return r.write("report.html", func(w io.Writer) error { return page.Write(w) })
+	if err := r.write("report.html", page.Write); err != nil {
+		return err
+	}
+	return r.writeFigures(ctx, report.Figures(page.Sections))
+}
+
+// writeFigures writes the charts as files, shared out over workers.
+func (r *run) writeFigures(ctx context.Context, figures []report.Figure) error {
+	paths := make([]string, len(figures))
+	for i, f := range figures {
+		var err error
+		if paths[i], err = r.folder.Path("figures/" + f.Name); err != nil {
+			return err
+		}
+	}
+	errs := make([]error, len(figures))
+	var next atomic.Int64
+	var wg sync.WaitGroup
+	for range min(r.g.workers, len(figures)) {
+		wg.Go(func() {
+			for i := int(next.Add(1)) - 1; i < len(figures) && ctx.Err() == nil; i = int(next.Add(1)) - 1 {
+				errs[i] = output.WriteFile(paths[i], figures[i].Write)
+			}
+		})
+	}
+	wg.Wait()
+	if ctx.Err() != nil {
+		return context.Cause(ctx)
+	}
+	return errors.Join(errs...)
 }

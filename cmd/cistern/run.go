@@ -32,7 +32,7 @@ type run struct {
 	sample      *sample
 	result      sim.Result
 	accuracy    *accuracy
-	tables      struct{ summary, policy, accuracy *output.Table } // as written
+	tables      struct{ summary, policy, accuracy, mobility, transfer *output.Table } // as written
 	timings     []output.Timing
 	warnings    []string
 }

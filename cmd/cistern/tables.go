@@ -28,6 +28,7 @@ func (r *run) writeTables(context.Context) error {
 	if len(r.mobility) > 0 {
 		moves := mobility.Table(r.mobility)
 		moves.Provenance = r.provenance()
+		r.tables.mobility = moves
 		if err := r.write("mobility.parquet", moves.WriteParquet); err != nil {
 			return err
 		}

@@ -51,6 +51,7 @@ func (r *run) transfer(ctx context.Context) error {
 	}
 	table := r.transferred.Table()
 	table.Provenance = r.provenance()
+	r.tables.transfer = table
 	if err := r.write("transfer.parquet", table.WriteParquet); err != nil {
 		return err
 	}

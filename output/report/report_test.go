@@ -6,8 +6,10 @@ import (
 	"encoding/base64"
 	"encoding/json"
 	"encoding/xml"
+	"errors"
 	"fmt"
 	"html"
+	"image/png"
 	"io"
 	"math"
 	"regexp"
@@ -307,6 +309,54 @@ func TestScale(t *testing.T) {
 		}
 		if strings.Join(got, "|") != tt.want {
 			t.Errorf("%v to %v: %s, want %s", tt.low, tt.high, strings.Join(got, "|"), tt.want)
+		}
+	}
+}
+
+// Every chart is there as SVG and PNG, well-formed and the same every time.
+func TestFigures(t *testing.T) {
+	r := newRun()
+	r.Currency = hostile
+	figures := Figures(Sections(r))
+	if len(figures) < 8 {
+		t.Fatalf("%d files", len(figures))
+	}
+	for _, f := range figures {
+		var a, b bytes.Buffer
+		if err := errors.Join(f.Write(&a), f.Write(&b)); err != nil {
+			t.Fatal(err)
+		}
+		if !bytes.Equal(a.Bytes(), b.Bytes()) {
+			t.Errorf("%s differs from time to time", f.Name)
+		}
+		if strings.HasSuffix(f.Name, ".svg") {
+			d := xml.NewDecoder(&a)
+			for {
+				if _, err := d.Token(); err == io.EOF {
+					break
+				} else if err != nil {
+					t.Fatalf("%s: %v", f.Name, err)
+				}
+			}
+			continue
+		}
+		picture, err := png.Decode(&a)
+		if err != nil {
+			t.Fatalf("%s: %v", f.Name, err)
+		}
+		if size := picture.Bounds().Size(); size.X < 900 || size.Y < 600 {
+			t.Errorf("%s is %v pixels large", f.Name, size)
+		}
+		inked := 0
+		for y := range picture.Bounds().Dy() {
+			for x := range picture.Bounds().Dx() {
+				if r, _, b, _ := picture.At(x, y).RGBA(); b > r+0x3000 {
+					inked++ // the first line is blue
+				}
+			}
+		}
+		if inked < 500 {
+			t.Errorf("%s has %d pixels of its line", f.Name, inked)
 		}
 	}
 }

@@ -31,6 +31,8 @@ type Run struct {
 	Summary     *output.Table
 	Accuracy    *output.Table
 	Policy      *output.Table
+	Mobility    *output.Table
+	Transfer    *output.Table
 	Assumptions []Assumption
 	Provenance  [][2]string
 	Warnings    []string
@@ -45,7 +47,7 @@ type Assumption struct{ Key, Value, Meaning string }
 func Sections(r *Run) []Section {
 	s := readSummary(r.Summary)
 	var list []Section
-	for _, make := range []func(*Run, *summary) Section{wealth, precaution, flows, rules, concentration, percentiles, runway, propensity} {
+	for _, make := range []func(*Run, *summary) Section{wealth, precaution, flows, rules, concentration, percentiles, runway, propensity, transferred, mobility} {
 		if section := make(r, s); len(section.Charts)+len(section.Tables) > 0 {
 			list = append(list, section)
 		}
