@@ -89,7 +89,7 @@ func (s *Summary) newStudy() error {
 	}
 	for i := range s.variables {
 		v := &s.variables[i]
-		variable := distribution.Variable{Name: v.key, Optional: v.gaps, Held: v.wants != 0}
+		variable := distribution.Variable{Name: v.key, Optional: v.gaps, MeanOnly: v.wants == 0, Held: v.wants != 0}
 		if v.shares != nil {
 			for _, share := range v.shares(o) {
 				variable.Shares = append(variable.Shares, share.at)

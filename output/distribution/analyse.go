@@ -19,9 +19,10 @@ const (
 
 // result is what is known of one held variable in one target.
 type result struct {
-	rows  int64   // with a value
-	total int64   // their weight in units
-	scale float64 // units per weight; 0: every row is one unit
+	rows      int64   // with a value
+	low, high float64 // ends of the bins of the extremes
+	total     int64   // their weight in units
+	scale     float64 // units per weight; 0: every row is one unit
 
 	levels    []float64  // of the quantiles, in percent
 	quantiles []quantile // by level
@@ -54,34 +55,26 @@ func (s *Study) size(k int) {
 	mass := 0.0
 	for _, c := range t.Cells {
 		m := &s.moments[c.Index]
-		if m.vars == nil {
-			continue
-		}
-		for g := range m.vars[v].sums {
-			mass += float64(c.Weight * m.vars[v].sums[g].mass)
-			r.rows += int64(m.vars[v].sums[g].mass) // rows, where rows have no weights
+		if n := m.valuesOf(v); n > 0 {
+			r.rows += n
+			for g := range Groups {
+				mass += float64(c.Weight * m.massOf(v, g))
+			}
 		}
 	}
-	if mass == 0 {
-		r.rows = 0
+	if r.rows == 0 {
 		return
 	}
 	if s.o.Weighted || t.weighted() {
 		r.scale = math.Ldexp(1, 61) / mass
 	}
 	if s.o.Weighted {
-		r.rows = 0 // counted when they are sorted
-		return
+		return // units are counted when the rows are sorted
 	}
 	for _, c := range t.Cells {
-		if m := &s.moments[c.Index]; m.vars != nil {
-			u := r.unit(c.Weight)
-			for g := range m.vars[v].sums {
-				n := m.vars[v].sums[g].mass
-				r.total += int64(n) * int64(u)
-				r.squares += n * float64(u) * float64(u)
-			}
-		}
+		n, u := s.moments[c.Index].valuesOf(v), int64(r.unit(c.Weight))
+		r.total += n * u
+		r.squares += float64(n) * float64(u) * float64(u)
 	}
 }
 
@@ -122,19 +115,14 @@ func (s *Study) analyse(so *sampler, index [][]piece, k int, whole bool) {
 	r.gini = stats.Estimate{Value: nan, StandardError: nan, Lower: nan, Upper: nan}
 	t, slot := &s.o.Targets[k/len(s.held)], k%len(s.held)
 	wants := t.Wants[s.held[slot]]
-	if wants == 0 || r.rows == 0 && !s.o.Weighted {
+	if wants == 0 || r.rows == 0 {
 		return
 	}
 	so.load(index, t, slot, r.scale)
 	if s.o.Weighted {
-		r.rows, r.total = int64(so.whole.rows), 0
 		for _, u := range so.units {
 			r.total += int64(u)
 		}
-	}
-	if r.rows == 0 || r.total == 0 {
-		r.rows = 0
-		return
 	}
 	switch {
 	case wants&Percentiles != 0:
@@ -157,6 +145,8 @@ func (s *Study) analyse(so *sampler, index [][]piece, k int, whole bool) {
 		r.planEdges(&s.o)
 	}
 	if whole {
+		r.low, _ = binEnds(so.keys[0] >> binShift)
+		_, r.high = binEnds(so.keys[len(so.keys)-1] >> binShift)
 		at := map[int64]float64{}
 		w := so.walk()
 		for _, rank := range r.ranks() {

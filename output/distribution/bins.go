@@ -164,10 +164,15 @@ func addUp(bins []bin) []bin {
 	return slices.Clip(out)
 }
 
+// binEnds returns the lowest and highest value of the bin of a prefix.
+func binEnds(prefix uint64) (low, high float64) {
+	return fromKey(prefix << binShift), fromKey((prefix+1)<<binShift - 1)
+}
+
 // sum returns the weighted sum of the values of a bin, the lowest value and the
 // width.
 func (b bin) sum() (sum, low, width float64) {
-	low = fromKey(b.prefix << binShift)
-	width = fromKey((b.prefix+1)<<binShift-1) - low
+	low, high := binEnds(b.prefix)
+	width = high - low
 	return b.mass*low + width*((b.shift+b.mass/2)/(1<<offsetBits)), low, width
 }

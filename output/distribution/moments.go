@@ -1,25 +1,20 @@
 package distribution
 
-import (
-	"math"
-
-	"cistern/output/stats"
-)
+import "math"
 
 // tally are the sums of one variable over rows of one jackknife group. Values are
 // taken about a pivot, a value of the cell, so that squares cost no digits and a
 // constant has no variance at all.
-type tally struct {
-	mass          float64 // Σ w
-	first, second float64 // Σ w·(x − pivot), Σ w·(x − pivot)²
-}
+type tally struct{ first, second float64 } // Σ w·(x − pivot), Σ w·(x − pivot)²
 
 // variableSums are the sums of one variable in one cell, by jackknife group.
 type variableSums struct {
-	any       bool
+	any       bool // there is a value
 	pivot     float64
-	low, high float64 // extremes, for the variables of Options.Means
+	low, high float64 // extremes, of Options.Means alone
 	sums      [Groups]tally
+	mass      []float64         // [group] Σ w; nil: the cell's rows, where all have a value and weigh 1
+	values    int64             // rows with a value, where mass is counted
 	shares    [][Groups]float64 // [threshold] Σ w of the rows counted
 }
 
@@ -31,20 +26,22 @@ type cellSums struct {
 }
 
 // reset empties the sums for a cell and keeps their memory.
-func (c *cellSums) reset(cell int, o *Options) {
+func (c *cellSums) reset(cell int, s *Study) {
 	c.cell, c.rows = cell, [Groups]int64{}
 	if c.vars == nil {
-		c.vars = make([]variableSums, len(o.Variables))
+		c.vars = make([]variableSums, len(s.o.Variables))
+		for v := range c.vars {
+			c.vars[v].shares = make([][Groups]float64, len(s.o.Variables[v].Shares))
+			if s.o.Weighted || s.o.Variables[v].Optional {
+				c.vars[v].mass = make([]float64, Groups)
+			}
+		}
 	}
 	for v := range c.vars {
-		s := &c.vars[v]
-		shares := s.shares
-		*s = variableSums{low: math.Inf(1), high: math.Inf(-1)}
-		if shares == nil {
-			shares = make([][Groups]float64, len(o.Variables[v].Shares))
-		}
-		clear(shares)
-		s.shares = shares
+		u := &c.vars[v]
+		clear(u.shares)
+		clear(u.mass)
+		*u = variableSums{low: math.Inf(1), high: math.Inf(-1), mass: u.mass, shares: u.shares}
 	}
 }
 
@@ -55,7 +52,7 @@ type blockSums struct {
 }
 
 // open returns the sums of a cell, those in use last if it is the same.
-func (b *blockSums) open(cell int, o *Options) *cellSums {
+func (b *blockSums) open(cell int, s *Study) *cellSums {
 	if b.used > 0 && b.cells[b.used-1].cell == cell {
 		return &b.cells[b.used-1]
 	}
@@ -63,7 +60,7 @@ func (b *blockSums) open(cell int, o *Options) *cellSums {
 		b.cells = append(b.cells, cellSums{})
 	}
 	c := &b.cells[b.used]
-	c.reset(cell, o)
+	c.reset(cell, s)
 	b.used++
 	return c
 }
@@ -92,49 +89,92 @@ func (s *Study) sum(b *blockSums, r *Rows) {
 		if sp.From == sp.To {
 			continue
 		}
-		c := b.open(sp.Cell, &s.o)
+		c := b.open(sp.Cell, s)
 		unit := r.Unit[sp.From:sp.To]
-		for _, u := range unit {
-			c.rows[u&(Groups-1)]++
+		column := func(v int) []float64 { return r.Values[v][sp.From:sp.To] }
+		var weight []float64
+		if s.o.Weighted {
+			weight = r.Weight[sp.From:sp.To]
 		}
-		for v := range c.vars {
-			x := r.Values[v][sp.From:sp.To]
-			switch {
-			case s.o.Weighted:
-				c.vars[v].addWeighted(unit, x, r.Weight[sp.From:sp.To])
-			case s.o.Variables[v].Optional:
-				c.vars[v].addOptional(unit, x)
-			default:
-				c.vars[v].add(unit, x)
-			}
-			c.vars[v].count(s.o.Variables[v].Shares, unit, x, r, sp)
-			if s.bounded[v] {
-				c.vars[v].bound(x)
+		s.sumPlain(c, unit, column)
+		for _, v := range s.gappy {
+			if weight != nil {
+				c.vars[v].addWeighted(unit, column(v), weight, s.o.Variables[v].Optional)
+			} else {
+				c.vars[v].addOptional(unit, column(v))
 			}
 		}
-	}
-	if s.o.Weighted {
-		return
-	}
-	for i := range b.used { // where every row has a value, rows are mass
-		c := &b.cells[i]
+		if weight != nil {
+			countRows(&c.rows, unit, weight)
+		}
 		for v := range c.vars {
-			if !s.o.Variables[v].Optional {
-				for g, n := range c.rows {
-					c.vars[v].sums[g].mass = float64(n)
-				}
+			if shares := s.o.Variables[v].Shares; len(shares) > 0 {
+				c.vars[v].count(shares, unit, column(v), weight)
 			}
+		}
+		for _, v := range s.o.Means {
+			c.vars[v].bound(column(v))
 		}
 	}
 }
 
-// add takes values of which none is missing and none weighs more than another;
-// their mass is left to the caller.
-func (s *variableSums) add(unit []int64, x []float64) {
-	if !s.any {
-		s.any, s.pivot = true, x[0]
+// sumPlain sums the variables of which every row has a value and all weigh the
+// same, three at a time, and counts rows.
+func (s *Study) sumPlain(c *cellSums, unit []int64, column func(int) []float64) {
+	rows := &c.rows
+	if s.o.Weighted {
+		return
 	}
-	pivot := s.pivot
+	spread := s.spread
+	for ; len(spread) >= 3; spread = spread[3:] {
+		i, j, k := spread[0], spread[1], spread[2]
+		addThree(rows, &c.vars[i], &c.vars[j], &c.vars[k], unit, column(i), column(j), column(k))
+		rows = new([Groups]int64) // counted once
+	}
+	for _, v := range spread {
+		c.vars[v].add(unit, column(v))
+	}
+	for _, v := range s.level {
+		c.vars[v].addMean(unit, column(v))
+	}
+	if len(s.spread) < 3 {
+		countRows(&c.rows, unit, nil)
+	}
+}
+
+// begin sets the pivot.
+func (s *variableSums) begin(x float64) float64 {
+	if !s.any {
+		s.any, s.pivot = true, x
+	}
+	return s.pivot
+}
+
+// addThree takes values of three variables and counts rows: together they wait
+// less for memory.
+func addThree(rows *[Groups]int64, a, b, c *variableSums, unit []int64, x, y, z []float64) {
+	p, q, r := a.begin(x[0]), b.begin(y[0]), c.begin(z[0])
+	x, y, z = x[:len(unit)], y[:len(unit)], z[:len(unit)]
+	for k, u := range unit {
+		g := u & (Groups - 1)
+		rows[g]++
+		t := &a.sums[g]
+		d := x[k] - p
+		t.first += d
+		t.second += float64(d * d)
+		t = &b.sums[g]
+		d = y[k] - q
+		t.first += d
+		t.second += float64(d * d)
+		t = &c.sums[g]
+		d = z[k] - r
+		t.first += d
+		t.second += float64(d * d)
+	}
+}
+
+func (s *variableSums) add(unit []int64, x []float64) {
+	pivot := s.begin(x[0])
 	x = x[:len(unit)]
 	for k, u := range unit {
 		t := &s.sums[u&(Groups-1)]
@@ -144,47 +184,58 @@ func (s *variableSums) add(unit []int64, x []float64) {
 	}
 }
 
+func (s *variableSums) addMean(unit []int64, x []float64) {
+	pivot := s.begin(x[0])
+	x = x[:len(unit)]
+	for k, u := range unit {
+		s.sums[u&(Groups-1)].first += x[k] - pivot
+	}
+}
+
 func (s *variableSums) addOptional(unit []int64, x []float64) {
 	for k, u := range unit {
 		if v := x[k]; v == v {
-			if !s.any {
-				s.any, s.pivot = true, v
-			}
+			d := v - s.begin(v)
 			t := &s.sums[u&(Groups-1)]
-			d := v - s.pivot
-			t.mass++
 			t.first += d
 			t.second += float64(d * d)
+			s.mass[u&(Groups-1)]++
+			s.values++
 		}
 	}
 }
 
-func (s *variableSums) addWeighted(unit []int64, x, weight []float64) {
+func (s *variableSums) addWeighted(unit []int64, x, weight []float64, optional bool) {
 	for k, u := range unit {
-		if v := x[k]; v == v {
-			if !s.any {
-				s.any, s.pivot = true, v
-			}
+		if v, w := x[k], weight[k]; (v == v || !optional) && w > 0 {
+			d := v - s.begin(v)
 			t := &s.sums[u&(Groups-1)]
-			d, w := v-s.pivot, weight[k]
-			t.mass += w
 			t.first += float64(w * d)
 			t.second += float64(w * float64(d*d))
+			s.mass[u&(Groups-1)] += w
+			s.values++
+		}
+	}
+}
+
+// countRows counts rows; those that weigh nothing are not there.
+func countRows(rows *[Groups]int64, unit []int64, weight []float64) {
+	for k, u := range unit {
+		if weight == nil || weight[k] > 0 {
+			rows[u&(Groups-1)]++
 		}
 	}
 }
 
 // count counts the rows on the near side of each threshold. A missing value is on
 // neither side.
-func (s *variableSums) count(shares []Threshold, unit []int64, x []float64, r *Rows, sp Span) {
+func (s *variableSums) count(shares []Threshold, unit []int64, x, weight []float64) {
+	x = x[:len(unit)]
 	for i, t := range shares {
-		highest := t.Value
-		if t.Strict {
-			highest = math.Nextafter(highest, math.Inf(-1))
-		}
+		highest := t.highest()
 		at := &s.shares[i]
-		if r.Weight != nil {
-			for k, w := range r.Weight[sp.From:sp.To] {
+		if weight != nil {
+			for k, w := range weight {
 				if x[k] <= highest {
 					at[unit[k]&(Groups-1)] += w
 				}
@@ -192,13 +243,19 @@ func (s *variableSums) count(shares []Threshold, unit []int64, x []float64, r *R
 			continue
 		}
 		for k, u := range unit {
-			var one float64
 			if x[k] <= highest {
-				one = 1
+				at[u&(Groups-1)]++
 			}
-			at[u&(Groups-1)] += one
 		}
 	}
+}
+
+// highest is the highest value that counts.
+func (t Threshold) highest() float64 {
+	if t.Strict {
+		return math.Nextafter(t.Value, math.Inf(-1))
+	}
+	return t.Value
 }
 
 func (s *variableSums) bound(x []float64) {
@@ -220,7 +277,7 @@ func (c *cellSums) finite() (variable int, ok bool) {
 		var sum float64
 		for g := range c.vars[v].sums {
 			t := &c.vars[v].sums[g]
-			sum += (t.first - t.first) + (t.second - t.second) + (t.mass - t.mass) // 0, or NaN where infinite or NaN
+			sum += (t.first - t.first) + (t.second - t.second) // 0, or NaN where infinite or NaN
 		}
 		if sum != 0 {
 			return v, false
@@ -229,159 +286,54 @@ func (c *cellSums) finite() (variable int, ok bool) {
 	return 0, true
 }
 
-// fold adds weight times the sums of another part, moved to c's pivot.
-func (s *variableSums) fold(part *variableSums, weight float64) {
-	if !part.any {
-		return
+// massOf is the weight of a variable's rows in a group.
+func (c *cellSums) massOf(v, g int) float64 {
+	if m := c.vars[v].mass; m != nil {
+		return m[g]
 	}
-	if !s.any {
-		s.any, s.pivot = true, part.pivot
-	}
-	d := part.pivot - s.pivot
-	for g := range s.sums {
-		to, from := &s.sums[g], &part.sums[g]
-		mass := float64(weight * from.mass)
-		to.mass += mass
-		to.first += float64(weight*from.first) + float64(mass*d)
-		to.second += float64(weight*from.second) + float64(2*d*float64(weight*from.first)) + float64(mass*float64(d*d))
-	}
-	for i := range s.shares {
-		for g := range s.shares[i] {
-			s.shares[i][g] += float64(weight * part.shares[i][g])
-		}
-	}
-	s.low, s.high = min(s.low, part.low), max(s.high, part.high)
+	return float64(c.rows[g])
 }
 
+// fold adds weight times the sums of another part, moved to c's pivot.
 func (c *cellSums) fold(part *cellSums, weight float64) {
 	for v := range c.vars {
-		c.vars[v].fold(&part.vars[v], weight)
+		to, from := &c.vars[v], &part.vars[v]
+		if !from.any {
+			continue
+		}
+		d := from.pivot - to.begin(from.pivot)
+		for g := range to.sums {
+			t, f := &to.sums[g], &from.sums[g]
+			mass := float64(weight * part.massOf(v, g))
+			t.first += float64(weight*f.first) + float64(mass*d)
+			t.second += float64(weight*f.second) + float64(2*d*float64(weight*f.first)) + float64(mass*float64(d*d))
+			if to.mass != nil {
+				to.mass[g] += mass
+			}
+		}
+		to.values += part.valuesOf(v)
+		for i := range to.shares {
+			for g := range to.shares[i] {
+				to.shares[i][g] += float64(weight * from.shares[i][g])
+			}
+		}
+		to.low, to.high = min(to.low, from.low), max(to.high, from.high)
 	}
 	for g, n := range part.rows {
 		c.rows[g] += n
 	}
 }
 
-// pool folds the cells of a target, in their order.
-func (s *Study) pool(t *Target) *cellSums {
-	c := new(cellSums)
-	c.reset(-1, &s.o)
-	for _, cell := range t.Cells {
-		if m := &s.moments[cell.Index]; m.vars != nil {
-			c.fold(m, cell.Weight)
-		}
+// valuesOf is the number of rows with a value of a variable.
+func (c *cellSums) valuesOf(v int) (n int64) {
+	if c.vars == nil {
+		return 0
 	}
-	return c
-}
-
-// total returns the sums over all jackknife groups.
-func (s *variableSums) total() (all tally) {
-	for g := range s.sums {
-		all.mass += s.sums[g].mass
-		all.first += s.sums[g].first
-		all.second += s.sums[g].second
+	if c.vars[v].mass != nil {
+		return c.vars[v].values
 	}
-	return all
-}
-
-// jackknife returns a statistic with its error: of is called with every group and
-// without each in turn, given what is left out (−1: nothing).
-func jackknife(sizes *[Groups]float64, of func(without int) float64) stats.Estimate {
-	full := of(-1)
-	var without [Groups]float64
-	for g := range without {
-		if sizes[g] > 0 {
-			without[g] = of(g)
-		}
+	for _, m := range c.rows {
+		n += m
 	}
-	se, n := stats.Jackknife(full, without[:], sizes[:])
-	return stats.JackknifeInterval(full, se, n, confidence)
-}
-
-// masses are the sizes of the jackknife groups.
-func (s *variableSums) masses() *[Groups]float64 {
-	var m [Groups]float64
-	for g := range m {
-		m[g] = s.sums[g].mass
-	}
-	return &m
-}
-
-// left returns the total without a group.
-func (s *variableSums) left(all tally, without int) tally {
-	if without >= 0 {
-		t := &s.sums[without]
-		all.mass -= t.mass
-		all.first -= t.first
-		all.second -= t.second
-	}
-	return all
-}
-
-func (s *variableSums) mean() stats.Estimate {
-	all := s.total()
-	return jackknife(s.masses(), func(without int) float64 {
-		t := s.left(all, without)
-		return s.pivot + t.first/t.mass
-	})
-}
-
-// sd is the standard deviation, with the factor n/(n−1) for n rows. Its interval
-// is that of the logarithm, whose sampling distribution is nearer to the normal.
-func (s *variableSums) sd(rows float64) stats.Estimate {
-	all := s.total()
-	of := func(without int) float64 {
-		t := s.left(all, without)
-		n := rows * t.mass / all.mass
-		if n < 2 {
-			return math.NaN()
-		}
-		return math.Sqrt(max(0, t.second-t.first*t.first/t.mass) / t.mass * (n / (n - 1)))
-	}
-	e := jackknife(s.masses(), of)
-	if e.Value > 0 {
-		log := jackknife(s.masses(), func(without int) float64 { return math.Log(of(without)) })
-		e.Lower, e.Upper = math.Exp(log.Lower), math.Exp(log.Upper)
-	}
-	return e
-}
-
-// share is the share of rows that threshold i counts. Its interval is that of
-// Clopper and Pearson, with the effective number of rows that the jackknife error
-// implies where rows are not independent.
-func (s *variableSums) share(i int, rows float64, independent bool) stats.Estimate {
-	all := s.total()
-	counted := 0.0
-	for _, c := range s.shares[i] {
-		counted += c
-	}
-	e := jackknife(s.masses(), func(without int) float64 {
-		c := counted
-		if without >= 0 {
-			c -= s.shares[i][without]
-		}
-		return c / s.left(all, without).mass
-	})
-	if e.Value > 1 { // sums of weights, rounded
-		e.Value = 1
-	}
-	if p := e.Value; !independent && e.StandardError > 0 {
-		rows = min(rows, p*(1-p)/(e.StandardError*e.StandardError))
-	}
-	e.Lower, e.Upper = stats.ProportionInterval(e.Value, max(1, rows), confidence)
-	return e
-}
-
-// ratio is the mean of s over the mean of by, over their own rows; NaN unless the
-// latter is positive.
-func (s *variableSums) ratio(by *variableSums) stats.Estimate {
-	top, bottom := s.total(), by.total()
-	return jackknife(by.masses(), func(without int) float64 {
-		t, b := s.left(top, without), by.left(bottom, without)
-		below := by.pivot + b.first/b.mass
-		if !(below > 0) {
-			return math.NaN()
-		}
-		return (s.pivot + t.first/t.mass) / below
-	})
+	return n
 }

@@ -18,6 +18,7 @@ const confidence = 0.95
 type Variable struct {
 	Name     string
 	Optional bool        // NaN says that a row has no value; otherwise every value must be finite
+	MeanOnly bool        // the standard deviation is not wanted, which saves time
 	Shares   []Threshold // shares of rows to count
 	Held     bool        // the distribution is wanted by some target: quantiles or anything made of them
 }
@@ -79,7 +80,7 @@ type Options struct {
 
 	Rows     int64 // how many rows there will be, at most: decides on the method
 	Extent   int64 // Rows.First runs from 0 to below this
-	Weighted bool  // rows carry weights; they must then fit the budget
+	Weighted bool  // rows carry weights, at least 0; they must then fit the budget
 	Workers  int   // goroutines that call Add, at least 1
 	Budget   int64 // bytes for values held at a time; 0: DefaultBudget
 }
@@ -113,12 +114,15 @@ func (o Options) Validate() error {
 			}
 		}
 	}
-	for _, m := range o.Means {
-		if m < 0 || m >= len(o.Variables) {
-			bad("means of variable %d of %d", m, len(o.Variables))
+	for i, m := range o.Means {
+		if m < 0 || m >= len(o.Variables) || slices.Contains(o.Means[:i], m) {
+			bad("means of variable %d, want one of %d, each once", m, len(o.Variables))
 		}
 	}
 	for _, v := range o.Variables {
+		if v.MeanOnly && v.Held {
+			bad("variable %s is held, but only its mean is wanted", v.Name)
+		}
 		for _, s := range v.Shares {
 			if math.IsNaN(s.Value) {
 				bad("variable %s: a threshold is no number", v.Name)

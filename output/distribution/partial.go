@@ -181,7 +181,7 @@ func (s *Study) newClassSet(k int, r *result, t *Target) classSet {
 	for i, e := range r.edges {
 		set.of[i], _ = slices.BinarySearch(set.limits, e.value)
 	}
-	low, high := s.extremes(t, v)
+	low, high := r.low, r.high
 	from := low
 	for _, l := range set.limits {
 		set.ranges = append(set.ranges, newSpan(from, l))
@@ -209,12 +209,13 @@ func (s *Study) newClassSet(k int, r *result, t *Target) classSet {
 	return set
 }
 
-// extremes returns the lowest and highest value of a variable in a target.
-func (s *Study) extremes(t *Target, v int) (low, high float64) {
+// extremes returns the lowest and highest value of one of Options.Means in a
+// target.
+func (s *Study) extremes(t *Target, m int) (low, high float64) {
 	low, high = math.Inf(1), math.Inf(-1)
 	for _, c := range t.Cells {
-		if m := &s.moments[c.Index]; m.vars != nil {
-			low, high = min(low, m.vars[v].low), max(high, m.vars[v].high)
+		if cell := &s.moments[c.Index]; cell.vars != nil {
+			low, high = min(low, cell.vars[m].low), max(high, cell.vars[m].high)
 		}
 	}
 	if low > high {

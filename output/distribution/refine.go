@@ -104,6 +104,8 @@ func (s *Study) beginRefinement() (more bool, err error) {
 		if len(t.Cells) > 1 {
 			bins = addUp(bins)
 		}
+		result.low, _ = binEnds(bins[0].prefix)
+		_, result.high = binEnds(bins[len(bins)-1].prefix)
 		if t.Wants[s.held[slot]]&Gini != 0 {
 			result.setGini(bins)
 		}

@@ -36,6 +36,9 @@ func (s *Study) CellRows(cell int) int64 {
 	return n
 }
 
+// CellValues returns the number of rows of a cell with a value of variable v.
+func (s *Study) CellValues(cell, v int) int64 { return s.moments[cell].valuesOf(v) }
+
 // Rows returns the number of rows of the target, with a value of any variable or
 // without.
 func (r *Result) Rows() int64 {
@@ -46,29 +49,8 @@ func (r *Result) Rows() int64 {
 	return n
 }
 
-// values is the number of rows with a value, as far as it is known: rows with
-// weights that lack one count.
-func (r *Result) values(v int) float64 {
-	if r.s.o.Weighted {
-		return float64(r.Rows())
-	}
-	n := 0.0
-	for _, c := range r.t.Cells {
-		if m := &r.s.moments[c.Index]; m.vars != nil {
-			n += m.vars[v].total().mass
-		}
-	}
-	return n
-}
-
-// Values returns the number of rows with a value of variable v; of weighted rows,
-// where v is not Held, the number of rows.
-func (r *Result) Values(v int) int64 {
-	if k := r.s.slot[v]; k >= 0 && r.t.Wants[v] != 0 {
-		return r.of(v).rows
-	}
-	return int64(r.values(v))
-}
+// Values returns the number of rows with a value of variable v.
+func (r *Result) Values(v int) int64 { return r.sums.vars[v].values }
 
 var missing = stats.Estimate{Value: math.NaN(), StandardError: math.NaN(), Lower: math.NaN(), Upper: math.NaN()}
 
@@ -80,12 +62,13 @@ func (r *Result) Mean(v int) stats.Estimate {
 	return r.sums.vars[v].mean()
 }
 
-// SD returns the standard deviation of variable v, with the factor n/(n−1).
+// SD returns the standard deviation of variable v, with the factor n/(n−1); NaN
+// where MeanOnly.
 func (r *Result) SD(v int) stats.Estimate {
-	if !r.sums.vars[v].any {
+	if !r.sums.vars[v].any || r.s.o.Variables[v].MeanOnly {
 		return missing
 	}
-	return r.sums.vars[v].sd(r.values(v))
+	return r.sums.vars[v].sd()
 }
 
 // Share returns the share of rows that threshold i of variable v counts.
@@ -93,7 +76,7 @@ func (r *Result) Share(v, i int) stats.Estimate {
 	if !r.sums.vars[v].any {
 		return missing
 	}
-	return r.sums.vars[v].share(i, r.values(v), r.t.Independent)
+	return r.sums.vars[v].share(i, r.t.Independent)
 }
 
 // Proportion returns the mean of variable v, which is 0 or 1, with the interval of
@@ -103,12 +86,7 @@ func (r *Result) Proportion(v int) stats.Estimate {
 	if math.IsNaN(e.Value) {
 		return e
 	}
-	n := r.values(v)
-	if p := e.Value; !r.t.Independent && e.StandardError > 0 {
-		n = min(n, p*(1-p)/(e.StandardError*e.StandardError))
-	}
-	e.Lower, e.Upper = stats.ProportionInterval(e.Value, max(1, n), confidence)
-	return e
+	return r.sums.vars[v].proportion(e, r.t.Independent)
 }
 
 // Ratio returns the mean of variable v over the mean of variable by; NaN unless the
@@ -263,7 +241,7 @@ func (r *Result) MeanIn(v, class, m int) stats.Estimate {
 	if mass == 0 {
 		return missing
 	}
-	return jackknife(&masses, func(without int) float64 {
+	return jackknife(masses[:], func(without int) float64 {
 		if without < 0 {
 			return sum / mass
 		}
@@ -297,7 +275,7 @@ func (k *result) share(of func(*held) float64) stats.Estimate {
 		h.total += sums[g]
 	}
 	all := h
-	return jackknife(&masses, func(without int) float64 {
+	return jackknife(masses[:], func(without int) float64 {
 		h := all
 		if h.without = without; without >= 0 {
 			h.mass -= masses[without]

@@ -1,6 +1,9 @@
 package distribution
 
-import "fmt"
+import (
+	"fmt"
+	"math"
+)
 
 // Rows are a block of rows. Blocks are numbered by First; Add keeps no reference.
 type Rows struct {
@@ -9,7 +12,7 @@ type Rows struct {
 	Spans  []Span      // stretches of one cell, adjoining from 0 to N
 	Unit   []int64     // [row]
 	Values [][]float64 // [variable][row]
-	Weight []float64   // [row] at least 0 and finite; nil unless Options.Weighted
+	Weight []float64   // [row] at least 0 and finite, 0: the row is not there; nil unless Options.Weighted
 }
 
 // Span says that the rows From ≤ k < To are of one cell.
@@ -30,6 +33,11 @@ func (s *Study) check(r *Rows) error {
 	}
 	if s.o.Weighted && len(r.Weight) < r.N || !s.o.Weighted && r.Weight != nil {
 		return bad("%d weights for %d rows", len(r.Weight), r.N)
+	}
+	for k, w := range r.Weight[:min(r.N, len(r.Weight))] {
+		if !(w >= 0 && w <= math.MaxFloat64) {
+			return bad("row %d weighs %v, want at least 0", k, w)
+		}
 	}
 	at := 0
 	for _, sp := range r.Spans {

@@ -92,7 +92,7 @@ func (so *sampler) load(index [][]piece, t *Target, slot int, scale float64) {
 	for i, c := range t.Cells {
 		for _, p := range index[c.Index] {
 			for k, x := range p.b.values[slot][p.from:p.to] {
-				if x != x {
+				if x != x || p.b.weights != nil && !(p.b.weights[p.from+k] > 0) {
 					continue
 				}
 				so.raw.keys = append(so.raw.keys, key(x))

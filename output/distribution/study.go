@@ -18,15 +18,17 @@ import (
 //
 // A panel that does not fit takes three to eight passes.
 type Study struct {
-	o       Options
-	held    []int  // variables whose distribution some target wants
-	slot    []int  // [variable] place in held, −1: none
-	bounded []bool // [variable] extremes are kept
-	stored  []int  // variables that the store keeps: held ones, and Means
-	phase   phase
-	passes  int
-	fault   error
-	mu      sync.Mutex // guards spare and fault
+	o      Options
+	held   []int // variables whose distribution some target wants
+	slot   []int // [variable] place in held, −1: none
+	spread []int // variables of which every row has a value and weighs 1, with their standard deviation
+	level  []int // the same without
+	gappy  []int // all others
+	stored []int // variables that the store keeps: held ones, and Means
+	phase  phase
+	passes int
+	fault  error
+	mu     sync.Mutex // guards spare and fault
 
 	moments []cellSums   // by cell; written by commits only
 	spare   []*blockSums // partial sums to reuse
@@ -59,19 +61,25 @@ func NewStudy(o Options) (*Study, error) {
 	if o.Budget == 0 {
 		o.Budget = DefaultBudget
 	}
-	s := &Study{o: o, passes: 1, slot: make([]int, len(o.Variables)), bounded: make([]bool, len(o.Variables)), moments: make([]cellSums, o.Cells)}
+	s := &Study{o: o, passes: 1, slot: make([]int, len(o.Variables)), moments: make([]cellSums, o.Cells)}
 	for v, variable := range o.Variables {
 		s.slot[v] = -1
 		if variable.Held {
 			s.slot[v] = len(s.held)
 			s.held = append(s.held, v)
-			s.bounded[v] = true
+		}
+		switch {
+		case o.Weighted || variable.Optional:
+			s.gappy = append(s.gappy, v)
+		case variable.MeanOnly:
+			s.level = append(s.level, v)
+		default:
+			s.spread = append(s.spread, v)
 		}
 	}
 	s.stored = append(s.stored, s.held...)
 	for _, m := range o.Means {
-		if !s.bounded[m] {
-			s.bounded[m] = true
+		if s.slot[m] < 0 {
 			s.stored = append(s.stored, m)
 		}
 	}
@@ -178,7 +186,7 @@ func (s *Study) commit(first int64, sums *blockSums, kept *block) error {
 		}
 		to := &s.moments[part.cell]
 		if to.vars == nil {
-			to.reset(part.cell, &s.o)
+			to.reset(part.cell, s)
 		}
 		to.fold(part, 1)
 	}
