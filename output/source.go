@@ -27,10 +27,14 @@ type sourceColumn struct {
 	index    int
 	kind     Kind
 	optional bool
+	unsigned bool    // integers stand for numbers from 0
+	scale    float64 // decimal: integers stand for that part of themselves; 0: not so
+	refused  string  // why it cannot be read; empty where it can
 }
 
-// OpenParquet opens the file path. A column that is neither text, bool, integer
-// nor floating point, or is nested, is an error.
+// OpenParquet opens the file path. Columns that are neither text, bool, integer,
+// decimal of at most 18 digits nor floating point, or are nested, cannot be read:
+// the file opens, and NewColumn says why.
 func OpenParquet(path string) (*Source, error) {
 	f, err := os.Open(path)
 	if err != nil {
@@ -53,21 +57,12 @@ func (s *Source) open() (err error) {
 	if err != nil {
 		return err
 	}
-	for i, c := range s.file.Root().Columns() {
-		if !c.Leaf() || c.Repeated() {
-			return fmt.Errorf("column %s is nested", c.Name())
-		}
-		kind := Int
-		switch c.Type().Kind() {
-		case parquet.ByteArray:
-			kind = String
-		case parquet.Float, parquet.Double:
-			kind = Float
-		case parquet.Boolean, parquet.Int32, parquet.Int64:
-		default:
-			return fmt.Errorf("column %s has type %s", c.Name(), c.Type())
-		}
-		s.columns[c.Name()] = sourceColumn{index: i, kind: kind, optional: c.Optional()}
+	leaf := 0
+	for _, c := range s.file.Root().Columns() {
+		sc := describeColumn(c)
+		sc.index = leaf
+		leaf += leaves(c)
+		s.columns[c.Name()] = sc
 		s.names = append(s.names, c.Name())
 	}
 	return nil
@@ -75,6 +70,13 @@ func (s *Source) open() (err error) {
 
 // Close closes the file.
 func (s *Source) Close() error { return s.f.Close() }
+
+// Has returns the kind of a column, whether values may be missing, and whether it
+// is there and can be read.
+func (s *Source) Has(name string) (kind Kind, optional, readable bool) {
+	c, ok := s.columns[name]
+	return c.kind, c.optional, ok && c.refused == ""
+}
 
 // Names returns the columns' names in order.
 func (s *Source) Names() []string { return s.names }
@@ -84,6 +86,9 @@ func (s *Source) Rows() int64 { return s.file.NumRows() }
 
 // Groups returns the number of row groups.
 func (s *Source) Groups() int { return len(s.file.RowGroups()) }
+
+// GroupRows returns the number of rows of row group g.
+func (s *Source) GroupRows(g int) int64 { return s.file.RowGroups()[g].NumRows() }
 
 // Metadata returns the footer's key-value pairs: units, meanings, provenance.
 func (s *Source) Metadata() map[string]string {
@@ -100,6 +105,9 @@ func (s *Source) NewColumn(name string) (*Column, error) {
 	sc, ok := s.columns[name]
 	if !ok {
 		return nil, fmt.Errorf("output: %s has no column %s", s.path, name)
+	}
+	if sc.refused != "" {
+		return nil, fmt.Errorf("output: %s: column %s is %s, want text, a number or a bool", s.path, name, sc.refused)
 	}
 	unit, _ := s.file.Lookup("column." + name + ".unit")
 	meaning, _ := s.file.Lookup("column." + name + ".meaning")
@@ -128,7 +136,7 @@ func (s *Source) ReadColumn(g int, c *Column) (err error) {
 		if err != nil {
 			return err
 		}
-		err = c.readPage(page, sc.optional)
+		err = c.readPage(page, &sc)
 		parquet.Release(page)
 		if err != nil {
 			return err

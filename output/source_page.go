@@ -3,6 +3,7 @@ package output
 import (
 	"errors"
 	"io"
+	"slices"
 
 	"github.com/parquet-go/parquet-go"
 )
@@ -12,17 +13,44 @@ func (c *Column) Reset() {
 	c.Strings, c.Ints, c.Floats, c.Missing = c.Strings[:0], c.Ints[:0], c.Floats[:0], nil
 }
 
-// readPage appends a page's values. Required columns are read as whole slices
-// (a few nanoseconds a value), optional ones value by value.
-func (c *Column) readPage(page parquet.Page, optional bool) error {
+// readPage appends a page's values, read as whole slices (a few nanoseconds a
+// value); those of kinds that have no slices one by one.
+func (c *Column) readPage(page parquet.Page, sc *sourceColumn) error {
 	n := int(page.NumValues())
-	switch dict := page.Dictionary(); {
-	case optional:
-		return c.readValues(page)
-	case dict != nil:
+	nulls := int(page.NumNulls())
+	into := c
+	var whole Column
+	if sc.scale != 0 {
+		whole.Kind = Int
+		into = &whole
+	}
+	read, err := into.readValuesOf(page, n-nulls, sc)
+	if err != nil {
+		return err
+	}
+	if !read { // one by one, absent ones included
+		return into.readValues(page)
+	}
+	for _, v := range whole.Ints {
+		c.Floats = append(c.Floats, float64(v)*sc.scale)
+	}
+	switch {
+	case nulls > 0:
+		c.spread(page.DefinitionLevels(), n-nulls)
+	case c.Missing != nil:
+		c.Missing = append(c.Missing, make([]bool, n)...)
+	}
+	return nil
+}
+
+// readValuesOf appends the n values that a page has. It reports false, and does
+// nothing, where they can be read one by one only.
+func (c *Column) readValuesOf(page parquet.Page, n int, sc *sourceColumn) (read bool, err error) {
+	if dict := page.Dictionary(); dict != nil {
 		data := page.Data()
 		c.lookUp(dict, data.Int32()[:n])
-		return nil
+		sc.interpret(c, n, page.Type().Kind())
+		return true, nil
 	}
 	data := page.Data()
 	switch page.Type().Kind() {
@@ -38,10 +66,14 @@ func (c *Column) readPage(page parquet.Page, optional bool) error {
 		for _, v := range data.Int32()[:n] {
 			c.Ints = append(c.Ints, int64(v))
 		}
+		sc.interpret(c, n, parquet.Int32)
 	default:
-		return c.readValues(page)
+		return false, nil
 	}
-	return nil
+	if sc.unsigned && page.Type().Kind() == parquet.Int64 && slices.ContainsFunc(c.Ints[len(c.Ints)-n:], func(v int64) bool { return v < 0 }) {
+		return false, errors.New("an unsigned integer is above 2^63 - 1")
+	}
+	return true, nil
 }
 
 // lookUp appends the dictionary's values at the indexes.

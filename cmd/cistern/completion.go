@@ -46,13 +46,20 @@ func flagsLike(cmd *cobra.Command, err error) []string {
 	if !errors.As(err, &unknown) {
 		return nil
 	}
-	names := &cobra.Command{SuggestionsMinimumDistance: 2} // cobra compares names of commands only: lend it some
-	cmd.Flags().VisitAll(func(f *pflag.Flag) {
-		names.AddCommand(&cobra.Command{Use: f.Name, Run: func(*cobra.Command, []string) {}})
-	})
-	like := names.SuggestionsFor(unknown.GetSpecifiedName())
+	var names []string
+	cmd.Flags().VisitAll(func(f *pflag.Flag) { names = append(names, f.Name) })
+	like := nearest(unknown.GetSpecifiedName(), names)
 	for i, name := range like {
 		like[i] = "--" + name
 	}
 	return like
+}
+
+// nearest returns the names that a misspelt one may stand for.
+func nearest(name string, known []string) []string {
+	names := &cobra.Command{SuggestionsMinimumDistance: 2} // cobra compares names of commands only: lend it some
+	for _, k := range known {
+		names.AddCommand(&cobra.Command{Use: k, Run: func(*cobra.Command, []string) {}})
+	}
+	return names.SuggestionsFor(name)
 }

@@ -113,7 +113,7 @@ A model's output under stated assumptions; no personal financial advice.`,
 	})
 	g.addFlags(root.PersistentFlags())
 	root.AddCommand(newSimulateCommand(g), newCheckCommand(g), newIncomeCommand(g), newSolveCommand(g),
-		newScenariosCommand(g), newVerifyCommand(g), newReportCommand(g), newSchemaCommand(g), newVersionCommand(g))
+		newScenariosCommand(g), newVerifyCommand(g), newReportCommand(g), newSummariseCommand(g), newSchemaCommand(g), newVersionCommand(g))
 	addHelpAndCompletion(root)
 	return root
 }
