@@ -271,7 +271,16 @@ func (s *Solver) placeAssets(t, from, to int) {
 // families (all have linear risk tolerance) where the rest of life is certain and
 // no estate is cared for.
 func (s *Solver) piecewiseLinear(t int) bool {
-	return s.o.Interpolation == Cubic && s.kind != anyKind && s.h.Bequest.Weight == 0 && t < s.h.Years()-1 && !s.h.Working(t+1)
+	return s.o.Interpolation == Cubic && s.kind != anyKind && s.h.Bequest.Weight == 0 && t < s.h.Years()-1 && s.h.certainFrom(t+1)
+}
+
+// certainFrom reports whether income is certain from year t on.
+func (h Household) certainFrom(t int) bool {
+	if !h.Working(t) {
+		return true
+	}
+	values, _ := h.Income(t, 0)
+	return h.Nodes() == 1 && len(values) == 1
 }
 
 // invert turns the expectations of the nodes in [from, to) into this year's rule
