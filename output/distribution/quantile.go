@@ -40,7 +40,7 @@ func plan(n, total int64, weighted bool, p, effect float64) quantile {
 	if lower == 0 {
 		q.lower = 0
 	}
-	if upper > effective || q.upper > total {
+	if q.upper = min(q.upper, total); upper > effective {
 		q.upper = total + 1
 	}
 	return q

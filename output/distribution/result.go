@@ -146,14 +146,16 @@ func (r *Result) GiniBound(v int) float64 { return r.wants(v, Gini).giniBound }
 // have.
 func (r *Result) Lorenz(v, i int) stats.Estimate {
 	k := r.wants(v, Concentration)
-	return k.share(func(h *held) float64 { return h.lorenz(r.s.o.Lorenz[i]/100, i) })
+	return k.figure(func(p *partial, without int) float64 { return p.lorenz(r.s.o.Lorenz[i]/100, i, without) })
 }
 
 // TopShare returns the share of the total that the richest Options.TopShares[i] per
 // cent have.
 func (r *Result) TopShare(v, i int) stats.Estimate {
 	k, o := r.wants(v, Concentration), &r.s.o
-	return k.share(func(h *held) float64 { return 1 - h.lorenz(1-o.TopShares[i]/100, len(o.Lorenz)+i) })
+	return k.figure(func(p *partial, without int) float64 {
+		return 1 - p.lorenz(1-o.TopShares[i]/100, len(o.Lorenz)+i, without)
+	})
 }
 
 // QuintileRatio returns S80/S20: what the richest fifth have over what the poorest
@@ -161,12 +163,12 @@ func (r *Result) TopShare(v, i int) stats.Estimate {
 func (r *Result) QuintileRatio(v int) stats.Estimate {
 	k, o := r.wants(v, Concentration), &r.s.o
 	at := len(o.Lorenz) + len(o.TopShares)
-	return k.share(func(h *held) float64 {
-		poorest := h.lorenz(0.2, at)
+	return k.figure(func(p *partial, without int) float64 {
+		poorest := p.lorenz(0.2, at, without)
 		if !(poorest > 0) {
 			return math.NaN()
 		}
-		return (1 - h.lorenz(0.8, at+1)) / poorest
+		return (1 - p.lorenz(0.8, at+1, without)) / poorest
 	})
 }
 
@@ -174,8 +176,10 @@ func (r *Result) QuintileRatio(v int) stats.Estimate {
 func (r *Result) Shortfall(v, i int) stats.Estimate {
 	k, o := r.wants(v, Shortfall), &r.s.o
 	at := len(o.Lorenz) + len(o.TopShares) + 2 + i
-	p := o.Shortfalls[i] / 100
-	return k.share(func(h *held) float64 { return h.lowest(p, at) / (p * h.mass) })
+	share := o.Shortfalls[i] / 100
+	return k.figure(func(p *partial, without int) float64 {
+		return p.lowest(share, at, without) / (share * p.own.whole(without).mass)
+	})
 }
 
 // Hill returns Hill's index of the upper Options.Tails[i] per cent, with the number
@@ -185,29 +189,34 @@ func (r *Result) Hill(v, i int) (alpha stats.Estimate, rows int64) {
 	if k.partial == nil {
 		return missing, 0
 	}
-	at := k.partial.of[len(o.Lorenz)+len(o.TopShares)+2+len(o.Shortfalls)+i]
-	if !(k.partial.limits[at] > 0) {
+	p, first := k.partial, o.firstTail()+3*i
+	at := p.of[first]
+	u := p.limits[at]
+	if !(u > 0) {
 		return missing, 0
 	}
-	above := 0.0
-	for class := at + 1; class < len(k.partial.own.mass); class++ {
-		for g := range Groups {
-			above += k.partial.own.mass[class][g]
-		}
+	density := 0.0 // of log x at the threshold, over the rows
+	if low, high := p.limits[p.of[first+1]], p.limits[p.of[first+2]]; low > 0 && high > low {
+		density = 2 * k.besides(o.Tails[i]/100) / math.Log(high/low)
 	}
-	alpha = k.share(func(h *held) float64 {
-		mass, logs := 0.0, 0.0
+	whole := p.own.whole(-1).mass
+	share := 1 - p.own.upTo(at, -1).mass/whole
+	return k.figure(func(p *partial, without int) float64 {
+		all := p.own.whole(without).mass
+		above := all - p.own.upTo(at, without).mass
+		logs := -above * math.Log(u)
 		for g := range Groups {
-			if g != h.without {
-				logs += k.partial.logs[i][g]
-				for class := at + 1; class < len(k.partial.own.mass); class++ {
-					mass += k.partial.own.mass[class][g]
-				}
+			if g != without {
+				logs += p.logs[i][g]
 			}
 		}
-		return mass / logs
-	})
-	return alpha, int64(math.Round(above / float64(k.total) * float64(k.rows)))
+		if without >= 0 && density > 0 {
+			shift := (above/all - share) / density // by which the threshold moves
+			logs += shift * (density*all*shift/2 - above)
+			above = share * all
+		}
+		return above / logs
+	}), p.above[i]
 }
 
 // MeanIn returns the mean of Options.Means[m] among the rows in class, from 0, of
@@ -217,96 +226,48 @@ func (r *Result) MeanIn(v, class, m int) stats.Estimate {
 	if k.partial == nil {
 		return missing
 	}
-	first := len(o.Lorenz) + len(o.TopShares) + 2 + len(o.Shortfalls) + len(o.Tails)
-	from, to := 0, len(k.partial.own.mass)
+	first := o.firstClass()
+	above, to := -1, len(k.partial.own)-1
 	if class > 0 {
-		from = k.partial.of[first+class-1] + 1
+		above = k.partial.of[first+class-1]
 	}
 	if class < o.Classes-1 {
-		to = k.partial.of[first+class] + 1
+		to = k.partial.of[first+class]
 	}
-	c := &k.partial.means[m]
-	var masses, sums [Groups]float64
-	var mass, sum float64
-	for j := from; j < to; j++ {
-		for g := range Groups {
-			masses[g] += c.mass[j][g]
-			sums[g] += c.sum[j][g]
-		}
-	}
-	for g := range Groups {
-		mass += masses[g]
-		sum += sums[g]
-	}
-	if mass == 0 {
+	c := k.partial.means[m]
+	inside := func(without int) heap { return c.upTo(to, without).less(c.upTo(above, without)) }
+	if inside(-1).mass == 0 {
 		return missing
 	}
-	return jackknife(masses[:], func(without int) float64 {
-		if without < 0 {
-			return sum / mass
-		}
-		return (sum - sums[without]) / (mass - masses[without])
+	return jackknife(c.masses(above, to), func(without int) float64 {
+		h := inside(without)
+		return h.sum / h.mass
 	})
 }
 
-// held is a sample of partial sums, all of it or without a jackknife group.
-type held struct {
-	p           *partial
-	without     int
-	mass, total float64 // Σ w, Σ w·x
-}
-
-// share returns a figure made of partial sums with its error.
-func (k *result) share(of func(*held) float64) stats.Estimate {
-	if k.partial == nil {
+// figure returns a figure made of partial sums with its error.
+func (k *result) figure(of func(p *partial, without int) float64) stats.Estimate {
+	p := k.partial
+	if p == nil {
 		return missing
 	}
-	var masses [Groups]float64
-	var sums [Groups]float64
-	h := held{p: k.partial}
-	for class := range k.partial.own.mass {
-		for g := range Groups {
-			masses[g] += k.partial.own.mass[class][g]
-			sums[g] += k.partial.own.sum[class][g]
-		}
-	}
-	for g := range Groups {
-		h.mass += masses[g]
-		h.total += sums[g]
-	}
-	all := h
-	return jackknife(masses[:], func(without int) float64 {
-		h := all
-		if h.without = without; without >= 0 {
-			h.mass -= masses[without]
-			h.total -= sums[without]
-		}
-		return of(&h)
-	})
+	return jackknife(p.own.masses(-1, len(p.own)-1), func(without int) float64 { return of(p, without) })
 }
 
-// lowest returns p·N·x_p − D_p, what the lowest share p have, the threshold being
-// that of edge i.
-func (h *held) lowest(p float64, i int) float64 {
-	at := h.p.of[i]
-	x := h.p.limits[at]
-	mass, sum := 0.0, 0.0
-	for class := range at + 1 {
-		for g := range Groups {
-			if g != h.without {
-				mass += h.p.own.mass[class][g]
-				sum += h.p.own.sum[class][g]
-			}
-		}
-	}
-	return p*h.mass*x - (x*mass - sum)
+// lowest returns share·N·x_p − D_p, what the lowest share of the rows have, the
+// threshold being that of edge i.
+func (p *partial) lowest(share float64, i, without int) float64 {
+	at := p.of[i]
+	below := p.own.upTo(at, without)
+	return below.sum + (share*p.own.whole(without).mass-below.mass)*p.limits[at]
 }
 
-// lorenz is what the lowest share p have of the total; NaN unless that is
+// lorenz is what the lowest share of the rows have of the total; NaN unless that is
 // positive.
-func (h *held) lorenz(p float64, i int) float64 {
-	if !(h.total > 0) {
+func (p *partial) lorenz(share float64, i, without int) float64 {
+	total := p.own.whole(without).sum
+	if !(total > 0) {
 		return math.NaN()
 	}
-	return h.lowest(p, i) / h.total
+	return p.lowest(share, i, without) / total
 }

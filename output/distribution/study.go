@@ -154,7 +154,7 @@ func (s *Study) Add(worker int, rows *Rows) (commit func() error, err error) {
 	case refining:
 		return nil, s.fail(s.refine.add(worker, rows, s.held))
 	case summing:
-		s.sets.add(worker, rows)
+		s.sets.add(worker, rows.Spans, rows.Values, s.held, rows.Unit, nil, nil)
 		return nil, nil
 	}
 	sums := s.take()
@@ -223,7 +223,7 @@ func (s *Study) EndPass() (more bool, err error) {
 			more = s.endRefining()
 		}
 	case summing:
-		s.sets.finish(s.results)
+		err = s.sets.settle(s.results)
 		s.sets = nil
 	}
 	if err != nil {
@@ -246,13 +246,13 @@ func (s *Study) endMeasuring() (more bool, err error) {
 	whole := s.hist == nil
 	s.analyseStore(whole)
 	if whole {
-		if s.sets = s.newClassSets(); s.sets != nil {
+		if s.sets = s.newClassSets(known); s.sets != nil {
 			s.replay()
-			s.sets.finish(s.results)
+			err = s.sets.settle(s.results)
 			s.sets = nil
 		}
 		s.store = store{}
-		return false, nil
+		return false, err
 	}
 	s.store = store{}
 	s.phase = refining
@@ -268,7 +268,7 @@ func (s *Study) endRefining() (more bool) {
 	s.refine.finish(s.results)
 	s.refine = nil
 	s.phase = summing
-	s.sets = s.newClassSets()
+	s.sets = s.newClassSets(known)
 	return s.sets != nil
 }
 
@@ -283,7 +283,7 @@ func (s *Study) replay() {
 				for k, v := range s.stored {
 					values[v] = blocks[i].values[k]
 				}
-				s.sets.addBlock(w, blocks[i].spans, values, blocks[i].tags, blocks[i].weights)
+				s.sets.add(w, blocks[i].spans, values, s.held, nil, blocks[i].tags, blocks[i].weights)
 			}
 		})
 	}
