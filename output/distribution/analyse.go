@@ -1,6 +1,7 @@
 package distribution
 
 import (
+	"cmp"
 	"math"
 	"slices"
 	"sync"
@@ -31,6 +32,7 @@ type result struct {
 	squares   float64 // Σ units²
 	edges     []edge  // thresholds of partial sums, in the order of Options
 	partial   *partial
+	ties      []tie // keys that many rows of the sample share
 }
 
 // edge is the value at which the cumulated weight reaches rank, in units.
@@ -144,6 +146,9 @@ func (s *Study) analyse(so *sampler, index [][]piece, k int, whole bool) {
 	if wants&sums != 0 {
 		r.planEdges(&s.o)
 	}
+	if !whole {
+		r.ties = so.ties()
+	}
 	if whole {
 		r.low, _ = binEnds(so.keys[0] >> binShift)
 		_, r.high = binEnds(so.keys[len(so.keys)-1] >> binShift)
@@ -185,4 +190,50 @@ func (r *result) set(at map[int64]float64) {
 	for i := range r.edges {
 		r.edges[i].value = at[r.edges[i].rank]
 	}
+}
+
+// A key that at least leastTies rows of a sample share is a tie; mostTies of them
+// are minded.
+const (
+	leastTies = 64
+	mostTies  = 512
+)
+
+// ties lists the keys that many rows share.
+func (s *sample) ties() (ties []tie) {
+	for from := 0; from < len(s.keys); {
+		to := from
+		for to < len(s.keys) && s.keys[to] == s.keys[from] {
+			to++
+		}
+		if to-from >= leastTies {
+			ties = append(ties, tie{s.keys[from], uint64(to - from)})
+		}
+		from = to
+	}
+	return ties
+}
+
+// ties lists the ties of every slot, ascending.
+func (s *Study) ties() [][]uint64 {
+	lists := make([][]uint64, len(s.held))
+	for slot := range lists {
+		rows := map[uint64]uint64{}
+		for k := slot; k < len(s.results); k += len(s.held) {
+			for _, t := range s.results[k].ties {
+				rows[t.key] = max(rows[t.key], t.rows)
+			}
+			s.results[k].ties = nil
+		}
+		var all []tie
+		for k, n := range rows {
+			all = append(all, tie{k, n})
+		}
+		slices.SortFunc(all, func(a, b tie) int { return cmp.Or(cmp.Compare(b.rows, a.rows), cmp.Compare(a.key, b.key)) })
+		for _, t := range all[:min(len(all), mostTies)] {
+			lists[slot] = append(lists[slot], t.key)
+		}
+		slices.Sort(lists[slot])
+	}
+	return lists
 }

@@ -33,8 +33,9 @@ type classSet struct {
 	tails  []upper // [tail]
 }
 
-// upper is where an upper tail begins: rows above a stretch are in it.
-type upper struct{ edge, stretch int }
+// upper is where an upper tail begins: rows above its last stretch are in it, those
+// below its first are not.
+type upper struct{ edge, first, last int }
 
 // logScale is that of logarithms.
 var logScale = newScale(0, 1024)
@@ -45,24 +46,25 @@ type accumulators struct {
 	own   totals
 	means []totals        // [mean]
 	logs  [][Groups]total // [tail]
-	above []int64         // [tail] rows
+	rows  []int64         // [class], where rows are not units
 	open  []openRow
+	other []float64 // [open row·means + mean]
 }
 
 // openRow is a row in a stretch where a limit is not known yet.
 type openRow struct {
 	x       float64
 	unit    uint64
-	others  []float64 // [mean]
-	stretch int
+	stretch uint16
 	group   uint8
 }
 
-// openBytes is what such a row takes, without the values of others.
-const openBytes = 56
+// openBytes is what such a row takes, in a slice that has grown, without the values
+// of others.
+const openBytes = 36
 
 func newAccumulators(set *classSet, classes int) *accumulators {
-	a := &accumulators{own: make(totals, classes*Groups), means: make([]totals, len(set.means)), logs: make([][Groups]total, len(set.tails)), above: make([]int64, len(set.tails))}
+	a := &accumulators{own: make(totals, classes*Groups), means: make([]totals, len(set.means)), logs: make([][Groups]total, len(set.tails)), rows: make([]int64, classes)}
 	for i := range a.means {
 		a.means[i] = make(totals, classes*Groups)
 	}
@@ -70,8 +72,8 @@ func newAccumulators(set *classSet, classes int) *accumulators {
 }
 
 // newClassSets prepares the partial sums of all results that want some; nil if none
-// does. where returns the stretch in which the value of a result's edge lies.
-func (s *Study) newClassSets(where func(k int, e edge) stretch) *classSets {
+// does. where returns the stretches in which the value of a result's edge lies.
+func (s *Study) newClassSets(where func(k int, e edge) []stretch) *classSets {
 	slots := len(s.held)
 	c := &classSets{slots: slots, uses: make([][]use, s.o.Cells*slots), scales: make([]scale, slots), spaces: make([]classSpace, s.o.Workers)}
 	for slot := range slots {
@@ -111,14 +113,14 @@ func (s *Study) newClassSets(where func(k int, e edge) stretch) *classSets {
 	return c
 }
 
-func (s *Study) newClassSet(k int, r *result, t *Target, own scale, where func(int, edge) stretch) classSet {
+func (s *Study) newClassSet(k int, r *result, t *Target, own scale, where func(int, edge) []stretch) classSet {
 	set := classSet{result: k, scale: r.scale, own: own}
 	var stretches []stretch
 	for _, e := range r.edges {
-		stretches = append(stretches, where(k, e))
+		stretches = append(stretches, where(k, e)...)
 	}
 	wants := t.Wants[s.held[k%len(s.held)]]
-	set.limits = newClasser(append([]stretch(nil), stretches...))
+	set.limits = newClasser(stretches)
 	if wants&Classes != 0 {
 		set.means = s.o.Means
 		for _, m := range s.o.Means {
@@ -128,15 +130,18 @@ func (s *Study) newClassSet(k int, r *result, t *Target, own scale, where func(i
 	if wants&Tail != 0 {
 		for i := range s.o.Tails {
 			e := s.o.firstTail() + 3*i
-			at, _ := set.limits.find(stretches[e].low)
-			set.tails = append(set.tails, upper{e, at})
+			tail := upper{edge: e}
+			at := where(k, r.edges[e])
+			tail.first, _ = set.limits.find(at[0].low)
+			tail.last, _ = set.limits.find(at[len(at)-1].low)
+			set.tails = append(set.tails, tail)
 		}
 	}
 	return set
 }
 
 // known is where an edge lies whose value is known.
-func known(_ int, e edge) stretch { return stretch{key(e.value), key(e.value)} }
+func known(_ int, e edge) []stretch { return []stretch{{key(e.value), key(e.value)}} }
 
 // extremes returns the lowest and highest value of one of Options.Means in a
 // target.
@@ -201,11 +206,12 @@ func (c *classSets) add(worker int, spans []Span, values [][]float64, held []int
 
 // add sums a chunk of rows, the first of which is row at of the block.
 func (set *classSet) add(a *accumulators, w *classSpace, u use, x []float64, at int, values [][]float64, weights []float64) {
-	unit, one := u.unit, u.unit == 1 && weights == nil && len(set.means) == 0
+	unit, one := u.unit, set.scale == 0 && len(set.means) == 0
 	tail := math.MaxInt // class above which rows may be in a tail
 	for _, t := range set.tails {
-		tail = min(tail, t.stretch)
+		tail = min(tail, t.last)
 	}
+	weighed := set.scale > 0
 	for k, v := range x {
 		class, open := int(set.limits.look(w.keys[k])), false
 		if class >= noClass {
@@ -223,17 +229,20 @@ func (set *classSet) add(a *accumulators, w *classSpace, u use, x []float64, at 
 		group := int(w.groups[k])
 		if class > tail {
 			for i, t := range set.tails {
-				if class > t.stretch {
+				if class > t.last {
 					a.tail(i, v, unit, group)
 				}
 			}
 		}
 		switch {
 		case open:
-			a.keep(set, openRow{x: v, unit: unit, stretch: class, group: uint8(group)}, at+k, values)
+			a.keep(set, openRow{x: v, unit: unit, stretch: uint16(class), group: uint8(group)}, at+k, values)
 		case one:
 			a.own[class*Groups+group].addOne(w.counts[k])
 		default:
+			if weighed {
+				a.rows[class]++
+			}
 			a.own[class*Groups+group].add(unit, w.counts[k])
 			for i, m := range set.means {
 				if y := values[m][at+k]; y == y {
@@ -246,16 +255,15 @@ func (set *classSet) add(a *accumulators, w *classSpace, u use, x []float64, at 
 
 // keep notes a row whose class is not known yet.
 func (a *accumulators) keep(set *classSet, o openRow, row int, values [][]float64) {
-	for _, m := range set.means {
-		o.others = append(o.others, values[m][row])
-	}
 	a.open = append(a.open, o)
+	for _, m := range set.means {
+		a.other = append(a.other, values[m][row])
+	}
 }
 
 // tail counts a row of an upper tail. Its values are above 0, or there is no tail.
 func (a *accumulators) tail(i int, x float64, unit uint64, group int) {
 	if x > 0 {
-		a.above[i]++
 		a.logs[i][group].add(unit, logScale.count(math.Log(x)))
 	}
 }

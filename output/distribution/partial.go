@@ -55,7 +55,7 @@ type partial struct {
 	own    classSums         // of the variable itself
 	means  []classSums       // [place in Options.Means] of another, over the same rows
 	logs   [][Groups]float64 // [tail] Σ w·log x of the rows above its threshold
-	above  []int64           // [tail] those rows
+	rows   []int64           // [class]
 }
 
 // classSums are Σ w and Σ w·x of a class and of all classes below.
@@ -110,27 +110,8 @@ func (set *classSet) settle(r *result, sums []*accumulators) {
 		p.of = append(p.of, at)
 	}
 	final := newAccumulators(set, len(p.limits)+1)
-	classOf := func(x float64) int { at, _ := slices.BinarySearch(p.limits, x); return at }
 	for _, a := range sums {
-		for class := range set.limits.stretches {
-			final.take(classOf(fromKey(set.limits.stretches[class].low)), a, class) // no limit lies between a class and its stretch
-		}
-		final.take(len(p.limits), a, len(set.limits.stretches))
-		for i := range a.open {
-			o := &a.open[i]
-			final.put(set, o, classOf(o.x)*Groups+int(o.group))
-			for t, e := range set.tails {
-				if e.stretch == o.stretch && o.x > r.edges[e.edge].value {
-					final.tail(t, o.x, o.unit, int(o.group))
-				}
-			}
-		}
-		for i := range final.logs {
-			final.above[i] += a.above[i]
-			for g := range Groups {
-				final.logs[i][g].join(&a.logs[i][g])
-			}
-		}
+		final.join(set, p.limits, r.edges, a)
 	}
 	p.own = final.own.sums(set.own)
 	for i := range final.means {
@@ -141,14 +122,53 @@ func (set *classSet) settle(r *result, sums []*accumulators) {
 		for g := range Groups {
 			logs[g] = final.logs[i][g].sum(logScale)
 		}
-		p.logs, p.above = append(p.logs, logs), append(p.above, final.above[i])
+		p.logs = append(p.logs, logs)
 	}
+	p.rows = final.rows
 	r.partial = p
 }
 
+// join adds what a pass has summed in classes of its own to the classes between
+// limits. No limit lies between a class of the pass and the stretch above it.
+func (a *accumulators) join(set *classSet, limits []float64, edges []edge, from *accumulators) {
+	classOf := func(x float64) int { at, _ := slices.BinarySearch(limits, x); return at }
+	stretches := set.limits.stretches
+	for class, s := range stretches {
+		a.take(set, classOf(fromKey(s.low)), from, class)
+	}
+	a.take(set, len(limits), from, len(stretches))
+	for t, tail := range set.tails {
+		for g := range Groups {
+			a.logs[t][g].join(&from.logs[t][g])
+		}
+		for class := tail.first + 1; class <= tail.last; class++ { // a tie has a class of its own
+			x := fromKey(stretches[class].low)
+			for g := range Groups {
+				if units := from.own[class*Groups+g].units; units > 0 && x > edges[tail.edge].value {
+					a.tail(t, x, units, g)
+				}
+			}
+		}
+	}
+	for i := range from.open {
+		o := &from.open[i]
+		class := classOf(o.x)
+		a.put(set, o, from.other[i*len(set.means):][:len(set.means)], class)
+		for t, tail := range set.tails {
+			if at := int(o.stretch); at >= tail.first && at <= tail.last && o.x > edges[tail.edge].value {
+				a.tail(t, o.x, o.unit, int(o.group))
+			}
+		}
+	}
+}
+
 // take adds a class of other accumulators to one of a.
-func (a *accumulators) take(class int, from *accumulators, other int) {
+func (a *accumulators) take(set *classSet, class int, from *accumulators, other int) {
+	a.rows[class] += from.rows[other]
 	for g := range Groups {
+		if set.scale == 0 {
+			a.rows[class] += int64(from.own[other*Groups+g].units)
+		}
 		a.own[class*Groups+g].join(&from.own[other*Groups+g])
 		for i := range a.means {
 			a.means[i][class*Groups+g].join(&from.means[i][other*Groups+g])
@@ -157,9 +177,11 @@ func (a *accumulators) take(class int, from *accumulators, other int) {
 }
 
 // put adds an open row to its class.
-func (a *accumulators) put(set *classSet, o *openRow, at int) {
+func (a *accumulators) put(set *classSet, o *openRow, others []float64, class int) {
+	at := class*Groups + int(o.group)
+	a.rows[class]++
 	a.own[at].add(o.unit, set.own.count(o.x))
-	for i, y := range o.others {
+	for i, y := range others {
 		if y == y {
 			a.means[i][at].add(o.unit, set.others[i].count(y))
 		}

@@ -21,11 +21,14 @@ type refinement struct {
 	nodes   []node     // of all passes; 0 is unused
 	inside  []contents // of the same nodes
 	places  map[place]int32
-	finders []finder // [cell·slots + slot]
-	held    [][]kept // by worker
+	finders []finder   // [cell·slots + slot]
+	ties    [][]uint64 // [slot] keys that many rows of the sample share, ascending
+	held    []pile     // by worker
+	last    bool       // this pass collects all that is left
 
-	keepRows, countBytes int64     // budgets of a pass
-	bins                 [][][]bin // [cell][slot]
+	openBytes             int64     // what a row takes beside whose class is left open
+	keepBytes, countBytes int64     // budgets of a pass
+	bins                  [][][]bin // [cell][slot]
 }
 
 // wanted is one order statistic: the value of a held variable in a target at which
@@ -33,6 +36,7 @@ type refinement struct {
 type wanted struct {
 	target, slot int
 	rank         int64
+	edge         bool // it is a threshold of partial sums
 	prefix       uint64
 	rest         int64 // rank within the interval, from 1
 	done         bool
@@ -54,12 +58,43 @@ type node struct {
 	shift       uint8    // of the digit that is counted or leads on
 	collect     bool
 	seen, mixed bool // rows were counted; they have different keys
+	ties        bool // some keys are counted, or known, by themselves
 }
 
 // contents is what a node must hold and holds.
 type contents struct {
-	expected uint64   // rows known to be there
+	expected uint64   // rows known to be there, without those of settled ties
 	keys     []uint64 // collected
+	ties     []tie    // ascending
+	settled  bool     // the ties were counted in an earlier pass: their rows are passed over
+}
+
+// tie is a key that many rows share. It is counted by itself, so that an interval
+// need not shrink to the one key before few other rows are left in it. Which keys
+// are tried follows from the sample, whether there are any decides on speed alone.
+type tie struct{ key, rows uint64 }
+
+func (c *contents) tie(k uint64) (place int, is bool) {
+	return slices.BinarySearchFunc(c.ties, k, func(t tie, k uint64) int { return cmp.Compare(t.key, k) })
+}
+
+// tiesOf returns the ties of a place: fresh ones where its rows will be counted for
+// the first time, those counted by the node above it later.
+func (r *refinement) tiesOf(p place, parent int32, first bool) (ties []tie) {
+	low, high := p.prefix<<(64-r.bits), (p.prefix+1)<<(64-r.bits)-1
+	if first {
+		at, _ := slices.BinarySearch(r.ties[p.slot], low)
+		for ; at < len(r.ties[p.slot]) && r.ties[p.slot][at] <= high; at++ {
+			ties = append(ties, tie{key: r.ties[p.slot][at]})
+		}
+		return ties
+	}
+	for _, t := range r.inside[parent].ties {
+		if t.key >= low && t.key <= high && t.rows > 0 {
+			ties = append(ties, t)
+		}
+	}
+	return ties
 }
 
 // finder leads from a key to the first node of a cell and variable. Its lock
@@ -70,9 +105,9 @@ type finder struct {
 	pages [][1 << subBits]int32
 }
 
-// keptBytes is what a collected key takes at most: with its node, in a slice
-// that has grown, and once more by itself while it is sorted.
-const keptBytes = 48
+// keptBytes is what a collected key takes: with its node, in a pile with room to
+// grow, and once more by itself.
+const keptBytes = 32
 
 // kept is a collected key.
 type kept struct {
@@ -80,14 +115,41 @@ type kept struct {
 	key  uint64
 }
 
+// pile is a list of kept keys that grows without moving.
+type pile struct {
+	full [][]kept
+	last []kept
+	rows int64
+}
+
+func (p *pile) push(h kept) {
+	if len(p.last) == cap(p.last) {
+		if p.last != nil {
+			p.full = append(p.full, p.last)
+		}
+		p.last = make([]kept, 0, 1<<12)
+	}
+	p.last = append(p.last, h)
+	p.rows++
+}
+
+// each calls do with all keys in the order in which they came.
+func (p *pile) each(do func(h kept)) {
+	for _, part := range append(p.full, p.last) {
+		for _, h := range part {
+			do(h)
+		}
+	}
+}
+
 // beginRefinement ends the first pass: Gini coefficients from the bins, and the
 // bins of all wanted ranks for the next pass.
-func (s *Study) beginRefinement() (more bool, err error) {
+func (s *Study) beginRefinement() (more bool) {
 	slots := len(s.held)
 	r := &refinement{
 		targets: s.o.Targets, slots: slots, bits: binBits, finders: make([]finder, s.o.Cells*slots), nodes: make([]node, 1), inside: make([]contents, 1),
-		held: make([][]kept, s.o.Workers), bins: s.hist.merge(s.o.Cells, slots),
-		keepRows: s.o.Budget / 4 / keptBytes, countBytes: s.o.Budget / 10,
+		ties: s.ties(), held: make([]pile, s.o.Workers), bins: s.hist.merge(s.o.Cells, slots),
+		openBytes: int64(openBytes + valueBytes*len(s.o.Means)), keepBytes: s.o.Budget / 2, countBytes: s.o.Budget / 5,
 	}
 	s.hist = nil
 	s.refine = r
@@ -111,7 +173,7 @@ func (s *Study) beginRefinement() (more bool, err error) {
 		}
 		r.want(k, bins, result)
 	}
-	return r.prepare(), nil
+	return r.prepare()
 }
 
 // want enters the ranks that a result is made of.
@@ -123,14 +185,15 @@ func (r *refinement) want(k int, bins []bin, result *result) {
 			below += int64(bins[i].units)
 			i++
 		}
-		r.wanted = append(r.wanted, wanted{target: k / r.slots, slot: k % r.slots, rank: rank, prefix: bins[i].prefix, rest: rank - below})
+		edge := slices.ContainsFunc(result.edges, func(e edge) bool { return e.rank == rank })
+		r.wanted = append(r.wanted, wanted{target: k / r.slots, slot: k % r.slots, rank: rank, edge: edge, prefix: bins[i].prefix, rest: rank - below})
 	}
 }
 
 // prepare makes the nodes of the next pass and reports whether there are any.
 func (r *refinement) prepare() bool {
-	fresh := map[place]uint64{} // rows of every interval of a cell
-	rows := map[place]uint64{}  // the same over cells, cell −1
+	fresh := map[place]uint64{}  // rows of every interval of a cell
+	rows := map[place]interval{} // the same over cells, cell −1
 	for i := range r.wanted {
 		w := &r.wanted[i]
 		if w.done {
@@ -140,15 +203,23 @@ func (r *refinement) prepare() bool {
 			w.done, w.value = true, w.prefix
 			continue
 		}
+		again := i > 0 && r.wanted[i-1].edge && r.wanted[i-1].target == w.target && r.wanted[i-1].slot == w.slot && r.wanted[i-1].prefix == w.prefix
 		for _, c := range r.targets[w.target].Cells {
 			p := place{int32(c.Index), int32(w.slot), w.prefix}
-			if _, known := fresh[p]; known {
-				continue
+			n, known := fresh[p]
+			if !known {
+				n = r.rowsAt(p)
+				fresh[p] = n
 			}
-			n := r.rowsAt(p)
-			fresh[p] = n
 			p.cell = -1
-			rows[p] += n
+			in := rows[p]
+			if !known {
+				in.rows += int64(n)
+			}
+			if w.edge && !again {
+				in.open += int64(n)
+			}
+			rows[p] = in
 		}
 	}
 	for i := range r.nodes {
@@ -157,7 +228,56 @@ func (r *refinement) prepare() bool {
 	r.bins = nil
 	collect, left := r.choose(rows)
 	r.place(fresh, collect, left)
+	r.last = left == 0
 	return len(r.places) > 0
+}
+
+// interval is an interval over all cells: its rows, and how many of them partial
+// sums must leave open, once for every target with a threshold there.
+type interval struct{ rows, open int64 }
+
+// bytes is what it takes to collect the interval.
+func (r *refinement) bytes(in interval) int64 { return in.rows*keptBytes + in.open*r.openBytes }
+
+// where returns the range of keys in which a threshold of a result lies, cut at
+// ties.
+func (r *refinement) where(k int, e edge) []stretch {
+	i, found := slices.BinarySearchFunc(r.wanted, wanted{target: k / r.slots, slot: k % r.slots, rank: e.rank}, func(a, b wanted) int {
+		return cmp.Or(cmp.Compare(a.target, b.target), cmp.Compare(a.slot, b.slot), cmp.Compare(a.rank, b.rank))
+	})
+	if !found {
+		panic("distribution: a threshold was not looked for")
+	}
+	w := &r.wanted[i]
+	if w.done {
+		return known(k, edge{value: fromKey(w.value)})
+	}
+	low, high := w.prefix<<(64-r.bits), (w.prefix+1)<<(64-r.bits)-1
+	var list []stretch
+	for _, t := range r.settled(w) {
+		if low < t {
+			list = append(list, stretch{low, t - 1})
+		}
+		list = append(list, stretch{t, t})
+		if low = t + 1; t == high {
+			return list
+		}
+	}
+	return append(list, stretch{low, high})
+}
+
+// settled lists the keys in the interval of a wanted rank whose rows are known in
+// all cells.
+func (r *refinement) settled(w *wanted) (keys []uint64) {
+	for _, c := range r.targets[w.target].Cells {
+		if id := r.places[place{int32(c.Index), int32(w.slot), w.prefix}]; id != 0 && r.inside[id].settled {
+			for _, t := range r.inside[id].ties {
+				keys = append(keys, t.key)
+			}
+		}
+	}
+	slices.Sort(keys)
+	return slices.Compact(keys)
 }
 
 // rowsAt returns how many rows of a cell the last pass found in an interval.
@@ -177,23 +297,23 @@ func (r *refinement) rowsAt(p place) uint64 {
 	return uint64(r.nodes[parent].counts[p.prefix&(1<<r.digit-1)])
 }
 
-// choose returns the intervals to collect, those of fewest rows first, and the
-// number of rows in the others.
-func (r *refinement) choose(rows map[place]uint64) (collect map[place]bool, left int64) {
+// choose returns the intervals to collect, the cheapest first, and the number of
+// rows in the others.
+func (r *refinement) choose(rows map[place]interval) (collect map[place]bool, left int64) {
 	order := make([]place, 0, len(rows))
 	for p := range rows {
 		order = append(order, p)
 	}
 	slices.SortFunc(order, func(a, b place) int {
-		return cmp.Or(cmp.Compare(rows[a], rows[b]), cmp.Compare(a.slot, b.slot), cmp.Compare(a.prefix, b.prefix))
+		return cmp.Or(cmp.Compare(r.bytes(rows[a]), r.bytes(rows[b])), cmp.Compare(a.slot, b.slot), cmp.Compare(a.prefix, b.prefix))
 	})
 	collect = map[place]bool{}
-	room := r.keepRows
+	room := r.keepBytes
 	for _, p := range order {
-		if room -= int64(rows[p]); room >= 0 {
+		if room -= r.bytes(rows[p]); room >= 0 {
 			collect[p] = true
 		} else {
-			left += int64(rows[p])
+			left += rows[p].rows
 		}
 	}
 	return collect, left
@@ -206,7 +326,7 @@ func (r *refinement) chooseDigit(counting, rows int64) int {
 	if counting == 0 {
 		return min(4, 64-r.bits)
 	}
-	need := bits.Len64(uint64(4*rows/max(1, r.keepRows))) + 1
+	need := bits.Len64(uint64(4*rows/max(1, r.keepBytes/keptBytes/2))) + 1
 	room := bits.Len64(uint64(r.countBytes/4/counting)) - 1
 	return min(max(4, min(need, room)), 64-r.bits)
 }
@@ -217,11 +337,8 @@ func (r *refinement) place(fresh map[place]uint64, collect map[place]bool, left 
 	order := make([]place, 0, len(fresh))
 	counting := int64(0)
 	for p, n := range fresh {
-		if n == 0 {
-			continue
-		}
 		order = append(order, p)
-		if !collect[place{-1, p.slot, p.prefix}] {
+		if n > 0 && !collect[place{-1, p.slot, p.prefix}] {
 			counting++
 		}
 	}
@@ -232,23 +349,37 @@ func (r *refinement) place(fresh map[place]uint64, collect map[place]bool, left 
 	r.digit = r.chooseDigit(counting, left)
 	r.places = make(map[place]int32, len(order))
 	for _, p := range order {
-		id := int32(len(r.nodes))
 		nd := node{collect: collect[place{-1, p.slot, p.prefix}], shift: uint8(64 - r.bits - r.digit)}
+		in := contents{expected: fresh[p], settled: parents != nil}
+		parent := int32(0)
+		if parents != nil {
+			parent = parents[place{p.cell, p.slot, p.prefix >> parentDigit}]
+		}
+		if parent != 0 || parents == nil && !nd.collect {
+			in.ties = r.tiesOf(p, parent, parents == nil)
+			nd.ties = len(in.ties) > 0
+		}
+		if in.expected == 0 && !(in.settled && nd.ties) {
+			continue
+		}
+		id := int32(len(r.nodes))
 		if !nd.collect {
 			nd.counts = make([]uint32, 1<<r.digit)
 		}
 		r.nodes = append(r.nodes, nd)
-		r.inside = append(r.inside, contents{expected: fresh[p]})
+		r.inside = append(r.inside, in)
 		r.places[p] = id
-		if parents == nil {
+		switch {
+		case in.expected == 0: // nothing to look for
+		case parents == nil:
 			r.finders[int(p.cell)*r.slots+int(p.slot)].hang(p.prefix, id)
-			continue
+		default:
+			up := &r.nodes[parent]
+			if up.children == nil {
+				up.children = make([]int32, 1<<parentDigit)
+			}
+			up.children[p.prefix&(1<<parentDigit-1)] = id
 		}
-		up := &r.nodes[parents[place{p.cell, p.slot, p.prefix >> parentDigit}]]
-		if up.children == nil {
-			up.children = make([]int32, 1<<parentDigit)
-		}
-		up.children[p.prefix&(1<<parentDigit-1)] = id
 	}
 }
 
@@ -272,7 +403,7 @@ func (r *refinement) add(worker int, rows *Rows, held []int) error {
 			r.scan(worker, &r.finders[sp.Cell*r.slots+slot], rows.Values[v][sp.From:sp.To])
 		}
 	}
-	if int64(len(r.held[worker])) > r.keepRows {
+	if r.held[worker].rows > r.keepBytes/keptBytes {
 		return ErrPassesDiffer
 	}
 	return nil
@@ -308,10 +439,19 @@ func (r *refinement) descend(worker int, h kept) {
 	for h.node != 0 {
 		nd := &r.nodes[h.node]
 		if nd.children == nil {
+			if nd.ties {
+				in := &r.inside[h.node]
+				if at, is := in.tie(h.key); is {
+					if !in.settled {
+						in.ties[at].rows++
+					}
+					return
+				}
+			}
 			if nd.counts != nil {
 				nd.count(h.key)
 			} else if nd.collect {
-				r.held[worker] = append(r.held[worker], h)
+				r.held[worker].push(h)
 			}
 			return
 		}

@@ -201,6 +201,9 @@ func (r *Result) Hill(v, i int) (alpha stats.Estimate, rows int64) {
 	}
 	whole := p.own.whole(-1).mass
 	share := 1 - p.own.upTo(at, -1).mass/whole
+	for _, n := range p.rows[at+1:] {
+		rows += n
+	}
 	return k.figure(func(p *partial, without int) float64 {
 		all := p.own.whole(without).mass
 		above := all - p.own.upTo(at, without).mass
@@ -216,7 +219,7 @@ func (r *Result) Hill(v, i int) (alpha stats.Estimate, rows int64) {
 			above = share * all
 		}
 		return above / logs
-	}), p.above[i]
+	}), rows
 }
 
 // MeanIn returns the mean of Options.Means[m] among the rows in class, from 0, of

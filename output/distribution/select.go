@@ -26,7 +26,7 @@ func (r *refinement) end(results []result) (more bool, err error) {
 			pool = r.pool(w, results[w.target*r.slots+w.slot].unit)
 		}
 		last = w
-		pool.narrow(w, r.digit)
+		pool.narrow(w, r.bits, r.digit)
 	}
 	r.bits += r.digit
 	return r.prepare(), nil
@@ -36,14 +36,17 @@ func (r *refinement) end(results []result) (more bool, err error) {
 // had the rows that the pass before had promised.
 func (r *refinement) gather() error {
 	found := make([]uint64, len(r.nodes))
-	for _, held := range r.held {
-		for _, k := range held {
-			found[k.node]++
-		}
+	for i := range r.held {
+		r.held[i].each(func(k kept) { found[k.node]++ })
 	}
 	for _, id := range r.places {
 		for _, n := range r.nodes[id].counts {
 			found[id] += uint64(n)
+		}
+		if !r.inside[id].settled {
+			for _, t := range r.inside[id].ties {
+				found[id] += t.rows
+			}
 		}
 		if found[id] != r.inside[id].expected {
 			return ErrPassesDiffer
@@ -52,12 +55,12 @@ func (r *refinement) gather() error {
 			r.inside[id].keys = make([]uint64, 0, found[id])
 		}
 	}
-	for worker, held := range r.held {
-		for _, k := range held {
+	for i := range r.held {
+		r.held[i].each(func(k kept) {
 			in := &r.inside[k.node]
 			in.keys = append(in.keys, k.key)
-		}
-		r.held[worker] = held[:0]
+		})
+		r.held[i] = pile{}
 	}
 	return nil
 }
@@ -65,14 +68,16 @@ func (r *refinement) gather() error {
 // intervalPool is an interval of a target: its cells taken together, weights in
 // units.
 type intervalPool struct {
-	prefix uint64
-	keys   []weighed // sorted, where collected
-	counts []uint64  // by digit, where counted
-	single bool      // all keys are one value
-	value  uint64
+	prefix  uint64
+	collect bool
+	keys    []weighed // where collected, with ties; ascending, as are
+	ties    []weighed // where counted
+	counts  []uint64  // by digit, where counted, without ties
+	single  bool      // all keys beside ties are one value
+	value   uint64
 }
 
-// weighed is a collected key with its weight in units.
+// weighed is a key with the weight in units of the rows that have it.
 type weighed struct{ key, units uint64 }
 
 func (r *refinement) pool(w *wanted, unit func(weight float64) uint64) intervalPool {
@@ -83,45 +88,83 @@ func (r *refinement) pool(w *wanted, unit func(weight float64) uint64) intervalP
 			continue
 		}
 		u := unit(c.Weight)
-		nd := &r.nodes[id]
-		if nd.collect {
-			for _, k := range r.inside[id].keys {
-				p.keys = append(p.keys, weighed{k, u})
+		nd, in := &r.nodes[id], &r.inside[id]
+		p.collect = nd.collect
+		for _, t := range in.ties {
+			if t.rows > 0 {
+				p.ties = append(p.ties, weighed{t.key, t.rows * u})
 			}
-			continue
 		}
-		if p.counts == nil {
+		for _, k := range in.keys {
+			p.keys = append(p.keys, weighed{k, u})
+		}
+		if p.counts == nil && !nd.collect {
 			p.counts = make([]uint64, len(nd.counts))
-			p.single, p.value = true, nd.first
+			p.single = true
 		}
-		p.single = p.single && !nd.mixed && nd.first == p.value
 		for i, n := range nd.counts {
 			p.counts[i] += uint64(n) * u
 		}
+		if nd.seen {
+			if p.value == 0 {
+				p.value = nd.first
+			}
+			p.single = p.single && !nd.mixed && nd.first == p.value
+		}
 	}
-	slices.SortStableFunc(p.keys, func(a, b weighed) int { return cmp.Compare(a.key, b.key) })
+	byKey := func(a, b weighed) int { return cmp.Compare(a.key, b.key) }
+	slices.SortFunc(p.ties, byKey)
+	if p.collect {
+		p.keys = append(p.keys, p.ties...)
+		slices.SortFunc(p.keys, byKey)
+	}
 	return p
 }
 
 // narrow finds the wanted rank in its interval, or the shorter interval that
 // holds it.
-func (p *intervalPool) narrow(w *wanted, digit int) {
-	switch {
-	case p.keys != nil:
-		i := 0
-		for below := int64(0); i < len(p.keys)-1 && below+int64(p.keys[i].units) < w.rest; i++ {
-			below += int64(p.keys[i].units)
-		}
-		w.done, w.value = true, p.keys[i].key
-	case p.single:
-		w.done, w.value = true, p.value
-	default:
-		d := 0
-		for ; d < len(p.counts)-1 && int64(p.counts[d]) < w.rest; d++ {
-			w.rest -= int64(p.counts[d])
-		}
-		w.prefix = w.prefix<<digit | uint64(d)
+func (p *intervalPool) narrow(w *wanted, bits, digit int) {
+	if p.collect {
+		w.pick(p.keys)
+		return
 	}
+	total := uint64(0)
+	for _, n := range p.counts {
+		total += n
+	}
+	if p.single {
+		at, _ := slices.BinarySearchFunc(p.ties, p.value, func(a weighed, k uint64) int { return cmp.Compare(a.key, k) })
+		w.pick(slices.Insert(slices.Clone(p.ties), at, weighed{p.value, total}))
+		return
+	}
+	ties := p.ties
+	for d, n := range p.counts {
+		last := (p.prefix<<digit|uint64(d)+1)<<(64-bits-digit) - 1
+		inside, units := 0, n
+		for inside < len(ties) && ties[inside].key <= last {
+			units += ties[inside].units
+			inside++
+		}
+		if int64(units) >= w.rest || d == len(p.counts)-1 {
+			if n == 0 {
+				w.pick(ties[:inside])
+				return
+			}
+			w.prefix = p.prefix<<digit | uint64(d)
+			return
+		}
+		w.rest -= int64(units)
+		ties = ties[inside:]
+	}
+}
+
+// pick takes the key at which the weight reaches the rank.
+func (w *wanted) pick(keys []weighed) {
+	i := 0
+	for below := int64(0); i < len(keys)-1 && below+int64(keys[i].units) < w.rest; i++ {
+		below += int64(keys[i].units)
+	}
+	w.done, w.value = true, keys[i].key
 }
 
 // finish puts the order statistics into the results.

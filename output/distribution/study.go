@@ -152,8 +152,14 @@ func (s *Study) Add(worker int, rows *Rows) (commit func() error, err error) {
 	}
 	switch s.phase {
 	case refining:
-		return nil, s.fail(s.refine.add(worker, rows, s.held))
+		if err := s.refine.add(worker, rows, s.held); err != nil {
+			return nil, s.fail(err)
+		}
+		fallthrough
 	case summing:
+		if s.sets == nil {
+			return nil, nil
+		}
 		s.sets.add(worker, rows.Spans, rows.Values, s.held, rows.Unit, nil, nil)
 		return nil, nil
 	}
@@ -219,8 +225,8 @@ func (s *Study) EndPass() (more bool, err error) {
 	case measuring:
 		more, err = s.endMeasuring()
 	case refining:
-		if more, err = s.refine.end(s.results); err == nil && !more {
-			more = s.endRefining()
+		if more, err = s.refine.end(s.results); err == nil {
+			more, err = s.goOn(more)
 		}
 	case summing:
 		err = s.sets.settle(s.results)
@@ -256,20 +262,29 @@ func (s *Study) endMeasuring() (more bool, err error) {
 	}
 	s.store = store{}
 	s.phase = refining
-	if more, err = s.beginRefinement(); err != nil || more {
-		return more, err
-	}
-	return s.endRefining(), nil
+	return s.goOn(s.beginRefinement())
 }
 
-// endRefining puts the order statistics in place and reports whether partial sums
-// are wanted.
-func (s *Study) endRefining() (more bool) {
+// goOn prepares the next pass after one that looked for order statistics. If that
+// will collect all that are left, partial sums are formed in the same pass: only
+// rows as near to a threshold as those collected have to wait for it to be known.
+func (s *Study) goOn(more bool) (bool, error) {
+	if more {
+		if s.refine.last {
+			s.sets = s.newClassSets(s.refine.where)
+		}
+		return true, nil
+	}
 	s.refine.finish(s.results)
 	s.refine = nil
+	if s.sets != nil {
+		err := s.sets.settle(s.results)
+		s.sets = nil
+		return false, err
+	}
 	s.phase = summing
 	s.sets = s.newClassSets(known)
-	return s.sets != nil
+	return s.sets != nil, nil
 }
 
 // replay sends the rows held through the partial sums.
