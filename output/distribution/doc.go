@@ -37,14 +37,26 @@
 // unit in one of 64 groups. p·x_p − E max(0, x_p − x) is stationary in x_p
 // (Rockafellar and Uryasev 2000, Journal of Risk 2, 21–41), so the replications
 // keep the threshold of the full sample: what that leaves out is of second order.
-// The tail index is conditional on its threshold; means within classes of another
-// variable are conditional on the limits of the classes.
+// The tail index is not stationary in its threshold: there each replication moves
+// it, by its share of rows above less the full sample's over the density of log x
+// between two quantiles beside it. Means within classes of another variable are
+// conditional on the limits of the classes.
 //
 // Exactness. Values that fit the memory budget are held and sorted. Otherwise the
-// same rows are asked for again, several times: a first pass counts values by sign,
-// exponent and six bits of the mantissa, each later pass looks only into the bins
-// that hold a wanted order statistic (radix selection), and a last one forms the
-// partial sums between the thresholds found. All counting is in whole numbers,
-// and sums of floats are formed within a block of rows and folded in the order of
-// blocks: the result has the same bits for any number of workers.
+// same rows are asked for again, twice as a rule: a first pass counts values by
+// sign, exponent and six bits of the mantissa; each later pass looks only into the
+// bins that hold a wanted order statistic, and counts their rows by further bits or
+// collects them (radix selection). The pass that collects the last of them also
+// forms the partial sums of all rows but those as near to a threshold as the ones
+// collected, which wait until it is known. Values that many rows share are counted
+// by themselves, so that they hold up nothing.
+//
+// All counting, and the partial sums too, is in whole numbers; sums of floats for
+// means and deviations are formed within a block of rows and folded in the order of
+// blocks: the result has the same bits for any number of workers, and, Gini
+// coefficients and design effects aside, for any number of passes. A partial sum is
+// exact to 2^−62 of the largest value for every row.
+//
+// Settled and not to change: the types of this page, what a weight means, the
+// definitions above. Internal: how many passes are made.
 package distribution

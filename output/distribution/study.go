@@ -16,7 +16,7 @@ import (
 //	}
 //	result := s.Target(0)
 //
-// A panel that does not fit takes three to eight passes.
+// A panel that does not fit takes three passes as a rule, more where memory is short.
 type Study struct {
 	o      Options
 	held   []int // variables whose distribution some target wants
