@@ -71,6 +71,14 @@ func (sc *Scenario) Cost(workers int) Cost {
 		perRow += 2 * secondsPerPass // wealth, response; with many households a few more
 		c.MemoryBytes += nodes*bytesPerRule/2 + t.bytes(len(sc.Groups), workers)
 	}
+	if d := sc.Experiments.Decomposition; d != nil {
+		share := 1.0
+		if d.Households > 0 {
+			share = min(1, float64(d.Households)/float64(sc.Households))
+		}
+		perRow += share * float64(len(d.Order)+1) * secondsPerPass
+		c.MemoryBytes += nodes * bytesPerRule
+	}
 	c.Seconds += (c.NodeUpdates*secondsPerUpdate + c.HouseholdYears*perRow) / float64(workers)
 	return c
 }

@@ -9,7 +9,14 @@ import (
 
 // Experiments says which experiments a run makes beside its panel; nil: not made.
 type Experiments struct {
-	Transfer *Transfer
+	Transfer      *Transfer
+	Decomposition *Decomposition
+}
+
+// Decomposition takes mean wealth apart by what it is held for.
+type Decomposition struct {
+	Order      []string // what is removed, one after the other: income_risk, longevity_risk, borrowing_limit
+	Households int64    // the first so many; 0: all
 }
 
 // Transfer is an unexpected one-off transfer, or bill, to every household.
@@ -25,7 +32,26 @@ func readExperiments(s *section, sc *Scenario) {
 		return
 	}
 	sc.Experiments.Transfer = readTransfer(e, sc)
+	sc.Experiments.Decomposition = readDecomposition(e)
 	e.done()
+}
+
+func readDecomposition(e *section) *Decomposition {
+	s := e.optional("decomposition", "mean wealth taken apart: how much is held because income is risky, life of uncertain length, borrowing limited")
+	if s == nil {
+		return nil
+	}
+	causes := []string{"income_risk", "longevity_risk", "borrowing_limit"}
+	d := &Decomposition{Order: s.words("order", "what is removed, one after the other; longevity_risk after income_risk", causes, causes...)}
+	if v := s.n.get("order"); v != nil && v.kind == list && len(v.values) == 0 {
+		s.at("order", "is empty, want at least one of income_risk, longevity_risk and borrowing_limit")
+	}
+	if i := slices.Index(d.Order, "longevity_risk"); i >= 0 && !slices.Contains(d.Order[:i], "income_risk") {
+		s.at("order", "removes longevity_risk before income_risk, want it after")
+	}
+	d.Households = s.integer(number{key: "households", meaning: "the first so many households live again without each cause; 0: all", in: within(0, sim.Unit*1_000_000), def: 0})
+	s.done()
+	return d
 }
 
 func readTransfer(e *section, sc *Scenario) *Transfer {

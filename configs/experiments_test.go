@@ -21,6 +21,10 @@ func TestExperiments(t *testing.T) {
 		{"transfer", "experiments: {transfer: {amount: 500}}\n",
 			Experiments{Transfer: &Transfer{500, []int{30, 35, 40, 45, 50, 55, 60, 65, 70, 75, 80}, 5}},
 			"    amount: 500\n    ages: [30, 35, 40, 45, 50, 55, 60, 65, 70, 75, 80]\n    years: 5\n"},
+		{"decomposition", "experiments: {decomposition: {}}\n", Experiments{Decomposition: &Decomposition{[]string{"income_risk", "longevity_risk", "borrowing_limit"}, 0}},
+			"    order: [income_risk, longevity_risk, borrowing_limit]\n    households: 0\n"},
+		{"part of one", "experiments: {decomposition: {order: [borrowing_limit, income_risk], households: 5000}}\n", Experiments{Decomposition: &Decomposition{[]string{"borrowing_limit", "income_risk"}, 5000}},
+			"    order: [borrowing_limit, income_risk]\n    households: 5000\n"},
 		{"bill", "experiments:\n  transfer:\n    amount: -2e3\n    ages: [62, 31]\n    years: 0\n",
 			Experiments{Transfer: &Transfer{-2000, []int{31, 62}, 0}}, "    amount: -2000\n    ages: [62, 31]\n    years: 0\n"},
 	} {
@@ -44,6 +48,11 @@ func TestExperiments(t *testing.T) {
 
 func TestExperimentFaults(t *testing.T) {
 	for _, tt := range []struct{ text, want string }{
+		{"experiments: {decomposition: {order: [income]}}", "experiments.decomposition.order: has income, want each of income_risk, longevity_risk or borrowing_limit at most once"},
+		{"experiments: {decomposition: {order: [longevity_risk, income_risk]}}", "experiments.decomposition.order: removes longevity_risk before income_risk, want it after"},
+		{"experiments: {decomposition: {order: [income_risk, income_risk]}}", "experiments.decomposition.order"},
+		{"experiments: {decomposition: {order: []}}", "experiments.decomposition.order: is empty, want at least one of"},
+		{"experiments: {decomposition: {households: -1}}", "experiments.decomposition.households: is -1"},
 		{"experiments: 3", "s.yaml:15:14: experiments: is 3, want a block of keys"},
 		{"experiments: {transfers: {}}", "s.yaml:15:15: experiments.transfers: is not a key of the format; allowed here: "},
 		{"experiments: {transfer: {}}", "s.yaml:15:25: experiments.transfer.amount: is missing, and has no default"},

@@ -101,7 +101,7 @@ func readReportRun(dir string) (*report.Run, error) {
 	for _, t := range []struct {
 		name string
 		to   **output.Table
-	}{{"mobility.parquet", &r.Mobility}, {"transfer.parquet", &r.Transfer}} {
+	}{{"mobility.parquet", &r.Mobility}, {"transfer.parquet", &r.Transfer}, {"decomposition.parquet", &r.Decomposition}} {
 		if !slices.ContainsFunc(record.Files, func(f output.FileHash) bool { return f.Path == t.name }) {
 			continue
 		}
@@ -123,7 +123,7 @@ func readReportRun(dir string) (*report.Run, error) {
 // unchanged reports files of a run that a page is made of and that are not as they
 // were written.
 func unchanged(dir string, record *output.Run) error {
-	made := []string{"scenario.yaml", "summary.parquet", "policy.parquet", "mobility.parquet", "transfer.parquet", "accuracy.csv"}
+	made := []string{"scenario.yaml", "summary.parquet", "policy.parquet", "mobility.parquet", "transfer.parquet", "decomposition.parquet", "accuracy.csv"}
 	for _, f := range record.Files {
 		if !slices.Contains(made, f.Path) {
 			continue
@@ -169,7 +169,7 @@ func (r *run) report(ctx context.Context) error {
 	p := reportRun(r.sc, version(), r.hash, r.inputHashes())
 	p.Households, p.AboveGrid, p.Warnings = r.result.Households, r.result.AboveTop, r.warnings
 	p.Summary, p.Policy, p.Accuracy = r.tables.summary, r.tables.policy, r.tables.accuracy
-	p.Mobility, p.Transfer = r.tables.mobility, r.tables.transfer
+	p.Mobility, p.Transfer, p.Decomposition = r.tables.mobility, r.tables.transfer, r.tables.decomposition
 	page, err := report.Compare([]*report.Run{p})
 	if err != nil {
 		return err

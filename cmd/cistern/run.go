@@ -29,10 +29,11 @@ type run struct {
 	summary     *output.Summary
 	mobility    []*mobility.Study
 	transferred *output.Transfer // nil: no such experiment
+	premium     string           // equivalent premium by group; empty: no such experiment
 	sample      *sample
 	result      sim.Result
 	accuracy    *accuracy
-	tables      struct{ summary, policy, accuracy, mobility, transfer *output.Table } // as written
+	tables      struct{ summary, policy, accuracy, mobility, transfer, decomposition *output.Table } // as written
 	timings     []output.Timing
 	warnings    []string
 }
@@ -72,9 +73,10 @@ func (r *run) do(ctx context.Context) error {
 		{"accuracy", r.judge},
 		{"tables", r.writeTables},
 		{"transfer", r.transfer},
+		{"decomposition", r.decompose},
 		{"report", r.report},
 	} {
-		if step.name == "transfer" && r.sc.Experiments.Transfer == nil {
+		if step.name == "transfer" && r.sc.Experiments.Transfer == nil || step.name == "decomposition" && r.sc.Experiments.Decomposition == nil {
 			continue
 		}
 		start := time.Now()

@@ -23,21 +23,23 @@ type Table struct {
 
 // Run is what a page says about one run. Nil tables and empty lists are left out.
 type Run struct {
-	Name        string // to tell runs apart side by side
-	Title       string // of the scenario
-	Currency    string
-	Households  int64
-	AboveGrid   int64 // household-years above the top of the rule's grid
-	Summary     *output.Table
-	Accuracy    *output.Table
-	Policy      *output.Table
-	Mobility    *output.Table
-	Transfer    *output.Table
-	Assumptions []Assumption
-	Provenance  [][2]string
-	Warnings    []string
-	Caution     string
-	Extra       []Section // of experiments, after the sections on the distribution
+	Name       string // to tell runs apart side by side
+	Title      string // of the scenario
+	Currency   string
+	Households int64
+	AboveGrid  int64 // household-years above the top of the rule's grid
+	Summary    *output.Table
+	Accuracy   *output.Table
+	Policy     *output.Table
+	Mobility   *output.Table
+	Transfer   *output.Table
+
+	Decomposition *output.Table
+	Assumptions   []Assumption
+	Provenance    [][2]string
+	Warnings      []string
+	Caution       string
+	Extra         []Section // of experiments, after the sections on the distribution
 }
 
 // Assumption is one key of the scenario with its value.
@@ -47,7 +49,7 @@ type Assumption struct{ Key, Value, Meaning string }
 func Sections(r *Run) []Section {
 	s := readSummary(r.Summary)
 	var list []Section
-	for _, make := range []func(*Run, *summary) Section{wealth, precaution, flows, rules, concentration, percentiles, runway, propensity, transferred, mobility} {
+	for _, make := range []func(*Run, *summary) Section{wealth, precaution, takenApart, flows, rules, concentration, percentiles, runway, propensity, transferred, mobility} {
 		if section := make(r, s); len(section.Charts)+len(section.Tables) > 0 {
 			list = append(list, section)
 		}
