@@ -173,6 +173,9 @@ func binEnds(prefix uint64) (low, high float64) {
 // width.
 func (b bin) sum() (sum, low, width float64) {
 	low, high := binEnds(b.prefix)
+	if max(-low, high) < 0x1p-1000 { // the bin of zero
+		return 0, 0, 0
+	}
 	width = high - low
 	return b.mass*low + width*((b.shift+b.mass/2)/(1<<offsetBits)), low, width
 }

@@ -46,12 +46,16 @@ func plan(n, total int64, weighted bool, p, effect float64) quantile {
 	return q
 }
 
-// position returns the least position, from 1, at which the share p of total
-// units is reached; a product that misses a whole number by rounding only counts
-// as that number.
+// position returns the least position, from 1, at which the share p of total units
+// is reached; a product that misses a whole number by rounding only counts as that
+// number. Units are rounded weights: where there are many, 2^−42 of them are spared.
 func position(total int64, p float64) int64 {
 	j, g := stats.Type1.Position(float64(total), p)
-	return min(max(1, int64(j+g)), total) // g is 1 where j falls short
+	at := int64(j) - total>>42
+	if g > 0 {
+		at++
+	}
+	return min(max(1, at), total)
 }
 
 // ranks lists the positions that the quantile needs.
