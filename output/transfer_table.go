@@ -25,6 +25,9 @@ import (
 //     receipt; of a bill share_unable, of households whose cash-on-hand and credit
 //     do not reach to pay it, which are left out of all other rows.
 //
+// Where ages are taken together, they weigh as in the population of all ages at a
+// moment: by survival, and by the growth of births.
+//
 // Shares are of the amount; the dead consume and hold nothing. lower and upper
 // bound a 95 % interval, Student's t on the jackknife error (share_unable:
 // Clopper–Pearson with the effective number of households).

@@ -30,6 +30,9 @@ func (r *run) transfer(ctx context.Context) error {
 			}
 		}
 	}
+	for _, age := range t.Ages { // as in the summary, where ages are taken together
+		o.Weights = append(o.Weights, math.Pow(1+r.sc.Growth, -float64(age-r.sc.FirstAge)))
+	}
 	var err error
 	if o.Limits, err = r.wealthLimits(ctx, p, o); err != nil {
 		return err
@@ -75,7 +78,7 @@ func (r *run) wealthLimits(ctx context.Context, p *sim.Population, o transfer.Op
 		for i, age := range o.Ages {
 			if b.First <= age && age <= b.Last {
 				cells[age-r.sc.FirstAge] = i
-				target.Cells = append(target.Cells, distribution.Cell{Index: i, Weight: 1})
+				target.Cells = append(target.Cells, distribution.Cell{Index: i, Weight: o.Weights[i]})
 			}
 		}
 		study.Targets = append(study.Targets, target)

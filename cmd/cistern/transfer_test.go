@@ -111,6 +111,32 @@ func TestTransferExperiment(t *testing.T) {
 	}
 }
 
+// Where ages are taken together those of the more numerous young count more
+// (derived: (1 + growth)^−(age − first age) times those alive).
+func TestTransferWeighsAges(t *testing.T) {
+	inFolder(t)
+	if status, _, stderr := cistern(t, "simulate", "port.yaml", "--set", "experiments.transfer={amount: 2000, ages: [35, 45, 55], years: 0}",
+		"--set", "panel.write=false", "--set", "population.growth=0.05"); status != 0 {
+		t.Fatalf("status %d: %s", status, stderr)
+	}
+	sum, total, got := 0.0, 0.0, 0.0
+	for _, r := range records(t, "runs/port/transfer.csv") {
+		if r["group"] != "all" || r["wealth_fifth"] != "" || r["variable"]+r["statistic"] != "consumptionshare_of_transfer" {
+			continue
+		}
+		if r["first_age"] == "" {
+			got = float(t, r["estimate"])
+			continue
+		}
+		w := math.Pow(1.05, 30-(float(t, r["first_age"])+5)) * float(t, r["households"])
+		sum += w * float(t, r["estimate"])
+		total += w
+	}
+	if math.Abs(got-sum/total) > 1e-12 {
+		t.Errorf("all ages consume %.12g of it, want %.12g", got, sum/total)
+	}
+}
+
 // Bills that some cannot pay are counted; and those that nobody can.
 func TestBillExperiment(t *testing.T) {
 	inFolder(t)
