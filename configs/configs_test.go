@@ -202,6 +202,8 @@ func TestFaults(t *testing.T) {
 		{"lorenz", "seed: 7", "seed: 7\nsummary: {lorenz: [0, 50, 50]}", []string{"summary.lorenz[0]: is 0, want strictly between 0 and 100", "summary.lorenz: has 50 twice"}},
 		{"top shares", "seed: 7", "seed: 7\nsummary: {top_shares: 10}", []string{"summary.top_shares: is 10, want a list of numbers"}},
 		{"shortfall", "seed: 7", "seed: 7\nsummary: {shortfall: [5, 101]}", []string{"summary.shortfall[1]: is 101, want above 0 and at most 100"}},
+		{"runway", "seed: 7", "seed: 7\nsummary: {runway_months: [0, 3, 3]}", []string{"s.yaml:4:27: summary.runway_months[0]: is 0, want above 0", "summary.runway_months: has 3 twice"}},
+		{"falls", "seed: 7", "seed: 7\nsummary: {consumption_falls: 5}", []string{"summary.consumption_falls: is 5, want a list of numbers"}},
 		{"tail", "seed: 7", "seed: 7\nsummary: {tail: 60}", []string{"summary.tail: is 60, want above 0 and at most 50"}},
 	} {
 		t.Run(tt.name, func(t *testing.T) {

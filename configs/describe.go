@@ -262,6 +262,8 @@ func readSummary(s *section, sc *Scenario) {
 	o.TopShares = s.levels("top_shares", "what share of the total the richest so many percent have", between(0, 100), 10, 1, 0.1)
 	o.Shortfall = s.levels("shortfall", "expected shortfall: the mean of the worst so many percent", aboveTo(0, 100), 1, 5)
 	o.Tail = s.number(number{key: "tail", meaning: "share of the upper tail whose Pareto index is estimated, in percent", in: aboveTo(0, 50), def: 5})
+	o.RunwayMonths = s.levels("runway_months", "share of households whose assets pay for consumption, or stand in for net income, for fewer than so many months", above(0), 1, 3, 6)
+	o.ConsumptionFalls = s.levels("consumption_falls", "share of households whose consumption falls by more than so many percent from one year to the next", above(0), 5, 10, 20)
 	o.Mobility = s.mobility(sc)
 	s.done()
 }

@@ -61,6 +61,9 @@ type Summary struct {
 	Shortfall   []float64 // worst shares, in percent
 	Tail        float64   // share of the upper tail whose index is estimated, in percent
 	Mobility    []Mobility
+
+	RunwayMonths     []float64 // months
+	ConsumptionFalls []float64 // in percent
 }
 
 // Input is a file that a scenario names.

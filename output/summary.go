@@ -67,6 +67,8 @@ type SummaryOptions struct {
 	TopShares         []float64   // richest shares, in percent, above 0 and below 100
 	Shortfalls        []float64   // worst shares, in percent, above 0 and at most 100
 	Tail              float64     // upper share whose tail index is wanted, in percent, below 100; 0: none
+	Runway            []float64   // months, above 0: share of households whose assets pay for less
+	Falls             []float64   // in percent, above 0: share of households whose consumption falls by more
 	Growth            float64     // of births, a year, above −1: a household counts (1+Growth)^−(age − FirstAge) where ages are taken together
 	By                []Dimension // what the table tells apart beside all ages together; none: everybody
 	Bands             []Band      // age bands of [Summary.Bands]; nil for none
@@ -104,6 +106,18 @@ func (o SummaryOptions) Validate() error {
 				bad("%s %v, want above 0 and %s", l.name, p, l.most)
 			} else if slices.Contains(l.levels[:i], p) {
 				bad("%s %v stands twice", l.name, p)
+			}
+		}
+	}
+	for _, l := range []struct {
+		name   string
+		levels []float64
+	}{{"runway", o.Runway}, {"fall", o.Falls}} {
+		for i, x := range l.levels {
+			if !(x > 0) || math.IsInf(x, 1) {
+				bad("%s %v, want above 0", l.name, x)
+			} else if slices.Contains(l.levels[:i], x) {
+				bad("%s %v stands twice", l.name, x)
 			}
 		}
 	}
@@ -171,7 +185,7 @@ func NewSummary(o SummaryOptions) (*Summary, error) {
 	if err := o.Validate(); err != nil {
 		return nil, err
 	}
-	for _, l := range []*[]float64{&o.Percentiles, &o.Lorenz, &o.Shortfalls} {
+	for _, l := range []*[]float64{&o.Percentiles, &o.Lorenz, &o.Shortfalls, &o.Runway, &o.Falls} {
 		*l = slices.Sorted(slices.Values(*l))
 	}
 	o.TopShares = slices.Clone(o.TopShares)

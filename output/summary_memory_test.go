@@ -19,6 +19,7 @@ func crowd(t testing.TB, households int64, o SummaryOptions, block *SummaryRows,
 	scaled := func(x []float64) []float64 { return make([]float64, len(x)) }
 	rows.Income, rows.Consumption, rows.Assets = scaled(block.Income), scaled(block.Consumption), scaled(block.Assets)
 	rows.Household = make([]int64, block.N)
+	rows.LastConsumption, rows.JobLost = nil, nil // they would not be those of the households here
 	sample := func() {
 		runtime.GC() // what is held, not what waits for collection
 		var m runtime.MemStats

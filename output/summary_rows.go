@@ -19,6 +19,8 @@ type SummaryRows struct {
 	Propensity                  []float64 // marginal propensity to consume; nil: left out
 	AtLimit                     []bool    // borrowing limit binds; nil: left out
 	TwinAssets                  []float64 // money, assets of the certain twin; nil: left out
+	LastConsumption             []float64 // money, of last year; NaN in a household's first year; nil: left out
+	JobLost                     []bool    // earnings are lost this year; nil, or without LastConsumption: left out
 }
 
 // check reports rows that do not fit the options.

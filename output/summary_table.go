@@ -30,11 +30,29 @@ import (
 //     percent), s80_s20 (what the richest fifth have over what the poorest have),
 //     expected_shortfall (mean of the lowest level percent), hill (index of the
 //     Pareto tail from the highest level percent; households says from how many);
-//   - consumption: mean_propensity, the mean marginal propensity to consume;
+//   - propensity, the marginal propensity to consume, to the nearest 2^-30: mean (also
+//     as consumption, mean_propensity), sd, percentile;
+//   - propensity_by_wealth: mean, within each fifth of assets (level, 1 the poorest;
+//     households with equal assets are in one), for everybody at an age and for all ages;
 //   - assets: share_at_limit, the share of households whose borrowing limit binds;
 //   - precautionary_assets: mean, the mean of assets less those of the certain
 //     twin, and share_of_mean_assets;
-//   - wealth_to_income: ratio_of_means, mean assets over mean income.
+//   - wealth_to_income, assets over net income of those who have income: percentile,
+//     and ratio_of_means, mean assets over mean income, of all;
+//   - runway_months, for how many months assets pay for consumption, and
+//     runway_income_months, for how many they stand in for net income: percentile,
+//     share_below (level in months). Both are 0 without assets. With assets there is no
+//     runway where consumption is not positive (which exponential and quadratic utility
+//     allow), and no runway_income_months without income at all;
+//   - consumption_change, by what fraction consumption changes from last year's, of
+//     those who consumed a positive amount then and are not in their first year, to the
+//     nearest 2^-30, and consumption_change_job_loss, of those who lose their earnings
+//     this year: mean, sd, percentile, share_below (level −0.1: it falls by more than
+//     10 %).
+//
+// A ratio beyond 10^12 counts as having no denominator. Of variables that not every
+// household has, households counts those that do, and with fewer than 20 there are
+// no rows.
 //
 // lower and upper bound a 95 % interval: order statistics for percentiles,
 // Clopper–Pearson for shares of households, Student's t on the jackknife error for
@@ -55,9 +73,9 @@ func (s *Summary) Table() *Table {
 	w := &summaryWriter{
 		group:     t.AddString("group", "", "group of households; \"all\" for all groups together"),
 		age:       t.AddInt("age", "year", "age of the household; missing for all ages together, as they are at a moment"),
-		variable:  t.AddString("variable", "", "what is described; money in currency units a year, assets in currency units at the end of the year"),
+		variable:  t.AddString("variable", "", "what is described; money in currency units a year, assets in currency units at the end of the year, runway in months, changes as fractions"),
 		statistic: t.AddString("statistic", "", "which figure of the variable's distribution"),
-		level:     t.AddFloat("level", "percent", "share of households that the figure is about: at or below a percentile, the poorest (lorenz), the richest (top_share, hill), the lowest (expected_shortfall)"),
+		level:     t.AddFloat("level", "", "percent of households that the figure is about: at or below a percentile, the poorest (lorenz), the richest (top_share, hill), the lowest (expected_shortfall); of share_below the threshold, in months (runway) or as a fraction (change of consumption); of propensity_by_wealth the fifth of assets, 1 the poorest"),
 		estimate:  t.AddFloat("estimate", "", "the figure, in the unit of the variable; gini, lorenz and shares are fractions, ratios and hill pure numbers"),
 		se:        t.AddFloat("standard_error", "", "Monte Carlo standard error of the estimate"),
 		lower:     t.AddFloat("lower", "", "lower end of the 95 % confidence interval"),
@@ -133,11 +151,27 @@ func (w *summaryWriter) target(s *Summary, i int) {
 	for v := range s.variables {
 		w.distribution(s, t, r, v)
 	}
+	w.byWealth(s, t, r)
 	for _, q := range summaryRatios {
 		if of, by := s.variable(q.of), s.variable(q.by); of >= 0 && by >= 0 {
 			w.row(q.name, q.statistic, noLevel, r.Ratio(of, by))
 		}
 	}
+}
+
+// byWealth appends the mean propensity to consume in every class of assets.
+func (w *summaryWriter) byWealth(s *Summary, t *target, r *distribution.Result) {
+	assets, propensity := s.variable("assets"), s.variable("propensity")
+	if propensity < 0 || t.wants(&s.variables[assets])&distribution.Classes == 0 || r.Values(assets) < wealthClasses*leastRows {
+		return
+	}
+	all := w.households
+	for class := range wealthClasses {
+		if w.households = min(all, r.RowsIn(assets, class)); w.households > 0 {
+			w.row("propensity_by_wealth", "mean", float64(class+1), r.MeanIn(assets, class, 0))
+		}
+	}
+	w.households = all
 }
 
 // distribution appends what the target wants of a variable.
@@ -148,12 +182,35 @@ func (w *summaryWriter) distribution(s *Summary, t *target, r *distribution.Resu
 		row(of.mean, noLevel, r.Proportion(v))
 		return
 	}
-	row(of.mean, noLevel, r.Mean(v))
+	if of.gaps {
+		if r.Values(v) < leastRows {
+			return
+		}
+		all := w.households
+		w.households = min(all, r.Values(v))
+		defer func() { w.households = all }()
+	}
+	if of.mean != "" {
+		row(of.mean, noLevel, r.Mean(v))
+	}
+	if of.repeats[0] != "" {
+		w.row(of.repeats[0], of.repeats[1], noLevel, r.Mean(v))
+	}
 	wants := t.wants(of)
 	if wants&distribution.Percentiles != 0 {
-		row("sd", noLevel, r.SD(v))
+		if of.mean != "" {
+			row("sd", noLevel, r.SD(v))
+		}
 		for k, p := range s.o.Percentiles {
 			row("percentile", p, r.Percentile(v, k))
+		}
+	}
+	if of.also != nil {
+		row = func(statistic string, level float64, e stats.Estimate) { w.row(of.also.name, statistic, level, e) }
+		for k, p := range s.o.Percentiles {
+			if wants&distribution.Percentiles != 0 {
+				row("percentile", p, of.also.estimate(r.Percentile(v, k)))
+			}
 		}
 	}
 	if wants&distribution.Gini != 0 {
@@ -196,6 +253,17 @@ func (w *summaryWriter) distribution(s *Summary, t *target, r *distribution.Resu
 		w.households = households
 	}
 }
+
+// estimate is the image of a percentile.
+func (i *summaryImage) estimate(e stats.Estimate) stats.Estimate {
+	e.Value, e.Lower, e.Upper = i.of(e.Value), i.of(e.Lower), i.of(e.Upper)
+	e.StandardError = (e.Upper - e.Lower) / (2 * normalHalfWidth)
+	return e
+}
+
+// normalHalfWidth is half the width of a 95 % interval of the normal distribution in
+// standard errors.
+const normalHalfWidth = 1.959963984540054
 
 func (w *summaryWriter) row(variable, statistic string, level float64, e stats.Estimate) {
 	w.group.AppendString(w.name)

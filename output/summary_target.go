@@ -87,6 +87,9 @@ func (s *Summary) newStudy() error {
 	if o.Tail > 0 {
 		d.Tails = []float64{o.Tail}
 	}
+	if v := s.variable("propensity"); v >= 0 {
+		d.Classes, d.Means = wealthClasses, []int{v}
+	}
 	for i := range s.variables {
 		v := &s.variables[i]
 		variable := distribution.Variable{Name: v.key, Optional: v.gaps, MeanOnly: v.wants == 0, Held: v.wants != 0}
@@ -101,7 +104,11 @@ func (s *Summary) newStudy() error {
 		t := &s.targets[i]
 		to := distribution.Target{Cells: t.cells(o), Independent: t.independent()}
 		for v := range s.variables {
-			to.Wants = append(to.Wants, t.wants(&s.variables[v]))
+			wants := t.wants(&s.variables[v])
+			if d.Classes == 0 {
+				wants &^= distribution.Classes
+			}
+			to.Wants = append(to.Wants, wants)
 		}
 		d.Targets = append(d.Targets, to)
 	}

@@ -78,3 +78,53 @@ func TestMobilityFromThePanel(t *testing.T) {
 		t.Errorf("%d probabilities, want 87", found)
 	}
 }
+
+// Runway and the changes of consumption of a run are what its panel gives.
+func TestBuffersFromThePanel(t *testing.T) {
+	inFolder(t)
+	if status, _, stderr := cistern(t, "simulate", "port.yaml", "--set", "summary.runway_months=[3, 12]", "--set", "summary.consumption_falls=[7.5]"); status != 0 {
+		t.Fatalf("status %d: %s", status, stderr)
+	}
+	const age = 45
+	var n, below, changes, falls, losses, lost float64
+	last := map[int64]float64{}
+	err := output.ReadPanel("runs/port/panel", []string{"household", "age", "employed", "consumption", "assets"}, func(p *output.Table) error {
+		for i, id := range p.Column("household").Ints {
+			c := p.Column("consumption").Floats[i]
+			if p.Column("age").Ints[i] == age {
+				n++
+				if p.Column("assets").Floats[i] < 3*c/12 {
+					below++
+				}
+				change := c/last[id] - 1
+				changes += change
+				if change < -0.075 {
+					falls++
+				}
+				if p.Column("employed").Ints[i] == 0 {
+					losses++
+					lost += change
+				}
+			}
+			last[id] = c
+		}
+		return nil
+	})
+	if err != nil {
+		t.Fatal(err)
+	}
+	want := map[string]float64{"runway_months share_below 3": below / n, "consumption_change mean ": changes / n,
+		"consumption_change share_below -0.075": falls / n, "consumption_change_job_loss mean ": lost / losses}
+	for _, r := range records(t, "runs/port/summary.csv") {
+		key := r["variable"] + " " + r["statistic"] + " " + r["level"]
+		if x, ok := want[key]; ok && r["group"] == "all" && r["age"] == strconv.Itoa(age) {
+			if math.Abs(float(t, r["estimate"])-x) > 1e-8 || !(float(t, r["standard_error"]) > 0) {
+				t.Errorf("%v: from the panel %v", r, x)
+			}
+			delete(want, key)
+		}
+	}
+	if len(want) > 0 || !(lost/losses < changes/n-0.02) {
+		t.Errorf("not in the summary: %v; consumption changes by %g, at job loss by %g", want, changes/n, lost/losses)
+	}
+}

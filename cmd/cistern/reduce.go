@@ -83,5 +83,6 @@ func (r *run) endPass() (more bool, err error) {
 // addToSummary hands a block to the summary.
 func (r *run) addToSummary(worker int, b *sim.Block, spans []output.Span) (func() error, error) {
 	return r.summary.Add(worker, &output.SummaryRows{First: b.First, N: b.N, Spans: spans, Household: b.Household,
-		Income: b.Income, Consumption: b.Consumption, Assets: b.Assets, Propensity: b.Propensity, AtLimit: b.AtLimit, TwinAssets: b.TwinAssets})
+		Income: b.Income, Consumption: b.Consumption, Assets: b.Assets, Propensity: b.Propensity, AtLimit: b.AtLimit, TwinAssets: b.TwinAssets,
+		LastConsumption: b.LastConsumption, JobLost: b.JobLost})
 }

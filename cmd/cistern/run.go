@@ -143,7 +143,7 @@ func (r *run) simulate(ctx context.Context) error {
 		return err
 	}
 	for pass := 0; ; pass++ {
-		columns := sim.Identity | sim.Propensity | sim.Twins
+		columns := sim.Identity | sim.Propensity | sim.Twins | sim.Changes
 		if pass == 0 {
 			columns |= sim.States
 			if panel != nil {
@@ -288,7 +288,8 @@ func (r *run) newSummary() error {
 	}
 	s, err := output.NewSummary(output.SummaryOptions{FirstAge: r.sc.FirstAge, LastAge: r.sc.LastAge, Groups: r.groupNames(),
 		Households: r.sc.Households, Percentiles: r.sc.Summary.Percentiles, By: by,
-		Lorenz: r.sc.Summary.Lorenz, TopShares: r.sc.Summary.TopShares, Shortfalls: r.sc.Summary.Shortfall, Tail: r.sc.Summary.Tail, Growth: r.sc.Growth,
+		Lorenz: r.sc.Summary.Lorenz, TopShares: r.sc.Summary.TopShares, Shortfalls: r.sc.Summary.Shortfall, Tail: r.sc.Summary.Tail,
+		Runway: r.sc.Summary.RunwayMonths, Falls: r.sc.Summary.ConsumptionFalls, Growth: r.sc.Growth,
 		Bands: output.DefaultBands(r.sc.FirstAge, r.sc.LastAge), Workers: r.g.workers})
 	r.summary = s
 	return err
