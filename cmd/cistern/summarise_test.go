@@ -1,6 +1,7 @@
 package main
 
 import (
+	"fmt"
 	"math"
 	"os"
 	"strings"
@@ -39,7 +40,7 @@ func TestSummariseOwnPanel(t *testing.T) {
 				return math.NaN()
 			}
 			if l := level("level"); !math.IsNaN(l) {
-				key += strings.TrimSpace(strings.Repeat(".", int(l*10)))
+				key += fmt.Sprintf("@%g", l) // thresholds may be negative
 			}
 			figures[key] = [4]float64{level("estimate"), level("standard_error"), level("lower"), level("upper")}
 		}
