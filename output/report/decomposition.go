@@ -5,7 +5,6 @@ import (
 	"slices"
 	"strings"
 
-	"cistern/output"
 	"cistern/output/stats"
 )
 
@@ -47,9 +46,10 @@ func takenApart(r *Run, _ *summary) Section {
 	slices.SortStableFunc(groups, func(a, b string) int { return everyoneFirst(a) - everyoneFirst(b) })
 	c := Chart{ID: "assets-without", Title: "Mean wealth as its causes are removed", X: ageAxis, Y: money("mean assets", r, false),
 		Caption: "Causes are removed one after the other, in this order; the same households live again on the same luck. A part depends on its place in the order."}
-	table := Table{ID: "parts", Title: "Parts of mean wealth of the whole population, " + r.Currency, Head: []string{"group", "held because of", "amount", "share of mean wealth"},
-		Numbers: []bool{false, false, true, true}}
-	for _, g := range groups {
+	var premiums []string
+	for k, g := range groups {
+		table := Table{ID: fmt.Sprintf("parts-%d", k), Group: g, Title: "Parts of mean wealth of " + groupName(g) + " of all ages, " + r.Currency, Head: []string{"held because of", "amount", "share of mean wealth"},
+			Numbers: []bool{false, true, true}}
 		v := View{Group: g}
 		for i, s := range steps {
 			name := "with all causes"
@@ -64,24 +64,20 @@ func takenApart(r *Run, _ *summary) Section {
 		c.Views = append(c.Views, v)
 		for _, p := range parts {
 			amount, share := whole[place{g, p, "part", "mean"}], whole[place{g, p, "part", "share_of_mean_assets"}]
-			table.Rows = append(table.Rows, []string{groupName(g), words(p), rounded(amount.Value, amount.StandardError) + " ± " + rounded(amount.StandardError, amount.StandardError),
+			table.Rows = append(table.Rows, []string{words(p), rounded(amount.Value, amount.StandardError) + " ± " + rounded(amount.StandardError, amount.StandardError),
 				percent(share.Value, share.StandardError)})
 		}
 		if e, ok := whole[place{g, "income_risk", "equivalent_premium", "share_of_consumption"}]; ok {
-			section.Words = append(section.Words, fmt.Sprintf("At the start of life %s would give up %s of the consumption of a life without income risk to be rid of that risk.", giver(g), percent(e.Value, 0)))
+			premiums = append(premiums, fmt.Sprintf("%s %s", groupName(g), percent(e.Value, 0)))
 		}
+		section.Tables = append(section.Tables, table)
+	}
+	if len(premiums) > 0 {
+		section.Words = []string{"At the start of life households would give up so much of the consumption of a life without income risk to be rid of that risk: " + strings.Join(premiums, ", ") + "."}
 	}
 	section.add(c)
-	section.Tables = []Table{table}
 	return section
 }
 
 // words writes the name of a cause.
 func words(cause string) string { return strings.ReplaceAll(cause, "_", " ") }
-
-func giver(group string) string {
-	if group == output.Everyone {
-		return "the average household"
-	}
-	return "one of the " + group
-}

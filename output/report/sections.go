@@ -148,9 +148,9 @@ func concentration(_ *Run, s *summary) Section {
 	section := Section{ID: "concentration", Title: "Who holds how much"}
 	c := Chart{ID: "lorenz", Title: "Lorenz curves of the whole population", X: Axis{Label: "poorest share of households", Share: true, Zero: true},
 		Y: Axis{Label: "their share of the total", Share: true, Zero: true}, Caption: "The further a curve hangs below the straight line, the more unequal. Each variable is ordered by itself."}
-	t := Table{ID: "concentration-table", Title: "Concentration in the whole population, with standard errors", Head: []string{"group", "variable", "Gini", "top 10 %", "top 1 %", "top 0.1 %", "S80/S20"},
-		Numbers: []bool{false, false, true, true, true, true, true}}
 	for _, g := range s.groups {
+		t := Table{ID: "concentration-" + slug(g, s.groups), Group: g, Title: "Concentration among " + groupName(g) + " of all ages, with standard errors",
+			Head: []string{"variable", "Gini", "top 10 %", "top 1 %", "top 0.1 %", "S80/S20"}, Numbers: []bool{false, true, true, true, true, true}}
 		view := View{Group: g, Series: []Series{{Name: "equality", Label: "equality", X: []float64{0, 1}, Y: []float64{0, 1}, Style: 4}}}
 		for i, v := range []string{"consumption", "income", "assets"} {
 			line := Series{X: []float64{0}, Y: []float64{0}, Lower: []float64{0}, Upper: []float64{0}}
@@ -166,7 +166,7 @@ func concentration(_ *Run, s *summary) Section {
 			line.X, line.Y = append(line.X, 1), append(line.Y, 1)
 			line.Lower, line.Upper = append(line.Lower, 1), append(line.Upper, 1)
 			view.Series = append(view.Series, line.named(v, v, i))
-			row := []string{groupName(g), v, s.cell(g, v, "gini", nan, false)}
+			row := []string{v, s.cell(g, v, "gini", nan, false)}
 			for _, top := range []float64{10, 1, 0.1} {
 				row = append(row, s.cell(g, v, "top_share", top, true))
 			}
@@ -175,11 +175,11 @@ func concentration(_ *Run, s *summary) Section {
 		if len(view.Series) > 1 {
 			c.Views = append(c.Views, view)
 		}
+		if len(t.Rows) > 0 {
+			section.Tables = append(section.Tables, t)
+		}
 	}
 	section.add(c)
-	if len(t.Rows) > 0 {
-		section.Tables = append(section.Tables, t)
-	}
 	return section
 }
 
@@ -256,7 +256,7 @@ func runway(_ *Run, s *summary) Section {
 		var v View
 		v.Group = g
 		for i, months := range s.levelsOf("runway_months", "share_below") {
-			label := fmt.Sprintf("under %s months", rounded(months, months/100))
+			label := fmt.Sprintf("under %s months", strconv.FormatFloat(months, 'g', -1, 64))
 			if months == 1 {
 				label = "under 1 month"
 			}
