@@ -215,11 +215,15 @@ func (v *village) compare(t *testing.T, s *Study, target, variable int) {
 	if wants&Tail != 0 {
 		for i, p := range o.Tails {
 			alpha, k := r.Hill(variable, i)
-			rows := c.above(c.quantile(1-p/100, true))
+			u := c.quantile(1-p/100, true)
+			if !weighted {
+				u = c[len(c)-int(math.Round(p/100*float64(len(c))))-1].x
+			}
+			rows := c.above(u)
 			if k != int64(rows) {
 				t.Errorf("target %d, variable %d: %d rows above, want %d", target, variable, k, rows)
 			}
-			figure(fmt.Sprint("hill ", p), alpha, func(c crowd) float64 { return c.hill(c.above(c.quantile(1-p/100, true))) }, 1e-10, 0) // its error: TestHillError
+			figure(fmt.Sprint("hill ", p), alpha, func(c crowd) float64 { return c.hill(c.above(u)) }, 1e-10, 0) // its error: TestHillError
 		}
 	}
 	if wants&Classes != 0 {

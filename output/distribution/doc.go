@@ -29,9 +29,10 @@
 //	expected shortfall  ES(p) = x_p − D_p/(p·N),
 //
 // the last the mean of the lowest share p (Acerbi and Tasche 2002, Journal of
-// Banking & Finance 26). Hill's (1975, Annals of Statistics 3) index of the upper
-// tail of share p, with u the value above which k rows lie, is
-// 1/α = Σ w·max(0, log x − log u) / Σ w·1{x > u}.
+// Banking & Finance 26, 1487–1503). Hill's (1975, Annals of Statistics 3, 1163–1174)
+// index of the upper tail of share p is
+// 1/α = Σ w·max(0, log x − log u) / Σ w·1{x > u}; u is the value above which k = p·n
+// rows lie, rounded, without weights, and x_(1−p) with weights.
 //
 // Errors. All but quantiles have delete-a-group jackknife errors, the rows of a
 // unit in one of 64 groups. p·x_p − E max(0, x_p − x) is stationary in x_p

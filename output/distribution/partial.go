@@ -23,7 +23,9 @@ func (r *result) planEdges(o *Options) {
 		add(p / 100)
 	}
 	for _, p := range o.Tails {
-		add(1 - p/100)
+		if add(1 - p/100); r.scale == 0 { // the rounded number of rows, not the least that makes the share
+			r.edges[len(r.edges)-1].rank = max(1, r.total-int64(math.Round(p/100*float64(r.total))))
+		}
 		near := r.besides(p / 100)
 		add(1 - p/100 - near)
 		add(1 - p/100 + near)
