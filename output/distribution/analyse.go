@@ -87,7 +87,10 @@ func (s *Study) analyseStore(whole bool) {
 	index := s.store.index(s.o.Cells)
 	var next atomic.Int64
 	var wg sync.WaitGroup
-	var large sync.Mutex
+	var large struct {
+		sync.Mutex
+		sampler
+	}
 	for range min(s.o.Workers, sorters) {
 		wg.Go(func() {
 			var so sampler
@@ -99,7 +102,7 @@ func (s *Study) analyseStore(whole bool) {
 				t := &s.o.Targets[k/len(s.held)]
 				if float64(len(t.Cells)) > smallShare*float64(s.o.Cells) {
 					large.Lock()
-					s.analyse(new(sampler), index, k, whole)
+					s.analyse(&large.sampler, index, k, whole)
 					large.Unlock()
 					continue
 				}

@@ -29,12 +29,12 @@ type binSet struct {
 	pages []binPage
 }
 
-func (b *binSet) add(column []float64) {
+func (b *binSet) add(column []float64, optional bool) {
 	if b.index == nil {
 		b.index = new([1 << pageBits]uint16)
 	}
 	for _, x := range column {
-		if x != x {
+		if optional && x != x {
 			continue // no value
 		}
 		k := key(x)
@@ -71,7 +71,7 @@ func newHistograms(cells, slots, workers int) *histograms {
 }
 
 // add counts the held variables of a block.
-func (h *histograms) add(worker int, r *Rows, held []int) {
+func (h *histograms) add(worker int, r *Rows, held []int, variables []Variable) {
 	cells := h.copies[worker%len(h.copies)]
 	for _, sp := range r.Spans {
 		if sp.From == sp.To {
@@ -80,7 +80,7 @@ func (h *histograms) add(worker int, r *Rows, held []int) {
 		c := &cells[sp.Cell]
 		c.mu.Lock()
 		for i, v := range held {
-			c.set[i].add(r.Values[v][sp.From:sp.To])
+			c.set[i].add(r.Values[v][sp.From:sp.To], variables[v].Optional)
 		}
 		c.mu.Unlock()
 	}

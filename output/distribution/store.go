@@ -1,6 +1,9 @@
 package distribution
 
-import "math"
+import (
+	"math"
+	"slices"
+)
 
 // Bytes that a held value takes, those that a row takes beside, and those that a
 // value takes while it is sorted.
@@ -87,8 +90,13 @@ type sampler struct {
 // them. scale turns weights into units: the whole target weighs about 2^61. It is
 // 0 where every row is one unit.
 func (so *sampler) load(index [][]piece, t *Target, slot int, scale float64) {
-	so.raw.keys, so.raw.marks, so.weights = so.raw.keys[:0], so.raw.marks[:0], so.weights[:0]
-	rows := false
+	rows, n := false, 0
+	for _, c := range t.Cells {
+		for _, p := range index[c.Index] {
+			n += p.to - p.from
+		}
+	}
+	so.raw.keys, so.raw.marks, so.weights = slices.Grow(so.raw.keys[:0], n), slices.Grow(so.raw.marks[:0], n), so.weights[:0]
 	for i, c := range t.Cells {
 		for _, p := range index[c.Index] {
 			for k, x := range p.b.values[slot][p.from:p.to] {

@@ -170,7 +170,7 @@ func (s *Study) Add(worker int, rows *Rows) (commit func() error, err error) {
 		kept = s.newBlock(rows)
 	}
 	if s.hist != nil {
-		s.hist.add(worker, rows, s.held)
+		s.hist.add(worker, rows, s.held, s.o.Variables)
 	}
 	first := rows.First
 	return func() error { return s.commit(first, sums, kept) }, nil
