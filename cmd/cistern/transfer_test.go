@@ -7,6 +7,12 @@ import (
 	"strconv"
 	"strings"
 	"testing"
+
+	"cistern/configs"
+	"cistern/output"
+	"cistern/output/stats"
+	"cistern/policy"
+	"cistern/sim/transfer"
 )
 
 // records reads a CSV file as one map a row.
@@ -160,6 +166,67 @@ func TestBillExperiment(t *testing.T) {
 		}
 		if unable == 0 {
 			t.Error("no row says who cannot pay")
+		}
+	}
+}
+
+// The jackknife errors of responses match how much responses differ from sample to
+// sample, and the intervals cover: 200 samples of 1280 households, twenty a
+// jackknife group, against their mean. Limits of wealth are kept.
+func TestTransferErrorsMatchTheSpread(t *testing.T) {
+	if testing.Short() {
+		t.Skip("statistical")
+	}
+	sc, err := configs.Parse("port.yaml", []byte(port), nil)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var households []policy.Household
+	for _, p := range sc.Problems() {
+		households = append(households, p.Household)
+	}
+	rules, err := solveAll(t.Context(), households, sc.Solver, 2, func(int64) {})
+	if err != nil {
+		t.Fatal(err)
+	}
+	p := sc.Population(rules, nil)
+	p.Households = 1280
+	o := transfer.Options{Amount: 3000, Ages: []int{40, 45}, Years: 4, Bands: []transfer.Band{{First: 40, Last: 49}}, Limits: [][]float64{{3000, 10000}}}
+	const samples = 200
+	figures := map[string][]stats.Estimate{}
+	for range samples {
+		p.Seed++
+		r, err := transfer.Run(t.Context(), p, o)
+		if err != nil {
+			t.Fatal(err)
+		}
+		x := output.Transfer{Amount: o.Amount, Bands: []output.Band{{First: 40, Last: 49}}, Groups: []string{"dockers", "pilots"}, Classes: 3, Years: 4}
+		for i := range r.Cells {
+			x.Cells = append(x.Cells, output.TransferSums(r.Cells[i]))
+		}
+		all, poor := x.Response(-1, -1, -1), x.Response(0, 0, 0)
+		for name, e := range map[string]stats.Estimate{"propensity": all.Propensity, "consumed": all.Consumed[0], "to date": all.Cumulated[4],
+			"held": all.Held[2], "of income": all.OfIncome, "poor dockers": poor.Consumed[0]} {
+			figures[name] = append(figures[name], e)
+		}
+	}
+	for name, list := range figures {
+		mean, square, errors, covered := 0.0, 0.0, 0.0, 0.0
+		for _, e := range list {
+			mean += e.Value / samples
+			errors += e.StandardError * e.StandardError / samples
+		}
+		for _, e := range list {
+			square += (e.Value - mean) * (e.Value - mean) / (samples - 1)
+			if e.Lower <= mean && mean <= e.Upper {
+				covered++
+			}
+		}
+		if ratio := errors / square; math.Abs(ratio-1) > 4*math.Sqrt(2.0/samples) {
+			t.Errorf("%s: mean square error %.3g times the variance over samples", name, ratio)
+		}
+		if covered/samples < 0.95-4*math.Sqrt(0.05*0.95/samples) {
+			t.Errorf("%s: intervals cover in %g of %d samples", name, covered, samples)
 		}
 	}
 }
