@@ -111,6 +111,9 @@ func TestCoverage(t *testing.T) {
 			if c.ranks {
 				most = 0.985
 			}
+			if name == "weighted" && c.ranks {
+				most = 0.995 // never taken for narrower than that of as many rows of equal weight, which here they may be
+			}
 			if rate < 0.935 || rate > most {
 				t.Errorf("%s: the interval of %s holds the truth in %.3f of samples, want 0.935 to %v", name, what, rate, most)
 			}
