@@ -112,7 +112,7 @@ A model's output under stated assumptions; no personal financial advice.`,
 		return usagef("%w%s; see %s --help", err, didYouMean(flagsLike(cmd, err)), cmd.CommandPath())
 	})
 	g.addFlags(root.PersistentFlags())
-	root.AddCommand(newSimulateCommand(g), newCheckCommand(g), newIncomeCommand(g), newSolveCommand(g),
+	root.AddCommand(newSimulateCommand(g), newStressCommand(g), newStressesCommand(g), newCheckCommand(g), newIncomeCommand(g), newSolveCommand(g),
 		newScenariosCommand(g), newVerifyCommand(g), newReportCommand(g), newSummariseCommand(g), newSchemaCommand(g), newVersionCommand(g))
 	addHelpAndCompletion(root)
 	return root

@@ -8,12 +8,23 @@ import (
 
 func newSchemaCommand(g *globals) *cobra.Command {
 	return &cobra.Command{
-		Use:     "schema",
-		Short:   "Print the scenario format as JSON Schema, for editors",
-		Example: "  cistern schema > cistern.schema.json",
-		Args:    noArguments,
+		Use:       "schema [FORMAT]",
+		Short:     "Print the scenario or stress format as JSON Schema, for editors",
+		Example:   "  cistern schema > cistern.schema.json\n  cistern schema stress > cistern-stress.schema.json",
+		Args:      atMostOne("format"),
+		ValidArgs: []string{"scenario", "stress"},
 		RunE: func(cmd *cobra.Command, args []string) error {
-			_, err := g.stdout.Write(configs.Schema())
+			schema := configs.Schema
+			if len(args) > 0 {
+				switch args[0] {
+				case "scenario":
+				case "stress":
+					schema = configs.StressSchema
+				default:
+					return usagef("there is no format %q, want scenario or stress", args[0])
+				}
+			}
+			_, err := g.stdout.Write(schema())
 			return err
 		},
 	}

@@ -31,7 +31,7 @@ type Options struct {
 	RowsAYear  int64 // about how many rows a year has, at least as many as it will be
 	Weighted   bool  // spans carry weights that differ
 	Workers    int   // goroutines that call Add, at least 1
-	Budget     int64 // bytes for values held at a time; 0: DefaultBudget
+	Budget     int64 // bytes for values held at a time, where weights do not need more; 0: DefaultBudget
 }
 
 // DefaultBudget is 1 GiB.
@@ -49,14 +49,20 @@ func (o *Options) bytesPerRow() int64 {
 // Held returns how many bytes the values held at a time will take, at most.
 func (o Options) Held() float64 {
 	all := float64(o.RowsAYear) * float64(o.LastYear-o.FirstYear+1) * float64(o.bytesPerRow())
-	return math.Min(all, float64(max(o.budget(), o.RowsAYear*o.bytesPerRow()*int64(b2i(o.Weighted)))))
+	return math.Min(all, float64(o.budget()))
 }
 
+// budget is Budget, or its default; rows with weights take at least what a year of
+// them needs.
 func (o *Options) budget() int64 {
-	if o.Budget == 0 {
-		return DefaultBudget
+	budget := o.Budget
+	if budget == 0 {
+		budget = DefaultBudget
 	}
-	return o.Budget
+	if o.Weighted {
+		budget = max(budget, o.RowsAYear*o.bytesPerRow())
+	}
+	return budget
 }
 
 // batch is how many calendar years are described at a time: as many as fit the
@@ -98,11 +104,4 @@ func (o Options) Validate() error {
 		bad("%d households, %d rows a year, %d workers, %d bytes", o.Households, o.RowsAYear, o.Workers, o.Budget)
 	}
 	return errors.Join(errs...)
-}
-
-func b2i(b bool) int {
-	if b {
-		return 1
-	}
-	return 0
 }

@@ -2,7 +2,6 @@ package stress
 
 import (
 	"context"
-	"errors"
 	"fmt"
 	"math"
 	"runtime/debug"
@@ -61,41 +60,43 @@ type preparation struct {
 	courses []*sim.Course // [type][entry]; nil: as usual
 }
 
-// all makes every course. The first error in the order of courses ends it.
+// all makes every course. The first error in the order of courses ends it: those
+// before it are made in any case, so that it does not depend on the workers.
 func (pr *preparation) all(ctx context.Context) error {
-	ctx, cancel := context.WithCancelCause(ctx)
-	defer cancel(nil)
 	errs := make([]error, len(pr.courses))
-	var next, done atomic.Int64
+	var next atomic.Int64
 	var mu sync.Mutex
+	done, end := 0, len(pr.courses) // end: where the first error so far is
 	var wg sync.WaitGroup
 	for range min(max(1, pr.o.Workers), len(pr.courses)) {
 		wg.Go(func() {
 			for {
 				i := int(next.Add(1)) - 1
-				if i >= len(pr.courses) || ctx.Err() != nil {
-					return
-				}
-				if errs[i] = pr.safely(ctx, i); errs[i] != nil {
-					cancel(errs[i])
-					return
-				}
 				mu.Lock()
-				if n := int(done.Add(1)); pr.o.OnCourse != nil {
-					pr.o.OnCourse(n, len(pr.courses))
+				beyond := i >= end
+				mu.Unlock()
+				if beyond || ctx.Err() != nil {
+					return
+				}
+				errs[i] = pr.safely(ctx, i)
+				mu.Lock()
+				if errs[i] != nil {
+					end = min(end, i)
+				} else if done++; pr.o.OnCourse != nil {
+					pr.o.OnCourse(done, len(pr.courses))
 				}
 				mu.Unlock()
 			}
 		})
 	}
 	wg.Wait()
-	for _, err := range errs {
-		if err != nil && !errors.Is(err, context.Canceled) {
-			return err
-		}
-	}
 	if ctx.Err() != nil {
 		return fmt.Errorf("stress: stopped: %w", context.Cause(ctx))
+	}
+	for _, err := range errs {
+		if err != nil {
+			return err
+		}
 	}
 	return nil
 }
