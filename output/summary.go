@@ -164,8 +164,8 @@ func (o SummaryOptions) Validate() error {
 //
 // In several passes the Gini coefficient follows from counts and sums of bins,
 // with a bound on its error in the table's notes; its standard error, and the
-// effect of pooling on the intervals of percentiles, from the first households of
-// the panel, as many as a quarter of the budget holds.
+// effect of pooling on the intervals of percentiles, from a sample of households,
+// as many as a quarter of the budget holds.
 type Summary struct {
 	o       SummaryOptions
 	targets []target

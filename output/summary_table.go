@@ -101,7 +101,7 @@ func (s *Summary) notes(bound float64) []string {
 		notes = append(notes, fmt.Sprintf("Where ages are taken together, a household of age a weighs (1 + %v)^-(a - %d): births grow by that much a year.", s.o.Growth, s.o.FirstAge))
 	}
 	if bound > 0 {
-		notes = append(notes, fmt.Sprintf("Gini coefficients come from binned values and are at most %.1g off; their errors, and by how much pooled years widen intervals of percentiles, come from the first %d household-years.", bound, s.study.Sampled()))
+		notes = append(notes, fmt.Sprintf("Gini coefficients come from binned values and are at most %.1g off; their errors, and by how much pooled years widen intervals of percentiles, come from a sample of %d household-years.", bound, s.study.Sampled()))
 	}
 	return notes
 }

@@ -83,7 +83,7 @@ func (s *Summary) newStudy() error {
 	o := &s.o
 	years := int64(o.LastAge - o.FirstAge + 1)
 	d := distribution.Options{Cells: int(years) * len(o.Groups), Percentiles: o.Percentiles, Lorenz: o.Lorenz, TopShares: o.TopShares, Shortfalls: o.Shortfalls,
-		Rows: o.Households * years, Extent: o.Households, Workers: o.Workers, Budget: o.MemoryBudget}
+		Rows: o.Households * years, Workers: o.Workers, Budget: o.MemoryBudget}
 	if o.Tail > 0 {
 		d.Tails = []float64{o.Tail}
 	}

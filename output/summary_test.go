@@ -328,7 +328,7 @@ func sameBands(a, b []BandSummary) bool {
 // TestSummaryPasses compares several passes with values held in memory: the
 // same bits but for the Gini coefficients, which keep within their bound, and for
 // the intervals of percentiles of pooled years, whose widening several passes take
-// from the first households.
+// from a sample of households.
 func TestSummaryPasses(t *testing.T) {
 	for _, limit := range []float64{0, -500} { // a mass of households at one value
 		if testing.Short() && limit != 0 {
@@ -363,7 +363,7 @@ func comparePasses(t *testing.T, whole, split *Summary) {
 	if a.Len() != b.Len() {
 		t.Fatalf("%d rows and %d", a.Len(), b.Len())
 	}
-	var ratio, count float64 // of the errors that several passes take from the first households
+	var ratio, count float64 // of the errors that several passes take from a sample
 	for i := range a.Len() {
 		statistic := a.Column("statistic").Strings[i]
 		pooled := statistic == "percentile" && a.Column("age").IsMissing(i)

@@ -69,7 +69,7 @@ func (r *run) wealthLimits(ctx context.Context, p *sim.Population, o transfer.Op
 		cells[t] = -1
 	}
 	study := distribution.Options{Variables: []distribution.Variable{{Name: "assets", Held: true}}, Cells: len(o.Ages),
-		Rows: min(r.sc.Households*int64(len(o.Ages)), math.MaxUint32-1), Extent: r.sc.Households, Workers: r.g.workers}
+		Rows: min(r.sc.Households*int64(len(o.Ages)), math.MaxUint32-1), Workers: r.g.workers}
 	for i := 1; i < wealthClasses; i++ {
 		study.Percentiles = append(study.Percentiles, float64(i)*100/wealthClasses)
 	}

@@ -115,7 +115,7 @@ func (c *Contrast) begin(from int) error {
 
 func (c *Contrast) studyOptions() distribution.Options {
 	o := distribution.Options{Cells: len(c.o.Groups) * (len(c.o.Bands) + 1), Percentiles: c.percentiles, Shortfalls: c.o.Worst, Rows: max(1, c.o.RowsAYear),
-		Extent: c.o.Households, Weighted: c.o.Weighted, Workers: c.o.Workers, Budget: c.o.budget() / int64(c.to-c.from)}
+		Weighted: c.o.Weighted, Workers: c.o.Workers, Budget: c.o.budget() / int64(c.to-c.from)}
 	wants := map[int]distribution.Set{}
 	for _, v := range compared {
 		wants[v.usual], wants[v.event] = distribution.Percentiles, distribution.Percentiles

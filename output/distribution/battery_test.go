@@ -83,7 +83,7 @@ func (v *village) options() Options {
 		Cells: 3, Targets: []Target{{Cells: cell(0, 1, 2), Wants: []Set{all, all}}, {Cells: cell(2, 1), Wants: []Set{all, Gini | Median}}, {Cells: cell(0), Wants: []Set{all, Tail}}},
 		Percentiles: []float64{0.1, 1.03, 12.7, 50.017, 90.3, 99.91}, Lorenz: []float64{10.01, 33.3, 77.7}, TopShares: []float64{20.02, 1.01, 0.13},
 		Shortfalls: []float64{1.003, 5.1, 100}, Tails: []float64{5.003, 50.7}, Classes: 4, Means: []int{1},
-		Rows: rows, Extent: int64(len(v.blocks)), Weighted: v.rows, Workers: 1,
+		Rows: rows, Weighted: v.rows, Workers: 1,
 	}
 }
 

@@ -15,7 +15,7 @@ func alone(n int) Options {
 	return Options{Variables: []Variable{{Name: "x", Held: true, Shares: []Threshold{{Value: 1}}}}, Cells: 1,
 		Targets:     []Target{{Cells: []Cell{{0, 1}}, Wants: []Set{all &^ Classes}, Independent: true}},
 		Percentiles: []float64{50, 99.9}, Lorenz: []float64{10, 50, 90, 99}, TopShares: []float64{10, 1, 0.1}, Shortfalls: []float64{1, 5}, Tails: []float64{1, 5},
-		Rows: int64(n), Extent: 1, Workers: 1}
+		Rows: int64(n), Workers: 1}
 }
 
 // column is a block of one variable.

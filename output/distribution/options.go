@@ -79,7 +79,6 @@ type Options struct {
 	Means       []int     // variables whose means within the classes of another are wanted
 
 	Rows     int64 // how many rows there will be, at most: decides on the method
-	Extent   int64 // Rows.First runs from 0 to below this
 	Weighted bool  // rows carry weights, at least 0; they must then fit the budget
 	Workers  int   // goroutines that call Add, at least 1
 	Budget   int64 // bytes for values held at a time; 0: DefaultBudget
@@ -97,9 +96,9 @@ func (o Options) Validate() error {
 	if len(o.Variables) == 0 || len(o.Variables) > 250 {
 		bad("%d variables, want 1 to 250", len(o.Variables))
 	}
-	if o.Cells < 1 || o.Rows < 0 || o.Rows >= 1<<50 || o.Extent < 1 || o.Workers < 1 || o.Budget < 0 {
-		bad("%d cells, %d rows, extent %d, %d workers, %d bytes: want at least 1 cell, rows from 0 to %d, extent and workers from 1, bytes from 0",
-			o.Cells, o.Rows, o.Extent, o.Workers, o.Budget, int64(1<<50-1))
+	if o.Cells < 1 || o.Rows < 0 || o.Rows >= 1<<50 || o.Workers < 1 || o.Budget < 0 {
+		bad("%d cells, %d rows, %d workers, %d bytes: want at least 1 cell, rows from 0 to %d, workers from 1, bytes from 0",
+			o.Cells, o.Rows, o.Workers, o.Budget, int64(1<<50-1))
 	}
 	for _, l := range []struct {
 		name   string

@@ -14,12 +14,8 @@ const (
 	sortingBytes = 2*(8+4) + 8 + 1
 )
 
-// store holds the values of the blocks that start below end, in the order of
-// blocks.
-type store struct {
-	end    int64
-	blocks []*block
-}
+// store holds the values of rows by block, in the order of blocks.
+type store struct{ blocks []*block }
 
 // block holds the values of one block.
 type block struct {
@@ -48,6 +44,46 @@ func (s *Study) newBlock(r *Rows) *block {
 	return b
 }
 
+// hash scatters units: those of a sample must not go with what distinguishes units
+// in the order of their numbers. Source: S. Vigna's finaliser of SplitMix64.
+func hash(unit int64) uint64 {
+	z := uint64(unit) + 0x9e3779b97f4a7c15
+	z = (z ^ z>>30) * 0xbf58476d1ce4e5b9
+	z = (z ^ z>>27) * 0x94d049bb133111eb
+	return z ^ z>>31
+}
+
+// newSample holds the rows of some units, with all that they have.
+func (s *Study) newSample(r *Rows) *block {
+	var rows []int32
+	b := &block{values: make([][]float64, len(s.stored))}
+	for _, sp := range r.Spans {
+		from := len(rows)
+		for k, u := range r.Unit[sp.From:sp.To] {
+			if hash(u) < s.chance {
+				rows = append(rows, int32(sp.From+k))
+			}
+		}
+		if len(rows) > from {
+			b.spans = append(b.spans, Span{sp.Cell, from, len(rows)})
+		}
+	}
+	if len(rows) == 0 {
+		return nil
+	}
+	b.tags = make([]uint8, len(rows))
+	for i, k := range rows {
+		b.tags[i] = uint8(r.Unit[k] & (Groups - 1))
+	}
+	for i, v := range s.stored {
+		b.values[i] = make([]float64, len(rows))
+		for j, k := range rows {
+			b.values[i][j] = r.Values[v][k]
+		}
+	}
+	return b
+}
+
 // piece is a run of rows of one cell in the store.
 type piece struct {
 	b        *block
@@ -66,7 +102,7 @@ func (st *store) index(cells int) [][]piece {
 }
 
 // sample is the values of one variable in one target, sorted: all of them, or
-// those of the first blocks.
+// those of a sample of units.
 type sample struct {
 	keys  []uint64
 	tags  []uint8  // [row] jackknife group

@@ -32,7 +32,8 @@ type Study struct {
 
 	moments []cellSums   // by cell; written by commits only
 	spare   []*blockSums // partial sums to reuse
-	store   store        // values of all or of the first rows, until they are analysed
+	chance  uint64       // units whose hash is lower are in the store
+	store   store        // values of all rows or of a sample, until they are analysed
 	sampled int64        // rows in the store
 	hist    *histograms  // first pass where values do not fit; nil otherwise
 	refine  *refinement  // later passes
@@ -87,12 +88,12 @@ func NewStudy(o Options) (*Study, error) {
 	row := s.bytesPerRow()
 	switch {
 	case float64(o.Rows)*row <= float64(o.Budget):
-		s.store.end = math.MaxInt64
+		s.chance = math.MaxUint64
 	case o.Weighted:
 		return nil, &MemoryError{Need: int64(float64(o.Rows) * row), Budget: o.Budget}
 	default:
-		held := float64(o.Budget) / 4 / float64(valueBytes*len(s.stored)+rowBytes)
-		s.store.end = max(1, int64(float64(o.Extent)*min(1, held/float64(o.Rows))))
+		room := float64(o.Budget) / 4 / float64(valueBytes*len(s.stored)+rowBytes)
+		s.chance = uint64(min(0.999, room/float64(o.Rows)) * (1 << 63) * 2)
 		s.hist = newHistograms(o.Cells, len(s.held), o.Workers)
 	}
 	return s, nil
@@ -166,8 +167,10 @@ func (s *Study) Add(worker int, rows *Rows) (commit func() error, err error) {
 	sums := s.take()
 	s.sum(sums, rows)
 	var kept *block
-	if rows.First < s.store.end {
+	if s.hist == nil {
 		kept = s.newBlock(rows)
+	} else {
+		kept = s.newSample(rows)
 	}
 	if s.hist != nil {
 		s.hist.add(worker, rows, s.held, s.o.Variables)

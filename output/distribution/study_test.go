@@ -41,7 +41,7 @@ func options(n, cells int) Options {
 	return Options{Variables: []Variable{{Name: "x", Held: true, Shares: []Threshold{{Value: 0}}}, {Name: "y", Optional: true}}, Cells: cells,
 		Targets:     []Target{{Cells: all, Wants: []Set{every, 0}}, {Cells: all[:1], Wants: []Set{every, 0}, Independent: true}},
 		Percentiles: []float64{1, 50, 99.9}, Lorenz: []float64{10, 50}, TopShares: []float64{10, 0.1}, Shortfalls: []float64{5, 100}, Tails: []float64{5},
-		Classes: 5, Means: []int{1}, Rows: int64(n), Extent: 1, Workers: 1}
+		Classes: 5, Means: []int{1}, Rows: int64(n), Workers: 1}
 }
 
 func run(t testing.TB, o Options, blocks ...*Rows) *Study {

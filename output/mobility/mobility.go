@@ -110,7 +110,7 @@ func NewStudy(o Options) (*Study, error) {
 	}
 	wants := []distribution.Set{distribution.Percentiles, distribution.Percentiles}
 	d := distribution.Options{Variables: []distribution.Variable{{Name: "assets at the first age", Held: true}, {Name: "assets at the second age", Held: true}},
-		Cells: len(o.Groups), Percentiles: s.levels, Rows: o.Households, Extent: o.Households, Workers: o.Workers, Budget: budget}
+		Cells: len(o.Groups), Percentiles: s.levels, Rows: o.Households, Workers: o.Workers, Budget: budget}
 	everybody := distribution.Target{Wants: wants, Independent: true}
 	for g := range o.Groups {
 		cell := distribution.Cell{Index: g, Weight: 1}

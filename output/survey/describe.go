@@ -105,7 +105,7 @@ func (l *layout) targets(c *cells) (targets [][]distribution.Cell, keys [][]*val
 // study is what the engine is asked.
 func (l *layout) study(c *cells, targets [][]distribution.Cell, masks []int) distribution.Options {
 	o := distribution.Options{Cells: len(c.list), Percentiles: l.o.Percentiles, Lorenz: l.o.Lorenz, TopShares: l.o.TopShares, Shortfalls: l.o.Shortfalls,
-		Rows: l.rows, Extent: int64(len(l.groups)), Weighted: l.o.Weight != "", Workers: l.o.Workers, Budget: l.o.Budget}
+		Rows: l.rows, Weighted: l.o.Weight != "", Workers: l.o.Workers, Budget: l.o.Budget}
 	if l.o.Tail > 0 {
 		o.Tails = []float64{l.o.Tail}
 	}

@@ -57,7 +57,7 @@ func (l *layout) table(s *distribution.Study, c *cells, targets [][]distribution
 		t.Notes = append(t.Notes, "Rows are weighed by "+l.o.Weight+", taken as sampling weights: percentiles are the least value that the share of weights reaches.")
 	}
 	if bound > 0 {
-		t.Notes = append(t.Notes, fmt.Sprintf("Gini coefficients come from binned values and are at most %.1g off; their errors, and by how much units with several rows widen intervals of percentiles, come from the first %d rows.", bound, s.Sampled()))
+		t.Notes = append(t.Notes, fmt.Sprintf("Gini coefficients come from binned values and are at most %.1g off; their errors, and by how much units with several rows widen intervals of percentiles, come from a sample of %d rows.", bound, s.Sampled()))
 	}
 	return t
 }
