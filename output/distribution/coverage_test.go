@@ -43,7 +43,7 @@ func TestCoverage(t *testing.T) {
 	every := distribution.Percentiles | distribution.Gini | distribution.Concentration | distribution.Shortfall | distribution.Tail
 	plain := distribution.Options{Variables: []distribution.Variable{{Name: "x", Held: true, Shares: []distribution.Threshold{{Value: 1}}}, {Name: "y", Held: true}, {Name: "z"}}, Cells: 1,
 		Targets:     []distribution.Target{{Cells: []distribution.Cell{{Index: 0, Weight: 1}}, Wants: []distribution.Set{every, distribution.Tail, 0}, Independent: true}},
-		Percentiles: []float64{10, 50, 90, 99}, Lorenz: []float64{50}, TopShares: []float64{10}, Shortfalls: []float64{5}, Tails: []float64{10}, Rows: n, Extent: 1, Workers: 1}
+		Percentiles: []float64{10, 50, 90, 99}, Lorenz: []float64{50}, TopShares: []float64{10}, Shortfalls: []float64{5}, Tails: []float64{10}, Rows: n, Workers: 1}
 	weighted := plain
 	weighted.Weighted = true
 	weighted.Variables = []distribution.Variable{{Name: "x", Held: true, Shares: []distribution.Threshold{{Value: 1}}}}
