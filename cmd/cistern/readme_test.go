@@ -41,7 +41,8 @@ func TestReadmeCommands(t *testing.T) {
 			}
 		}
 	}
-	for _, want := range []string{"runs/quayside/run.json", "runs/quayside/panel/part-00000.parquet", "runs/my-port/summary.parquet"} {
+	for _, want := range []string{"runs/quayside/run.json", "runs/quayside/panel/part-00000.parquet", "runs/my-port/summary.parquet", "runs/quayside/report.html",
+		"runs/committee.html", "runs/claim-age.html", "runs/harbour-closure/stress.csv", "runs/wealth.csv"} {
 		if _, err := os.Stat(want); err != nil {
 			t.Errorf("the README promises %s: %v", want, err)
 		}
