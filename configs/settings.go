@@ -22,6 +22,15 @@ func (sc *Scenario) Settings() []Setting {
 	return list
 }
 
+// Settings lists every key of the stress, as Scenario.Settings does.
+func (st *Stress) Settings() []Setting {
+	doc := new(schema)
+	describeStress(&section{w: &walk{faults: new(faults)}, doc: doc}, nil)
+	var list []Setting
+	st.resolved.settings("", []map[string]any{doc.object()}, &list)
+	return list
+}
+
 // settings appends the keys of a tree; shapes are the schemas that describe it, one
 // of them the right one.
 func (t *tree) settings(path string, shapes []map[string]any, list *[]Setting) {

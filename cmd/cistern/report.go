@@ -82,6 +82,9 @@ func readReportRun(dir string) (*report.Run, error) {
 	if err != nil {
 		return nil, err
 	}
+	if slices.ContainsFunc(record.Files, func(f output.FileHash) bool { return f.Path == "stress.parquet" }) {
+		return nil, usagef("%s holds a stress, whose page is %s; report makes pages of what simulate wrote", dir, filepath.Join(dir, "report.html"))
+	}
 	if err := unchanged(dir, record); err != nil {
 		return nil, err
 	}

@@ -4,11 +4,13 @@ import (
 	"context"
 	"fmt"
 	"io"
+	"strings"
 	"time"
 
 	"cistern/configs"
 	"cistern/output"
 	"cistern/output/contrast"
+	"cistern/output/report"
 	"cistern/policy"
 	"cistern/sim"
 	"cistern/sim/stress"
@@ -21,6 +23,7 @@ type stressRun struct {
 	event    *sim.Event
 	contrast *contrast.Contrast
 	figures  []contrast.Figure
+	table    *output.Table // as written
 }
 
 // startStress sees to it that the stress can be run and opens its folder.
@@ -58,6 +61,7 @@ func (r *stressRun) do(ctx context.Context) error {
 		{"prepare", r.prepare},
 		{"simulate", r.simulate},
 		{"tables", r.writeTables},
+		{"report", r.report},
 	} {
 		start := time.Now()
 		if err := step.do(ctx); err != nil {
@@ -156,21 +160,38 @@ func (r *stressRun) writeTables(context.Context) error {
 	t := r.contrast.Table()
 	t.Provenance = r.provenance()
 	t.Provenance["stress"] = r.st.Title
+	r.table = t
 	if err := r.write("stress.parquet", t.WriteParquet); err != nil {
 		return err
 	}
 	return r.write("stress.csv", t.WriteCSV)
 }
 
+// report writes the page and the figures.
+func (r *stressRun) report(ctx context.Context) error {
+	of := reportRun(r.sc, version(), r.hash, r.inputHashes())
+	p := &report.StressRun{Title: title(r.sc, r.st), Currency: r.sc.Currency, Table: r.table, Assumptions: of.Assumptions, Provenance: of.Provenance,
+		Warnings: r.warnings, Caution: caution}
+	for _, line := range r.words()[1:] { // the title stands above them
+		if line = strings.TrimSpace(line); line != "" {
+			p.Words = append(p.Words, line)
+		}
+	}
+	for _, s := range r.st.Settings() {
+		p.Event = append(p.Event, report.Assumption(s))
+	}
+	page := report.StressPage(p)
+	if err := r.write("report.html", page.Write); err != nil {
+		return err
+	}
+	return r.writeFigures(ctx, report.Figures(page.Sections))
+}
+
 // finish writes run.json, which makes the run finished.
 func (r *stressRun) finish() error {
 	counts := map[string]int64{"households": r.result.Households, "household_years": r.result.HouseholdYears,
 		"household_years_above_grid": r.result.AboveTop, "types": int64(len(r.problems)), "passes": int64(r.contrast.Passes() - 1)}
-	var inputs []output.FileHash
-	for _, in := range r.sc.Inputs {
-		inputs = append(inputs, output.FileHash{Path: in.Name, Bytes: int64(len(in.Data)), SHA256: output.HashBytes(in.Data)})
-	}
-	return r.folder.Finish(output.Run{Version: version(), Title: title(r.sc, r.st), Seed: r.sc.Seed, Scenario: r.hash, Inputs: inputs,
+	return r.folder.Finish(output.Run{Version: version(), Title: title(r.sc, r.st), Seed: r.sc.Seed, Scenario: r.hash, Inputs: r.inputHashes(),
 		Counts: counts, Timings: r.timings, Warnings: r.warnings, Caution: caution})
 }
 

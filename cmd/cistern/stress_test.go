@@ -142,7 +142,7 @@ func TestStress(t *testing.T) {
 	if status, _, stderr := cistern(t, "stress", filepath.Join(dir, "scenario.yaml"), filepath.Join(dir, "stress.yaml"), "--out", "again", "--quiet"); status != 0 || stderr != "" {
 		t.Fatalf("status %d: %s", status, stderr)
 	}
-	for _, file := range []string{"stress.csv", "stress.parquet", "stress.yaml", "scenario.yaml"} {
+	for _, file := range []string{"stress.csv", "stress.parquet", "stress.yaml", "scenario.yaml", "report.html", "figures/dry-share.png"} {
 		a, err1 := os.ReadFile(filepath.Join(dir, file))
 		b, err2 := os.ReadFile(filepath.Join("again", file))
 		if err1 != nil || err2 != nil || !bytes.Equal(a, b) {

@@ -360,3 +360,41 @@ func TestFigures(t *testing.T) {
 		}
 	}
 }
+
+// The page about a stress shows both worlds, year by year, and their difference.
+func TestStressPage(t *testing.T) {
+	table := output.NewTable("stress")
+	year, world := table.AddInt("year", "", ""), table.AddString("world", "", "")
+	group, ages := table.AddString("group", "", ""), table.AddString("ages", "", "")
+	variable, statistic, level := table.AddString("variable", "", ""), table.AddString("statistic", "", ""), table.AddFloat("level", "", "")
+	var numbers []*output.Column
+	for _, name := range []string{"estimate", "standard_error", "lower", "upper"} {
+		numbers = append(numbers, table.AddFloat(name, "", ""))
+	}
+	for y := -1; y <= 3; y++ {
+		for k, w := range []string{"baseline", "stress", "difference"} {
+			year.AppendInt(int64(y))
+			world.AppendString(w)
+			group.AppendString(hostile)
+			ages.AppendString("25-34")
+			variable.AppendString("dry")
+			statistic.AppendString("share")
+			level.AppendMissing()
+			for _, c := range numbers {
+				c.AppendFloat(0.01 * float64(k+y+2))
+			}
+		}
+	}
+	page := StressPage(&StressRun{Title: hostile, Words: []string{"Run dry: more."}, Currency: "crown", Table: table, Event: []Assumption{{"event.lasts", "2", "years"}}, Caution: "No advice."})
+	if len(page.Sections) != 2 || page.Sections[0].ID != "dry" || page.Sections[1].ID != "event" {
+		t.Fatalf("sections %+v", page.Sections)
+	}
+	charts := page.Sections[0].Charts
+	if len(charts) != 2 || len(charts[0].Views[0].Series) != 2 || len(charts[0].Views[0].Series[1].X) != 5 || charts[1].Views[0].Series[0].Y[0] != 0.03 {
+		t.Errorf("charts %+v", charts)
+	}
+	var b bytes.Buffer
+	if err := page.Write(&b); err != nil || strings.Count(b.String(), "<script") != 2 {
+		t.Errorf("%v, %d scripts", err, strings.Count(b.String(), "<script"))
+	}
+}

@@ -67,6 +67,7 @@ type stressPlace struct {
 type stressed struct {
 	lines        map[stressPlace]*Series
 	groups, ages []string
+	within       []string // levels of recovery
 }
 
 func readStress(t *output.Table) *stressed {
@@ -86,6 +87,9 @@ func readStress(t *output.Table) *stressed {
 				s.lines[p] = &Series{}
 			}
 			s.lines[p].push(float64(year.Ints[i]), estimateAt(t, i))
+		}
+		if p.statistic == "household_share_recovered" && !slices.Contains(s.within, p.level) {
+			s.within = append(s.within, p.level)
 		}
 		if !slices.Contains(s.groups, p.group) {
 			s.groups = append(s.groups, p.group)
@@ -191,8 +195,8 @@ func (s *stressed) after(*StressRun) Section {
 		for _, a := range s.ages {
 			v := View{Group: g, Option: ageName(a)}
 			for i, variable := range []string{"assets", "consumption"} {
-				for p, line := range s.lines {
-					if p.group == g && p.ages == a && p.variable == variable && p.statistic == "household_share_recovered" {
+				for _, level := range s.within {
+					if line := s.lines[stressPlace{"difference", g, a, variable, "household_share_recovered", level}]; line != nil {
 						v.Series = append(v.Series, line.named(variable, variable, i))
 					}
 				}

@@ -149,7 +149,8 @@ var runs = sync.OnceValues(func() (string, error) {
 		return "", fmt.Errorf("%w: %s", err, out)
 	}
 	for _, args := range [][]string{{"simulate", "quayside", "--households", "4000", "--out", "now"},
-		{"simulate", "quayside", "--households", "4000", "--set", "public.pension.claim_age=67", "--out", "later"}, {"report", "now", "later", "--out", "both.html"}} {
+		{"simulate", "quayside", "--households", "4000", "--set", "public.pension.claim_age=67", "--out", "later"}, {"report", "now", "later", "--out", "both.html"},
+		{"stress", "quayside", "harbour-closure", "--households", "4000", "--out", "stress"}} {
 		cmd := exec.Command(program, append(args, "--quiet")...)
 		cmd.Dir = dir
 		if out, err := cmd.CombinedOutput(); err != nil {
@@ -355,7 +356,7 @@ func TestTableAndFile(t *testing.T) {
 // ground by 4.5 to 1 (WCAG 2.2, criterion 1.4.3), light and dark.
 func TestLayout(t *testing.T) {
 	dir := simulated(t)
-	for _, page := range []string{"now/report.html", "both.html"} {
+	for _, page := range []string{"now/report.html", "both.html", "stress/report.html"} {
 		for _, width := range []int{360, 1400} {
 			w := open(t, filepath.Join(dir, page), width)
 			eval[int](w, `document.querySelectorAll("details").forEach(d => d.open = true)`+`, 0`)
