@@ -10,6 +10,7 @@ import (
 
 	"cistern/income"
 	"cistern/policy"
+	"cistern/sim"
 	"cistern/sim/stress"
 )
 
@@ -87,6 +88,7 @@ func (st *Stress) Fault(err error) error {
 	var hard *stress.HardshipError
 	var earnings *income.FieldError
 	var household *policy.FieldError
+	var state *sim.StateError
 	message := ""
 	switch {
 	case errors.As(err, &hard):
@@ -95,6 +97,8 @@ func (st *Stress) Fault(err error) error {
 		message = "makes " + earnings.Error()
 	case errors.As(err, &household):
 		message = "makes " + household.Error()
+	case errors.As(err, &state) && state.Event:
+		message = strings.TrimPrefix(state.Error(), "sim: ")
 	default:
 		return err
 	}

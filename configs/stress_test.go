@@ -11,6 +11,7 @@ import (
 	"github.com/santhosh-tekuri/jsonschema/v6"
 
 	"cistern/income"
+	"cistern/sim"
 	"cistern/sim/stress"
 )
 
@@ -217,14 +218,16 @@ func TestStressSchema(t *testing.T) {
 // place; others stay what they are.
 func TestStressFault(t *testing.T) {
 	st := stressOf(t, "stress: 1\nevent: {return: 0}\n")
-	for _, err := range []error{&stress.HardshipError{Group: "dockers", Age: 30, Year: 1}, fmt.Errorf("x: %w", &income.FieldError{Field: "F", Want: "less"})} {
+	for _, err := range []error{&stress.HardshipError{Group: "dockers", Age: 30, Year: 1}, fmt.Errorf("x: %w", &income.FieldError{Field: "F", Want: "less"}), &sim.StateError{Event: true}} {
 		got := st.Fault(err)
 		if !IsFault(got) || !strings.HasPrefix(got.Error(), "s.yaml:2:8: event: ") {
 			t.Errorf("%v became %v", err, got)
 		}
 	}
-	if other := errors.New("disk full"); st.Fault(other) != other {
-		t.Error("an error that is not the file's fault has changed")
+	for _, other := range []error{errors.New("disk full"), &sim.StateError{}} {
+		if st.Fault(other) != other {
+			t.Errorf("%v is not the file's fault and has changed", other)
+		}
 	}
 }
 

@@ -41,6 +41,12 @@ mailed, read on a phone or printed.`,
 }
 
 func writeReport(ctx context.Context, g *globals, dirs []string) error {
+	if page, err := readStressPage(dirs); page != nil || err != nil {
+		if err != nil {
+			return err
+		}
+		return g.writePage(page, dirs)
+	}
 	var runs []*report.Run
 	for _, dir := range dirs {
 		if ctx.Err() != nil {
@@ -56,6 +62,11 @@ func writeReport(ctx context.Context, g *globals, dirs []string) error {
 	if err != nil {
 		return usagef("%w", err)
 	}
+	return g.writePage(page, dirs)
+}
+
+// writePage writes a page about the runs in dirs to where it belongs.
+func (g *globals) writePage(page *report.Page, dirs []string) error {
 	out := g.out
 	if out == "" {
 		out = "report.html"
@@ -81,9 +92,6 @@ func readReportRun(dir string) (*report.Run, error) {
 	}
 	if err != nil {
 		return nil, err
-	}
-	if slices.ContainsFunc(record.Files, func(f output.FileHash) bool { return f.Path == "stress.parquet" }) {
-		return nil, usagef("%s holds a stress, whose page is %s; report makes pages of what simulate wrote", dir, filepath.Join(dir, "report.html"))
 	}
 	if err := unchanged(dir, record); err != nil {
 		return nil, err
@@ -123,10 +131,40 @@ func readReportRun(dir string) (*report.Run, error) {
 	return r, nil
 }
 
+// readStressPage makes the page about the stress in a folder; nil if there is none.
+func readStressPage(dirs []string) (*report.Page, error) {
+	for _, dir := range dirs {
+		record, err := output.ReadRun(dir)
+		if err != nil || !slices.ContainsFunc(record.Files, func(f output.FileHash) bool { return f.Path == "stress.parquet" }) {
+			continue
+		}
+		if len(dirs) > 1 {
+			return nil, usagef("%s holds a stress, which is shown by itself", dir)
+		}
+		if err := unchanged(dir, record); err != nil {
+			return nil, err
+		}
+		sc, err := configs.Load(filepath.Join(dir, "scenario.yaml"), nil)
+		if err != nil {
+			return nil, err
+		}
+		st, err := configs.LoadStress(filepath.Join(dir, "stress.yaml"), sc)
+		if err != nil {
+			return nil, err
+		}
+		t, err := output.ReadTable(filepath.Join(dir, "stress.parquet"))
+		if err != nil {
+			return nil, err
+		}
+		return stressPage(sc, st, reportRun(sc, record.Version, record.Scenario, record.Inputs), record.Warnings, t), nil
+	}
+	return nil, nil
+}
+
 // unchanged reports files of a run that a page is made of and that are not as they
 // were written.
 func unchanged(dir string, record *output.Run) error {
-	made := []string{"scenario.yaml", "summary.parquet", "policy.parquet", "mobility.parquet", "transfer.parquet", "decomposition.parquet", "accuracy.csv"}
+	made := []string{"scenario.yaml", "summary.parquet", "policy.parquet", "mobility.parquet", "transfer.parquet", "decomposition.parquet", "accuracy.csv", "stress.yaml", "stress.parquet"}
 	for _, f := range record.Files {
 		if !slices.Contains(made, f.Path) {
 			continue

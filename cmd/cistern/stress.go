@@ -62,7 +62,7 @@ func stressed(ctx context.Context, g *globals, args []string) error {
 	}
 	if err := r.do(ctx); err != nil {
 		if ctx.Err() != nil {
-			return &resumableError{err, fmt.Sprintf("the same command begins it again in %s", r.folder.Dir())}
+			return &resumableError{err, fmt.Sprintf("the same command begins it again in %s", r.dir)}
 		}
 		return st.Fault(err)
 	}

@@ -2,9 +2,10 @@ package main
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"io"
-	"strings"
+	"os"
 	"time"
 
 	"cistern/configs"
@@ -20,27 +21,39 @@ import (
 type stressRun struct {
 	run
 	st       *configs.Stress
+	dir      string
 	event    *sim.Event
 	contrast *contrast.Contrast
-	figures  []contrast.Figure
+	answers  *answers
 	table    *output.Table // as written
 }
 
-// startStress sees to it that the stress can be run and opens its folder.
+// startStress sees to it that the stress can be run and, where there is something in
+// its folder, that the folder can take it. An empty folder is made later, and a run
+// to be replaced removed later, when the event turns out to be one that households
+// can live through.
 func startStress(g *globals, sc *configs.Scenario, st *configs.Stress) (*stressRun, error) {
-	r := &stressRun{run: run{g: g, sc: sc, problems: sc.Problems()}, st: st}
+	r := &stressRun{run: run{g: g, sc: sc, problems: sc.Problems()}, st: st, dir: g.stressFolder(sc, st)}
 	cost := sc.StressCost(st, g.workers, r.options().Held())
 	if free := freeMemory(); free > 0 && cost.MemoryBytes > free {
 		return nil, &configs.PosError{File: sc.Name, Key: "households", Message: fmt.Sprintf("is %d: the stress would need about %s of memory, and %s are free; lower households, solver.asset_points, the stress's years.horizon or --workers",
 			sc.Households, size(cost.MemoryBytes), size(free))}
 	}
 	r.hash = output.HashBytes([]byte(scenarioHash(sc) + output.HashBytes(st.YAML())))
-	folder, err := output.OpenFolder(g.stressFolder(sc, st), output.Identity{Scenario: r.hash, Version: version()}, g.replace)
-	if err != nil {
-		return nil, folderHint(err)
+	if entries, err := os.ReadDir(r.dir); !g.replace && (err == nil && len(entries) > 0 || err != nil && !errors.Is(err, os.ErrNotExist)) {
+		return r, r.open(context.Background())
 	}
-	r.folder = folder
 	return r, nil
+}
+
+// open opens the folder.
+func (r *stressRun) open(context.Context) error {
+	if r.folder != nil {
+		return nil
+	}
+	folder, err := output.OpenFolder(r.dir, output.Identity{Scenario: r.hash, Version: version()}, r.g.replace)
+	r.folder = folder
+	return folderHint(err)
 }
 
 // options is what is described of the two worlds.
@@ -56,9 +69,10 @@ func (r *stressRun) do(ctx context.Context) error {
 		name string
 		do   func(context.Context) error
 	}{
-		{"scenario", r.writeInputs},
 		{"solve", r.solve},
 		{"prepare", r.prepare},
+		{"folder", r.open},
+		{"scenario", r.writeInputs},
 		{"simulate", r.simulate},
 		{"tables", r.writeTables},
 		{"report", r.report},
@@ -156,7 +170,7 @@ func (r *stressRun) rows(p *sim.Population, b *sim.Block) *contrast.Rows {
 
 // writeTables writes the figures.
 func (r *stressRun) writeTables(context.Context) error {
-	r.figures = r.contrast.Figures()
+	r.answers = newAnswers(r.sc, r.st, r.contrast.Figures())
 	t := r.contrast.Table()
 	t.Provenance = r.provenance()
 	t.Provenance["stress"] = r.st.Title
@@ -167,24 +181,31 @@ func (r *stressRun) writeTables(context.Context) error {
 	return r.write("stress.csv", t.WriteCSV)
 }
 
-// report writes the page and the figures.
+// report writes the page and its figures.
 func (r *stressRun) report(ctx context.Context) error {
-	of := reportRun(r.sc, version(), r.hash, r.inputHashes())
-	p := &report.StressRun{Title: title(r.sc, r.st), Currency: r.sc.Currency, Table: r.table, Assumptions: of.Assumptions, Provenance: of.Provenance,
-		Warnings: r.warnings, Caution: caution}
-	for _, line := range r.words()[1:] { // the title stands above them
-		if line = strings.TrimSpace(line); line != "" {
-			p.Words = append(p.Words, line)
-		}
-	}
-	for _, s := range r.st.Settings() {
-		p.Event = append(p.Event, report.Assumption(s))
-	}
-	page := report.StressPage(p)
+	page := stressPage(r.sc, r.st, reportRun(r.sc, version(), r.hash, r.inputHashes()), r.warnings, r.table)
 	if err := r.write("report.html", page.Write); err != nil {
 		return err
 	}
 	return r.writeFigures(ctx, report.Figures(page.Sections))
+}
+
+// stressPage is the page about a stress; of says what any page about the scenario
+// does.
+func stressPage(sc *configs.Scenario, st *configs.Stress, of *report.Run, warnings []string, t *output.Table) *report.Page {
+	p := &report.StressRun{Title: title(sc, st), Currency: sc.Currency, Table: t, Assumptions: of.Assumptions, Provenance: of.Provenance, Warnings: warnings, Caution: caution}
+	for _, a := range newAnswers(sc, st, contrast.ReadTable(t)).all() {
+		for i, line := range a.lines {
+			if i == 0 {
+				line = a.who + ". " + line
+			}
+			p.Words = append(p.Words, line)
+		}
+	}
+	for _, s := range st.Settings() {
+		p.Event = append(p.Event, report.Assumption(s))
+	}
+	return report.StressPage(p)
 }
 
 // finish writes run.json, which makes the run finished.

@@ -142,12 +142,34 @@ func TestStress(t *testing.T) {
 	if status, _, stderr := cistern(t, "stress", filepath.Join(dir, "scenario.yaml"), filepath.Join(dir, "stress.yaml"), "--out", "again", "--quiet"); status != 0 || stderr != "" {
 		t.Fatalf("status %d: %s", status, stderr)
 	}
-	for _, file := range []string{"stress.csv", "stress.parquet", "stress.yaml", "scenario.yaml", "report.html", "figures/dry-share.png"} {
-		a, err1 := os.ReadFile(filepath.Join(dir, file))
-		b, err2 := os.ReadFile(filepath.Join("again", file))
-		if err1 != nil || err2 != nil || !bytes.Equal(a, b) {
-			t.Errorf("%s differs: %v, %v", file, err1, err2)
+	sameFiles(t, dir, "again", "run.json")
+	checkStressPage(t, dir)
+}
+
+// checkStressPage makes the page again and holds it against the figures.
+func checkStressPage(t *testing.T, dir string) {
+	t.Helper()
+	if status, _, stderr := cistern(t, "report", dir, "--out", "page.html"); status != 0 {
+		t.Fatal(stderr)
+	}
+	first, err1 := os.ReadFile(filepath.Join(dir, "report.html"))
+	again, err2 := os.ReadFile("page.html")
+	if err1 != nil || err2 != nil || !bytes.Equal(first, again) {
+		t.Errorf("the page made again is another one: %v, %v", err1, err2)
+	}
+	for _, want := range []string{"Quayside in small: The quay is closed", "All households. Run dry: ", "Group dockers. Run dry: ", "event.job_loss.probability.times", "what the usual rate is multiplied by", "no personal financial advice"} {
+		if !bytes.Contains(first, []byte(want)) {
+			t.Errorf("the page has no %q", want)
 		}
+	}
+	if status, _, stderr := cistern(t, "report", dir, "panel"); status != exitUsage || !strings.Contains(stderr, "holds a stress, which is shown by itself") {
+		t.Errorf("status %d: %s", status, stderr)
+	}
+	if err := os.WriteFile(filepath.Join(dir, "stress.yaml"), []byte("stress: 1\nevent: {return: 0}\n"), 0o666); err != nil {
+		t.Fatal(err)
+	}
+	if status, _, stderr := cistern(t, "report", dir); status != exitFailed || !strings.Contains(stderr, "was changed after the run was written") {
+		t.Errorf("status %d: %s", status, stderr)
 	}
 }
 
@@ -281,6 +303,25 @@ func TestStressFolder(t *testing.T) {
 	if status, stderr := run("--replace"); status != 0 {
 		t.Errorf("status %d: %s", status, stderr)
 	}
+	// a run is not removed for an event that households could not live through
+	if err := os.WriteFile("hard.yaml", []byte("stress: 1\nevent: {job_loss: {benefit_rate: 0}}\n"), 0o666); err != nil {
+		t.Fatal(err)
+	}
+	if status, _, stderr := cistern(t, "stress", "port.yaml", "hard.yaml", "--out", "r", "--replace"); status != exitUsage {
+		t.Errorf("status %d: %s", status, stderr)
+	}
+	if err := output.Verify("r"); err != nil {
+		t.Error(err)
+	}
+	if err := os.Mkdir("mine", 0o777); err != nil {
+		t.Fatal(err)
+	}
+	if err := os.WriteFile("mine/letter.txt", nil, 0o666); err != nil {
+		t.Fatal(err)
+	}
+	if status, _, stderr := cistern(t, "stress", "port.yaml", "layoffs.yaml", "--out", "mine"); status != exitFailed || !strings.Contains(stderr, "not those of a run") {
+		t.Errorf("status %d: %s", status, stderr)
+	}
 }
 
 // A stress that is stopped says so, and the same command runs it to the end.
@@ -361,8 +402,10 @@ func TestStressCommandLine(t *testing.T) {
 			}
 		})
 	}
-	if _, err := os.Stat("runs"); err == nil {
-		t.Error("a refused stress left runs")
+	for _, left := range []string{"runs", "hard"} {
+		if _, err := os.Stat(left); err == nil {
+			t.Errorf("a refused stress left %s", left)
+		}
 	}
 }
 

@@ -6,6 +6,7 @@ import (
 	"slices"
 	"strings"
 
+	"cistern/configs"
 	"cistern/output"
 	"cistern/output/contrast"
 	"cistern/output/stats"
@@ -15,9 +16,12 @@ import (
 // show prints the answer in words, the table by year, where the files are and how
 // far to trust them.
 func (r *stressRun) show() error {
-	words := r.words()
+	words := title(r.sc, r.st) + "\n"
+	for _, a := range r.answers.all() {
+		words += "\n" + a.who + ":\n  " + strings.Join(a.lines, "\n  ") + "\n"
+	}
 	if r.g.format == "table" {
-		if _, err := fmt.Fprintln(r.g.stdout, strings.Join(words, "\n")+"\n"); err != nil {
+		if _, err := fmt.Fprintln(r.g.stdout, words); err != nil {
 			return err
 		}
 	}
@@ -27,7 +31,7 @@ func (r *stressRun) show() error {
 	say := r.g.say
 	say("")
 	if r.g.format != "table" {
-		say("%s\n", strings.Join(words, "\n"))
+		say("%s", words)
 	}
 	say("%d households entering life over %d years; intervals are 95 %% Monte Carlo intervals, of differences paired", r.result.Households, stress.NewEntries(r.st.Window, r.sc.LastAge-r.sc.FirstAge+1).Cohorts)
 	say("files:    %s", r.folder.Dir())
@@ -38,80 +42,98 @@ func (r *stressRun) show() error {
 	return nil
 }
 
-// figure returns a figure of all ages.
-func (r *stressRun) figure(year int, world, group, variable, statistic string, level float64) stats.Estimate {
-	k := contrast.Key{Year: year, World: world, Group: group, Ages: output.Everyone, Variable: variable, Statistic: statistic, Level: level}
-	i := slices.IndexFunc(r.figures, func(f contrast.Figure) bool { return f.Key == k })
-	if i < 0 {
-		return stats.Estimate{Value: math.NaN(), StandardError: math.NaN(), Lower: math.NaN(), Upper: math.NaN()}
-	}
-	return r.figures[i].Estimate
+// answers are what a risk team asks of a stress, in words.
+type answers struct {
+	st      *configs.Stress
+	groups  []string // of the scenario
+	figures map[contrast.Key]stats.Estimate
 }
 
-// words answers in words what a risk team asks: for everybody, and for the groups
-// that are hit where not all are.
-func (r *stressRun) words() []string {
-	lines := []string{title(r.sc, r.st)}
+func newAnswers(sc *configs.Scenario, st *configs.Stress, figures []contrast.Figure) *answers {
+	a := &answers{st: st, figures: map[contrast.Key]stats.Estimate{}}
+	for _, g := range sc.Groups {
+		a.groups = append(a.groups, g.Name)
+	}
+	for _, f := range figures {
+		a.figures[f.Key] = f.Estimate
+	}
+	return a
+}
+
+// figure returns a figure of all ages.
+func (a *answers) figure(year int, world, group, variable, statistic string, level float64) stats.Estimate {
+	e, ok := a.figures[contrast.Key{Year: year, World: world, Group: group, Ages: output.Everyone, Variable: variable, Statistic: statistic, Level: level}]
+	if !ok {
+		return stats.Estimate{Value: math.NaN(), StandardError: math.NaN(), Lower: math.NaN(), Upper: math.NaN()}
+	}
+	return e
+}
+
+// answer is what is said of some households.
+type answer struct {
+	who   string
+	lines []string
+}
+
+// all answers for everybody, and for the groups that are hit where not all are.
+func (a *answers) all() []answer {
 	groups := []string{output.Everyone}
-	if slices.Contains(r.st.Event.Groups, false) {
-		for g, name := range r.groupNames() {
-			if r.st.Event.Groups[g] {
+	if slices.Contains(a.st.Event.Groups, false) {
+		for g, name := range a.groups {
+			if a.st.Event.Groups[g] {
 				groups = append(groups, name)
 			}
 		}
 	}
+	var list []answer
 	for _, g := range groups {
-		who := "All households:"
+		who := "All households"
 		if g != output.Everyone {
-			who = "Group " + g + ":"
+			who = "Group " + g
 		}
-		lines = append(lines, "", who, "  "+r.dryWords(g), "  "+r.runwayWords(g), "  "+r.consumptionWords(g), "  "+r.recoveryWords(g))
+		list = append(list, answer{who, []string{a.dry(g), a.runway(g), a.consumption(g), a.recovery(g)}})
 	}
-	return lines
+	return list
 }
 
-// worstYear returns the year from the event's on in which a difference is farthest
-// from nothing.
-func (r *stressRun) worstYear(group, variable, statistic string, level float64) (year int, usual, event, gap stats.Estimate) {
-	for y := 0; y <= r.st.Window.After; y++ {
-		if d := r.figure(y, contrast.Difference, group, variable, statistic, level); y == 0 || math.Abs(d.Value) > math.Abs(gap.Value) {
+// worst returns the year from the event's on in which a difference is worst: highest,
+// or lowest if less is worse.
+func (a *answers) worst(group, variable, statistic string, level float64, less bool) (year int, usual, event, gap stats.Estimate) {
+	for y := 0; y <= a.st.Window.After; y++ {
+		d := a.figure(y, contrast.Difference, group, variable, statistic, level)
+		if y == 0 || less && d.Value < gap.Value || !less && d.Value > gap.Value {
 			year, gap = y, d
 		}
 	}
-	return year, r.figure(year, contrast.Baseline, group, variable, statistic, level), r.figure(year, contrast.Stress, group, variable, statistic, level), gap
+	return year, a.figure(year, contrast.Baseline, group, variable, statistic, level), a.figure(year, contrast.Stress, group, variable, statistic, level), gap
 }
 
-func (r *stressRun) dryWords(group string) string {
-	year, usual, event, gap := r.worstYear(group, "dry", "share", 0)
-	last := r.st.Window.After
-	newly := r.figure(last, contrast.Stress, group, "newly_dry", "share_so_far", 0)
-	return fmt.Sprintf("Run dry: %s than in the baseline in %s: %s against %s. By year %d %s (%s) have run dry in a year in which they would not have. (Dry: less than %s left to spend.)",
-		points(gap), yearName(year), percent(event.Value), percent(usual.Value), last, percent(newly.Value), interval(newly, 100), plural(r.st.DryMonths, "month's consumption", "months' consumption"))
+func (a *answers) dry(group string) string {
+	year, usual, event, gap := a.worst(group, "dry", "share", 0, false)
+	last := a.st.Window.After
+	newly := a.figure(last, contrast.Stress, group, "newly_dry", "share_so_far", 0)
+	return fmt.Sprintf("Run dry: %s than in the baseline in %s: %s against %s. By year %d, %s (%s) have run dry in a year in which they would not have. (Dry: less than %s left to spend.)",
+		points(gap), yearName(year), percent(event.Value), percent(usual.Value), last, percent(newly.Value), interval(newly, 100), plural(a.st.DryMonths, "month's consumption", "months' consumption"))
 }
 
-func (r *stressRun) runwayWords(group string) string {
+func (a *answers) runway(group string) string {
 	s := "Runway:"
-	if slices.Contains(r.st.Percentiles, 50) {
-		year, usual, event, gap := r.worstYear(group, "runway_months", "percentile", 50)
-		s += fmt.Sprintf(" the median household's assets last for %s months of its consumption in %s, against %s: %s months %s (%s).",
+	if slices.Contains(a.st.Percentiles, 50) {
+		year, usual, event, gap := a.worst(group, "runway_months", "percentile", 50, true)
+		s += fmt.Sprintf(" %s months of consumption for the median household in %s, against %s: %s months %s (%s).",
 			digits(event.Value), yearName(year), digits(usual.Value), digits(math.Abs(gap.Value)), which(gap.Value, "less", "more"), interval(upward(gap), 1))
 	}
-	months := r.st.RunwayMonths[len(r.st.RunwayMonths)/2]
-	year, usual, event, gap := r.worstYear(group, "runway_months", "share_below", months)
-	return s + fmt.Sprintf(" Less than %s: %s in %s: %s against %s.", plural(months, "month", "months"), points(gap), yearName(year), percent(event.Value), percent(usual.Value))
+	months := a.st.RunwayMonths[len(a.st.RunwayMonths)/2]
+	year, usual, event, gap := a.worst(group, "runway_months", "share_below", months, false)
+	return s + fmt.Sprintf(" Under %s: %s in %s: %s against %s.", plural(months, "month", "months"), points(gap), yearName(year), percent(event.Value), percent(usual.Value))
 }
 
-func (r *stressRun) consumptionWords(group string) string {
-	year, usual, _, gap := r.worstYear(group, "consumption", "mean", 0)
+func (a *answers) consumption(group string) string {
+	year, usual, _, gap := a.worst(group, "consumption", "mean", 0, true)
 	u := 100 / math.Abs(usual.Value)
 	s := fmt.Sprintf("Consumption: its mean is %s %% %s in %s (%s)", digits(u*math.Abs(gap.Value)), which(gap.Value, "lower", "higher"), yearName(year), interval(upward(gap), u))
-	for _, q := range r.st.Worst {
-		y, e := 0, stats.Estimate{Value: math.NaN()}
-		for t := 0; t <= r.st.Window.After; t++ {
-			if x := r.figure(t, contrast.Difference, group, "relative_shortfall", "expected_shortfall", q); !(x.Value <= e.Value) {
-				y, e = t, x
-			}
-		}
+	for _, q := range a.st.Worst {
+		y, _, _, e := a.worst(group, "relative_shortfall", "expected_shortfall", q, false)
 		if e.Value > 0 {
 			s += fmt.Sprintf("; the worst hit %g %% consume %s less than usual in %s (%s)", q, percent(e.Value), yearName(y), interval(e, 100))
 		}
@@ -119,13 +141,13 @@ func (r *stressRun) consumptionWords(group string) string {
 	return s + "."
 }
 
-func (r *stressRun) recoveryWords(group string) string {
-	level := 100 * r.st.Within
+func (a *answers) recovery(group string) string {
+	level := 100 * a.st.Within
 	when := func(variable, statistic string) string {
-		e := r.figure(contrast.NoYear, contrast.Difference, group, variable, statistic, level)
+		e := a.figure(contrast.NoYear, contrast.Difference, group, variable, statistic, level)
 		switch {
 		case math.IsNaN(e.Value):
-			return fmt.Sprintf("not within %d years", r.st.Window.After)
+			return fmt.Sprintf("not within %d years", a.st.Window.After)
 		case e.Value == 0:
 			return "never off by more"
 		case math.IsNaN(e.Upper):
@@ -133,16 +155,16 @@ func (r *stressRun) recoveryWords(group string) string {
 		}
 		return fmt.Sprintf("from year %g on (95 %%: %g to %g)", e.Value, e.Lower, e.Upper)
 	}
-	affected := r.figure(contrast.NoYear, contrast.Difference, group, "assets", "share_affected", level)
+	affected := a.figure(contrast.NoYear, contrast.Difference, group, "assets", "share_affected", level)
 	s := fmt.Sprintf("Recovery: within %g %% of the baseline, mean consumption %s, mean assets %s", level, when("consumption", "years_to_recover_mean"), when("assets", "years_to_recover_mean"))
 	if !(affected.Value > 0) {
 		return s + "; nobody's own assets were off by more."
 	}
 	s += fmt.Sprintf(". %s of households' own assets were off by more; ", percent(affected.Value))
-	if half := r.figure(contrast.NoYear, contrast.Difference, group, "assets", "household_years_to_recover_median", level); !math.IsNaN(half.Value) {
+	if half := a.figure(contrast.NoYear, contrast.Difference, group, "assets", "household_years_to_recover_median", level); !math.IsNaN(half.Value) {
 		return s + fmt.Sprintf("half of these are back by year %g.", half.Value)
 	}
-	return s + fmt.Sprintf("less than half of these are back within %d years.", r.st.Window.After)
+	return s + fmt.Sprintf("less than half of these are back within %d years.", a.st.Window.After)
 }
 
 func yearName(year int) string {
@@ -231,7 +253,7 @@ func (r *stressRun) yearTable() *output.Table {
 	for y := -r.st.Window.Before; y <= r.st.Window.After; y++ {
 		year.AppendInt(int64(y))
 		for _, c := range columns {
-			e := r.figure(y, c.world, output.Everyone, c.variable, c.statistic, c.level)
+			e := r.answers.figure(y, c.world, output.Everyone, c.variable, c.statistic, c.level)
 			x := e.Value
 			if c.se {
 				x = e.StandardError

@@ -438,3 +438,11 @@ func TestOptionFaults(t *testing.T) {
 		}
 	}
 }
+
+// What is read from a table is what went in.
+func TestReadTable(t *testing.T) {
+	c := newVillage(300, false, nil).describe(t)
+	if a, b := fmt.Sprint(ReadTable(c.Table())), fmt.Sprint(c.Figures()); a != b {
+		t.Error("the figures read are not those written")
+	}
+}

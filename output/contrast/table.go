@@ -234,3 +234,26 @@ func known(c *output.Column, v float64) {
 		c.AppendFloat(v)
 	}
 }
+
+// ReadTable returns the figures of a table that Table made, in its order.
+func ReadTable(t *output.Table) []Figure {
+	float := func(name string, i int, absent float64) float64 {
+		if c := t.Column(name); !c.IsMissing(i) {
+			return c.Floats[i]
+		}
+		return absent
+	}
+	text := func(name string, i int) string { return t.Column(name).Strings[i] }
+	var list []Figure
+	for i := range t.Len() {
+		f := Figure{Key: Key{Year: NoYear, World: text("world", i), Group: text("group", i), Ages: text("ages", i), Variable: text("variable", i), Statistic: text("statistic", i),
+			Level: float("level", i, 0)}, Households: t.Column("households").Ints[i]}
+		if year := t.Column("year"); !year.IsMissing(i) {
+			f.Year = int(year.Ints[i])
+		}
+		nan := math.NaN()
+		f.Estimate = stats.Estimate{Value: float("estimate", i, nan), StandardError: float("standard_error", i, nan), Lower: float("lower", i, nan), Upper: float("upper", i, nan)}
+		list = append(list, f)
+	}
+	return list
+}

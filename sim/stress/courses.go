@@ -201,15 +201,20 @@ func bearable(t *sim.Type, rule *policy.Rule, from, until int) *HardshipError {
 	for year := from; year < until && !math.IsInf(floor, -1); year++ {
 		for j := range rule.Curves[year] {
 			cash, least := leastCash(t, rule, from, year, j)
-			if cash > least+floor {
+			if enough(cash, least+floor) {
 				continue
 			}
-			if usually, needed := leastCash(t, t.Rule, 0, year, j); usually > needed+floor {
+			if usually, needed := leastCash(t, t.Rule, 0, year, j); enough(usually, needed+floor) {
 				return &HardshipError{Age: rule.Household.FirstAge + year, Cash: cash, Least: least + floor}
 			}
 		}
 	}
 	return nil
+}
+
+// enough reports whether cash exceeds least by more than rounding.
+func enough(cash, least float64) bool {
+	return cash-least > 1e-9*(math.Abs(cash)+math.Abs(least))
 }
 
 // leastCash returns the least cash-on-hand in a year at node j of a household that
