@@ -17,9 +17,13 @@ const (
 	offsetBits = 32
 )
 
-// maxCopies bounds the memory of the first pass: workers share copies of the
-// histograms beyond that many.
+// maxCopies is the most copies of histograms or partial sums that workers have
+// between them; memory may allow fewer.
 const maxCopies = 8
+
+// setBytes is about what a set of bins takes whose values lie within a factor of a
+// million.
+const setBytes = 8<<10 + 20<<subBits*16
 
 type binPage [1 << subBits]struct{ n, offset uint64 }
 
@@ -59,8 +63,8 @@ type cellBins struct {
 // histograms are the counts of the first pass, in one or more copies.
 type histograms struct{ copies [][]cellBins }
 
-func newHistograms(cells, slots, workers int) *histograms {
-	h := &histograms{copies: make([][]cellBins, min(workers, maxCopies))}
+func newHistograms(cells, slots, workers int, budget int64) *histograms {
+	h := &histograms{copies: make([][]cellBins, max(1, min(workers, maxCopies, int(budget/4)/(cells*slots*setBytes+1))))}
 	for i := range h.copies {
 		h.copies[i] = make([]cellBins, cells)
 		for c := range h.copies[i] {

@@ -94,7 +94,7 @@ func NewStudy(o Options) (*Study, error) {
 	default:
 		room := float64(o.Budget) / 4 / float64(valueBytes*len(s.stored)+rowBytes)
 		s.chance = uint64(min(0.999, room/float64(o.Rows)) * (1 << 63) * 2)
-		s.hist = newHistograms(o.Cells, len(s.held), o.Workers)
+		s.hist = newHistograms(o.Cells, len(s.held), o.Workers, o.Budget)
 	}
 	return s, nil
 }
