@@ -67,20 +67,26 @@ func (j *Judge) refine(t int) {
 }
 
 // Error returns the Euler-equation error in year t at a persistent node with
-// cash-on-hand m, and whether the household is at its limit there. At the limit
-// the equation is an inequality: the error is how far c exceeds c*, or 0. In the
-// last year nothing is left to judge but a bequest motive. Calls are fastest with
-// the same t one after another.
+// cash-on-hand m, and whether the household is at its limit there, of a rule without
+// an entitlement; see ErrorIn.
 func (j *Judge) Error(t, node int, m float64) (e float64, atLimit bool) {
+	return j.ErrorIn(t, State{Node: node, Cash: m})
+}
+
+// ErrorIn returns the Euler-equation error in a state of year t, and whether the
+// household is at its limit there. At the limit the equation is an inequality: the
+// error is how far c exceeds c*, or 0. In the last year nothing is left to judge but
+// a bequest motive. Calls are fastest with the same t one after another.
+func (j *Judge) ErrorIn(t int, at State) (e float64, atLimit bool) {
 	h := j.rule.Household
-	c := j.rule.Consumption(t, node, m)
-	a := m - c
-	bound := j.rule.Curves[t][node].Bound
+	c, _ := j.rule.At(t, at.Node, at.Entitlement, at.Cash)
+	a := at.Cash - c
+	bound := j.rule.Lowest(t, at.Node, at.Entitlement)
 	atLimit = a <= bound+1e-10*(1+math.Abs(bound))
 	if t == h.Years()-1 && h.Bequest.Weight == 0 {
 		return 0, atLimit
 	}
-	implied := j.implied(t, node, a, c)
+	implied := j.implied(t, at, a, c)
 	e = (implied - c) / c
 	if math.IsInf(h.Utility.Infimum(), -1) {
 		e = (implied - c) / (math.Abs(c) + math.Abs(h.MeanIncome(t)))
@@ -94,7 +100,7 @@ func (j *Judge) Error(t, node int, m float64) (e float64, atLimit bool) {
 // implied returns c*, the consumption whose marginal utility is the right side of
 // the Euler equation with assets a. Exponential utility is measured from c, so
 // that it neither overflows nor vanishes.
-func (j *Judge) implied(t, node int, a, c float64) float64 {
+func (j *Judge) implied(t int, at State, a, c float64) float64 {
 	h := j.rule.Household
 	R := 1 + h.ReturnIn(t+1)
 	x := R * a
@@ -102,13 +108,13 @@ func (j *Judge) implied(t, node int, a, c float64) float64 {
 	if s := h.Survival[t]; s > 0 {
 		j.look(t + 1)
 		if h.Moves(t) {
-			for next, p := range h.Earnings.Chain.Row(node) {
+			for next, p := range h.Earnings.Chain.Row(at.Node) {
 				if p > 0 {
-					v += s * p * j.overIncome(t+1, next, x, c)
+					v += s * p * j.overIncome(t+1, next, at.Entitlement, x, c)
 				}
 			}
 		} else {
-			v = s * j.overIncome(t+1, node, x, c)
+			v = s * j.overIncome(t+1, at.Node, at.Entitlement, x, c)
 		}
 	}
 	if b := h.Bequest; b.Weight > 0 {
@@ -151,9 +157,13 @@ func (j *Judge) relative(x, c float64) float64 {
 	return j.u.Marginal(x)
 }
 
-// overIncome is E u′ in year t at a node to which x was brought along.
-func (j *Judge) overIncome(t, node int, x, c float64) float64 {
+// overIncome is E u′ in year t at a node to which x and an entitlement were brought
+// along.
+func (j *Judge) overIncome(t, node int, had Entitlement, x, c float64) float64 {
 	h := j.rule.Household
+	if h.Laws != nil {
+		return j.underLaws(t, node, had, x, c)
+	}
 	sg := j.ahead.segments[node]
 	v := 0.0
 	if !j.fine || !h.Working(t) {
@@ -186,6 +196,58 @@ func (j *Judge) overIncome(t, node int, x, c float64) float64 {
 	return v
 }
 
+// underLaws is overIncome where laws make net income and entitlement of earnings.
+func (j *Judge) underLaws(t, node int, e Entitlement, x, c float64) float64 {
+	h := j.rule.Household
+	v := 0.0
+	add := func(y float64, next Entitlement, weight float64) {
+		v += weight * j.relative(j.consumption(t, node, next, x+y), c)
+	}
+	if !j.fine || !h.Working(t) {
+		h.forEachOutcome(t, node, e, add)
+		return v
+	}
+	earn := h.Earnings
+	if p := earn.JobLossIn(t).Probability; p > 0 {
+		y, next := h.Laws.Work(t, e, earn.Benefit[t][node], false)
+		add(y, next, p)
+	}
+	base := earn.Base[t][node]
+	for k, f := range j.shock {
+		gross := base + f
+		if earn.Form == income.Log {
+			gross = base * f
+		}
+		y, next := h.Laws.Work(t, e, gross, true)
+		add(y, next, j.weight[k])
+	}
+	return v
+}
+
+// consumption returns the rule's consumption in year t, whose records are there,
+// less subsistence.
+func (j *Judge) consumption(t, node int, e Entitlement, m float64) float64 {
+	g := j.rule.accruing(t)
+	if g == nil {
+		c, _ := find(j.ahead.segments[node], m).at(m)
+		return c
+	}
+	var b blend
+	g.blend(e, &b)
+	first := node * g.Len()
+	kink, c := 0.0, 0.0
+	for i := range b.n {
+		kink += b.weight[i] * j.rule.Curves[t][first+b.node[i]].Cash[0]
+	}
+	for i := range b.n {
+		k := first + b.node[i]
+		x := m + g.shift(j.rule.Curves[t][k].Cash[0], kink)
+		y, _ := find(j.ahead.segments[k], x).at(x)
+		c += b.weight[i] * y
+	}
+	return c
+}
+
 // Errors sums up Euler-equation errors.
 type Errors struct {
 	States  int     // judged, away from the limit
@@ -195,14 +257,16 @@ type Errors struct {
 	Max     float64
 	Limit   float64 // largest violation of the inequality at the limit
 	// where the maximum is
-	MaxNode int
-	MaxCash float64
+	MaxNode        int
+	MaxCash        float64
+	MaxEntitlement Entitlement
 }
 
 // State is a place at which a rule is judged.
 type State struct {
-	Node int
-	Cash float64 // money
+	Node        int
+	Cash        float64     // money
+	Entitlement Entitlement // this year's credit included
 }
 
 // Judge judges year t at the given states.
@@ -210,7 +274,7 @@ func (j *Judge) Judge(t int, states []State) Errors {
 	var out Errors
 	var all []float64
 	for _, s := range states {
-		e, atLimit := j.Error(t, s.Node, s.Cash)
+		e, atLimit := j.ErrorIn(t, s)
 		if atLimit {
 			out.AtLimit++
 			out.Limit = math.Max(out.Limit, e)
@@ -218,7 +282,7 @@ func (j *Judge) Judge(t int, states []State) Errors {
 		}
 		out.Mean += e
 		if e > out.Max {
-			out.Max, out.MaxNode, out.MaxCash = e, s.Node, s.Cash
+			out.Max, out.MaxNode, out.MaxCash, out.MaxEntitlement = e, s.Node, s.Cash, s.Entitlement
 		}
 		all = append(all, e)
 	}
@@ -231,7 +295,7 @@ func (j *Judge) Judge(t int, states []State) Errors {
 	return out
 }
 
-// BetweenNodes returns the points half-way between neighbouring nodes of the
+// BetweenNodes returns, of a rule without an entitlement, the points half-way between neighbouring nodes of the
 // rule in year t, up to the given cash-on-hand, where interpolation is at its
 // worst.
 func (r *Rule) BetweenNodes(t int, most float64) []State {
@@ -239,7 +303,7 @@ func (r *Rule) BetweenNodes(t int, most float64) []State {
 	for node := range r.Curves[t] {
 		cash := r.Curves[t][node].Cash
 		for i := 1; i < len(cash) && cash[i] <= most; i++ {
-			states = append(states, State{node, (cash[i-1] + cash[i]) / 2})
+			states = append(states, State{Node: node, Cash: (cash[i-1] + cash[i]) / 2})
 		}
 	}
 	return states

@@ -14,10 +14,19 @@
 // equation, and the closed forms (CertainCRRA and its like) give the exact
 // answer where there is one.
 //
+// Under [Laws] net income is what taxes leave of gross earnings Y, and an entitlement
+// e accrues that the pension depends on,
+//
+//	y_t = y(t, e_{t−1}, Y_t),   e_t = f(t, e_{t−1}, Y_t)   while working,
+//	y_t = p(t, e_c)                                        from the claim age on, c the last working year.
+//
+// The rule is then c_t(z, e_t, m), this year's credit included, kept at nodes of e
+// for which [EntitlementGrid] says where they lie and how it is read between them.
+//
 // Units: money is real, in the scenario's currency unit; rates are per year as
 // fractions. R = 1 + r is that of the year ahead where it differs from year to
 // year. Index t counts years from the first age. Shapes are [t][node], node the
-// persistent node.
+// persistent node; with an entitlement [t][node·K+k], k one of its K nodes.
 //
 // Accuracy: with cubic interpolation errors between nodes fall with the fourth
 // power of their distance; with linear, with the second. More nodes alone are the

@@ -12,8 +12,9 @@ type segment struct{ high, origin, c0, c1, c2, c3 float64 }
 // stay in the first-level cache.
 type line struct{ high, level, slope float64 }
 
-// frontier is next year's rule as the backward step reads it: for every
-// persistent node the segments in order, the constrained one first and the line
+// frontier is next year's rule as the backward step reads it: for every state (a
+// persistent node and, with an entitlement, an entitlement node: [node][entitlement])
+// the segments in order, the constrained one first and the line
 // above the grid last, and the kinks. Linear rules with power utility have lines
 // in place of segments.
 type frontier struct {
@@ -22,16 +23,16 @@ type frontier struct {
 	lines    [][]line
 }
 
-func (f *frontier) reset(nodes int) {
-	for len(f.segments) < nodes {
+func (f *frontier) reset(states int) {
+	for len(f.segments) < states {
 		f.segments = append(f.segments, nil)
 		f.kinks = append(f.kinks, nil)
 		f.lines = append(f.lines, nil)
 	}
-	f.segments, f.kinks, f.lines = f.segments[:nodes], f.kinks[:nodes], f.lines[:nodes]
+	f.segments, f.kinks, f.lines = f.segments[:states], f.kinks[:states], f.lines[:states]
 }
 
-// set replaces the rule of node j by curve c. A point within tolerance below a
+// set replaces the rule of state j by curve c. A point within tolerance below a
 // node counts as being on it, so that the assets placed for a kink meet the
 // slope above it whatever the rounding. shift is subtracted from consumption. It
 // reports whether cash-on-hand ascends and consumption stays at or above shift:
@@ -54,7 +55,7 @@ func (f *frontier) set(j int, c *Curve, tolerance, shift float64) (sound bool) {
 	return setCubic(sg[1:n], c, tolerance, shift)
 }
 
-// setLines replaces the rule of node j by the linear rule c, whose slopes it sets
+// setLines replaces the rule of state j by the linear rule c, whose slopes it sets
 // in k on the way: k[0] below the first node, k[n] above the last. It reports what
 // set does.
 func (f *frontier) setLines(j int, c *Curve, k []float64, tolerance, shift float64) (sound bool) {
@@ -116,15 +117,15 @@ func (f *frontier) noteKinks(j int, c *Curve) {
 // kinkNoise is the slope jump below which a kink is rounding error.
 const kinkNoise = 1e-9
 
-// sight appends the kinks of node j as assets of the year before: through an
-// income outcome y a kink at cash-on-hand m is met with assets (m − y)/R. Where
-// several outcomes blur a kink it is passed on while its jump times the
-// probability exceeds threshold; the limit's own kink always is.
-func (f *frontier) sight(dst []sighting, j int, values, weights []float64, returns, threshold float64) []sighting {
-	for i, k := range f.kinks[j] {
+// sight appends the kinks of a state with persistent node j as assets of the year
+// before: through an income outcome y a kink at cash-on-hand m is met with assets
+// (m − y)/R. Where several outcomes blur a kink it is passed on while its jump times
+// the probability exceeds threshold; the limit's own kink always is.
+func (f *frontier) sight(dst []sighting, state, j int, values, weights []float64, returns, threshold float64) []sighting {
+	for _, k := range f.kinks[state] {
 		for o, y := range values {
 			if w := weights[o]; w > 0 && (len(values) == 1 || k.first || k.jump*w > threshold) {
-				dst = append(dst, sighting{assets: (k.cash - y) / returns, node: int32(j), of: int32(i), weight: w})
+				dst = append(dst, sighting{assets: (k.cash - y) / returns, node: int32(j), consumption: k.consumption, delta: k.jump, weight: w})
 			}
 		}
 	}
@@ -133,22 +134,22 @@ func (f *frontier) sight(dst []sighting, j int, values, weights []float64, retur
 
 // scratch holds the sums of one backward step.
 type scratch struct {
-	value, slope       [][]float64 // [next node][asset]: Σ w·u′ and its derivative in cash-on-hand
+	value, slope       [][]float64 // [entitlement][next node][asset]: Σ w·u′ and its derivative in cash-on-hand
 	mixValue, mixSlope []float64   // the same, expected over next nodes
 	extra              []float64   // what the slope lacks on the left of kinks
-	reference          []float64   // consumption that exponential utility is measured from
+	blended
 }
 
-func (w *scratch) grow(nodes, n int) {
-	for len(w.value) < nodes {
+// grow makes room for the given number of rows of up to n assets.
+func (w *scratch) grow(rows, n int) {
+	for len(w.value) < rows {
 		w.value, w.slope = append(w.value, nil), append(w.slope, nil)
 	}
-	for i := range nodes {
+	for i := range rows {
 		w.value[i], w.slope[i] = room(w.value[i], n), room(w.slope[i], n)
 	}
-	w.value, w.slope = w.value[:nodes], w.slope[:nodes]
-	w.mixValue, w.mixSlope = room(w.mixValue, n), room(w.mixSlope, n)
-	w.extra, w.reference = room(w.extra, n), room(w.reference, n)
+	w.value, w.slope = w.value[:rows], w.slope[:rows]
+	w.mixValue, w.mixSlope, w.extra = room(w.mixValue, n), room(w.mixSlope, n), room(w.extra, n)
 }
 
 // room returns a slice of length n, the same memory where it is large enough.

@@ -60,6 +60,7 @@ type Household struct {
 	Limit          Limit
 	Earnings       *income.Earnings // working ages FirstAge … ClaimAge−1
 	Pension        Pension
+	Laws           Laws // what earnings and entitlements come to, in place of Pension; nil: earnings are spendable as they are and Pension is paid
 }
 
 // Years returns T, the number of years from the first to the last possible age.
@@ -82,9 +83,10 @@ func (h Household) Nodes() int { return h.Earnings.Chain.Len() }
 // Working reports whether year t is before the claim age.
 func (h Household) Working(t int) bool { return t < h.WorkingYears() }
 
-// Income returns the net income that a household at persistent node can meet in
-// year t, as values (money) with their probabilities, the same probabilities for
-// every node of a working year and a single certain value from the claim age on. The transitory shock stands at its quadrature nodes.
+// Income returns the income that a household without Laws can meet at a persistent
+// node in year t, as values (money) with their probabilities, the same probabilities for
+// every node of a working year and a single certain value from the claim age on.
+// The transitory shock stands at its quadrature nodes.
 func (h Household) Income(t, node int) (values, weights []float64) {
 	if h.Working(t) {
 		return h.Earnings.Outcomes(t, node)
@@ -98,8 +100,13 @@ var certainty = []float64{1}
 // does while the next year is worked, and stays at its last working value then.
 func (h Household) Moves(t int) bool { return h.Working(t + 1) }
 
-// MeanIncome returns mean net income in year t over nodes and shocks, in money.
+// MeanIncome returns mean net income in year t over nodes and shocks, in money. With
+// Laws it is that of a household which earns the mean of every age.
 func (h Household) MeanIncome(t int) float64 {
+	if h.Laws != nil {
+		net, _ := h.career()
+		return net[t]
+	}
 	if h.Working(t) {
 		return h.Earnings.Mean(t)
 	}
@@ -115,8 +122,15 @@ func (h Household) MeanIncome(t int) float64 {
 // has any.
 func (h Household) peakIncome() float64 {
 	peak := 0.0
-	for t := range h.Years() {
-		peak = math.Max(peak, math.Abs(h.MeanIncome(t)))
+	if h.Laws != nil {
+		net, _ := h.career()
+		for _, y := range net {
+			peak = math.Max(peak, math.Abs(y))
+		}
+	} else {
+		for t := range h.Years() {
+			peak = math.Max(peak, math.Abs(h.MeanIncome(t)))
+		}
 	}
 	if peak == 0 {
 		return 1
@@ -181,14 +195,17 @@ func (h Household) Validate() error {
 	if h.Limit.Kind == LimitNone && !math.IsInf(h.Utility.Infimum(), -1) {
 		bad("Limit", "none", "0, an amount or natural: with "+h.Utility.Family()+" utility debt without limit has no solution")
 	}
-	if len(errs) == 0 {
-		bounds, err := h.bounds()
-		if err != nil {
-			return err
-		}
-		return h.validateEstate(bounds)
+	if err := errors.Join(errs...); err != nil {
+		return err
 	}
-	return errors.Join(errs...)
+	if err := h.validateLaws(); err != nil {
+		return err
+	}
+	bounds, err := h.bounds(h.entitlementGrids(DefaultOptions()))
+	if err != nil {
+		return err
+	}
+	return h.validateEstate(bounds)
 }
 
 // validateEstate sees to it that no estate that the limit allows is one that the

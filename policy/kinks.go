@@ -13,12 +13,12 @@ type kink struct {
 // sighting is a kink of next year's rule seen from this year: the assets that
 // lead to it through one persistent node and one income outcome.
 type sighting struct {
-	assets float64
-	node   int32   // next year's persistent node
-	index  int32   // where it came to stand on the asset grid
-	delta  float64 // what the slope sum at that node lacks on the left of the kink
-	weight float64 // probability of the outcome
-	of     int32   // which kink of the node
+	assets      float64
+	consumption float64 // next year's, at the kink
+	delta       float64 // the jump of the slope; later what the slope sum lacks on the left of the kink
+	weight      float64 // probability of the outcome
+	node        int32   // next year's persistent node
+	index       int32   // where it came to stand on the asset grid
 }
 
 func bySighting(a, b sighting) int {

@@ -6,9 +6,9 @@ import (
 	"slices"
 )
 
-// bounds returns the lowest assets −b_t that a household at a persistent node may
-// hold at the end of year t, [t][node], in money; −Inf under LimitNone (but 0 in
-// the last year).
+// bounds returns the lowest assets −b_t that a household may hold at the end of year
+// t, [t][node·K+k], K_t the number of entitlement nodes, in money; −Inf under
+// LimitNone (but 0 in the last year).
 //
 // What can be owed at the end of year t is what next year's lowest income and the
 // debt then allowed can bear, net of the consumption that utility cannot go below,
@@ -20,12 +20,19 @@ import (
 // Quarterly Journal of Economics 109, eq. 3, for an infinite horizon); under
 // LimitAmount b is the smaller of N and the amount. Under LimitNatural inf y is the infimum of the continuous law, so
 // that debt is repaid for certain. Under LimitAmount it is the lowest income the
-// solver reckons with.
-func (h Household) bounds() ([][]float64, error) {
+// solver reckons with. With an entitlement the least is that over all outcomes of
+// income with the entitlement that follows from it.
+func (h Household) bounds(grids []EntitlementGrid) ([][]float64, error) {
 	T, nz := h.Years(), h.Nodes()
+	width := func(t int) int {
+		if grids == nil {
+			return 1
+		}
+		return grids[t].Len()
+	}
 	b := make([][]float64, T)
 	for t := range b {
-		b[t] = make([]float64, nz)
+		b[t] = make([]float64, nz*width(t))
 		if h.Limit.Kind == LimitNone && t < T-1 {
 			for j := range b[t] {
 				b[t][j] = math.Inf(-1)
@@ -40,27 +47,32 @@ func (h Household) bounds() ([][]float64, error) {
 	if free {
 		floor = 0
 	}
-	repay := make([]float64, nz) // what can be owed at the end of the year, [node]
 	for t := T - 2; t >= 0; t-- {
-		for j := range repay {
-			low := h.lowestIncome(t+1, j)
-			repay[j] = (low - b[t+1][j] - floor) / (1 + h.ReturnIn(t+1))
-			if math.IsInf(low, -1) || repay[j] < -1e-9*math.Max(math.Abs(low), floor) {
+		n := width(t)
+		repay := b[t] // what can be owed at the end of the year
+		for i := range repay {
+			e, j := h.entitlementAt(grids, t, i%n), i/n
+			net, low := h.lowest(t+1, j, e, func(next Entitlement) float64 { return boundAt(grids, t+1, j, next, b[t+1]) })
+			repay[i] = (net - floor) / (1 + h.ReturnIn(t+1))
+			if math.IsInf(low, -1) || repay[i] < -1e-9*math.Max(math.Abs(low), floor) {
 				return nil, h.infeasible(t+1, low, floor)
 			}
-			repay[j] = math.Max(repay[j], 0)
+			repay[i] = math.Max(repay[i], 0)
 		}
-		if h.Moves(t) {
-			least := slices.Min(repay)
-			for j := range repay {
-				repay[j] = least
+		for k := 0; k < n && h.Moves(t); k++ {
+			least := math.Inf(1)
+			for i := k; i < len(repay); i += n {
+				least = math.Min(least, repay[i])
+			}
+			for i := k; i < len(repay); i += n {
+				repay[i] = least
 			}
 		}
-		for j := range repay {
-			if b[t][j] = -repay[j]; h.Limit.Kind == LimitAmount {
-				b[t][j] = -math.Min(repay[j], h.Limit.Amount)
+		for i, x := range repay {
+			if b[t][i] = -x; h.Limit.Kind == LimitAmount {
+				b[t][i] = -math.Min(x, h.Limit.Amount)
 			}
-			b[t][j] += 0 // no negative zero in results
+			b[t][i] += 0 // no negative zero in results
 		}
 	}
 	if most := -slices.Max(b[0]); h.Limit.Kind == LimitAmount && T > 1 && most < h.Limit.Amount {
@@ -71,20 +83,56 @@ func (h Household) bounds() ([][]float64, error) {
 	return b, nil
 }
 
-// lowestIncome returns the lowest income of year t at a node: the infimum of the
-// continuous law under LimitNatural, the lowest outcome of the solver otherwise.
-func (h Household) lowestIncome(t, node int) float64 {
-	if h.Limit.Kind == LimitNatural && h.Working(t) {
-		return h.Earnings.Infimum(t)
+// entitlementAt returns the entitlement at node k of year t; the least to begin
+// with where there are no nodes.
+func (h Household) entitlementAt(grids []EntitlementGrid, t, k int) (e Entitlement) {
+	switch {
+	case grids != nil:
+		return grids[t].Node(k)
+	case h.Laws != nil:
+		e, _ = h.Laws.Initial()
 	}
-	low := math.Inf(1)
-	values, weights := h.Income(t, node)
-	for k, y := range values {
-		if weights[k] > 0 {
-			low = math.Min(low, y)
+	return e
+}
+
+// boundAt returns the bound of year t, of bounds [node·K+k], at a persistent node
+// with entitlement e.
+func boundAt(grids []EntitlementGrid, t, node int, e Entitlement, bounds []float64) float64 {
+	if grids == nil {
+		return bounds[node]
+	}
+	g := &grids[t]
+	var b blend
+	g.blend(e, &b)
+	bound := 0.0
+	for i := range b.n {
+		bound += b.weight[i] * bounds[node*g.Len()+b.node[i]]
+	}
+	return bound
+}
+
+// lowest returns the least, over the outcomes of year t at a node that a household
+// with entitlement e before must reckon with, of income less the bound that follows,
+// and the income that it comes of: the infimum of the continuous law under
+// LimitNatural, the lowest outcome of the solver otherwise.
+func (h Household) lowest(t, node int, e Entitlement, bound func(next Entitlement) float64) (net, income float64) {
+	net = math.Inf(1)
+	consider := func(y float64, next Entitlement, weight float64) {
+		if x := y - bound(next); weight > 0 && (x < net || math.IsInf(y, -1)) {
+			net, income = x, y
 		}
 	}
-	return low
+	switch {
+	case h.Limit.Kind == LimitNatural && h.Working(t):
+		y, next := h.Earnings.Infimum(t), e
+		if h.Laws != nil && !math.IsInf(y, -1) {
+			y, next = h.Laws.Work(t, e, y, h.Earnings.JobLossIn(t).Probability < 1)
+		}
+		consider(y, next, 1)
+	default:
+		h.forEachOutcome(t, node, e, consider)
+	}
+	return net, income
 }
 
 func (h Household) infeasible(t int, low, floor float64) error {
@@ -107,13 +155,19 @@ func (h Household) infeasible(t int, low, floor float64) error {
 func (h Household) LeastStart() float64 {
 	floor := h.Utility.Infimum()
 	least := math.Inf(-1)
-	bounds, err := h.bounds()
+	grids := h.entitlementGrids(DefaultOptions())
+	bounds, err := h.bounds(grids)
 	if err != nil || math.IsInf(floor, -1) {
 		return least
 	}
+	e := Entitlement{}
+	if h.Laws != nil {
+		e, _ = h.Laws.Initial()
+	}
 	for j, p := range h.Earnings.Distribution[0] {
 		if p > 0 {
-			least = math.Max(least, (floor+bounds[0][j]-h.lowestIncome(0, j))/(1+h.ReturnIn(0)))
+			net, _ := h.lowest(0, j, e, func(next Entitlement) float64 { return boundAt(grids, 0, j, next, bounds[0]) })
+			least = math.Max(least, (floor-net)/(1+h.ReturnIn(0)))
 		}
 	}
 	return least

@@ -24,7 +24,7 @@ func TestBounds(t *testing.T) {
 		{"none to owe", Limit{}, []float64{0, 0, 0, 0}},
 	} {
 		h.Limit = tt.limit
-		got, err := h.bounds()
+		got, err := h.bounds(nil)
 		if err != nil {
 			t.Fatal(err)
 		}

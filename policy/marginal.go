@@ -1,6 +1,9 @@
 package policy
 
-import "math"
+import (
+	"math"
+	"slices"
+)
 
 // marginal is how the solver reckons with marginal utility. The built-in families
 // have loops of their own; any other Utility goes through its methods.
@@ -52,25 +55,25 @@ func (last marginal) power(u Utility, gamma, shift float64, unit int) marginal {
 	return m
 }
 
-// expect adds to value[i] the expected marginal utility of next year's rule at
-// node j with assets i, and to slope[i] the matching sum whose ratio to value
+// expect adds to value[i] the expected marginal utility of next year's rule in a
+// state with asset i of g, and to slope[i] the matching sum whose ratio to value
 // gives the slope of this year's rule (see slopes).
-func (s *Solver) expect(j int, values, weights, value, slope []float64) {
-	sg := s.next.segments[j]
+func (s *Solver) expect(state int, g *ground, values, weights, value, slope []float64) {
+	sg := s.next.segments[state]
 	for k, y := range values {
 		w := weights[k]
 		switch {
 		case w == 0:
 		case s.lined():
-			sweepLines(s.next.lines[j], y, w, s.forward, s.gross, value)
+			sweepLines(s.next.lines[state], y, w, s.forward, g.gross, value)
 		case s.kind == powerKind:
-			sweepPower(sg, y, w, s.forward, s.gross, value, slope)
+			sweepPower(sg, y, w, s.forward, g.gross, value, slope)
 		case s.kind == exponentialKind:
-			sweepExponential(sg, y, w, s.alpha, s.gross, s.work.reference, value, slope)
+			sweepExponential(sg, y, w, s.alpha, g.gross, g.reference, value, slope)
 		case s.kind == linearKind:
-			sweepLinear(sg, y, w, s.bliss, s.gross, value, slope)
+			sweepLinear(sg, y, w, s.bliss, g.gross, value, slope)
 		default:
-			sweepAny(sg, y, w, s.u, s.gross, value, slope)
+			sweepAny(sg, y, w, s.u, g.gross, value, slope)
 		}
 	}
 }
@@ -78,16 +81,13 @@ func (s *Solver) expect(j int, values, weights, value, slope []float64) {
 // refer sets the consumption that exponential utility is measured from, so that
 // neither very rich nor indebted states overflow: next year's at the lowest
 // income.
-func (s *Solver) refer(j int, values []float64) {
-	low := values[0]
-	for _, y := range values {
-		low = math.Min(low, y)
-	}
-	sg := s.next.segments[j]
-	for i, x := range s.gross {
+func (s *Solver) refer(state int, g *ground, values []float64) {
+	low := slices.Min(values)
+	sg := s.next.segments[state]
+	for i, x := range g.gross {
 		q := find(sg, x+low)
 		u := x + low - q.origin
-		s.work.reference[i] = q.c0 + u*(q.c1+u*(q.c2+u*q.c3))
+		g.reference[i] = q.c0 + u*(q.c1+u*(q.c2+u*q.c3))
 	}
 }
 
@@ -106,10 +106,10 @@ func find(sg []segment, x float64) *segment {
 
 // addBequest turns expected marginal utility in v and its slope sum d into
 // s·v + (1−s)·v′(R·a) and its like.
-func (s *Solver) addBequest(v, d []float64) {
+func (s *Solver) addBequest(g *ground, v, d []float64) {
 	live := s.euler.live
 	die := (1 - live) * s.h.Bequest.Weight
-	for i, x := range s.gross {
+	for i, x := range g.gross {
 		x += s.h.Bequest.Shift
 		var mv, md float64
 		switch s.kind {
@@ -117,7 +117,7 @@ func (s *Solver) addBequest(v, d []float64) {
 			mv = s.forward.at(x - s.shift)
 			md = mv / (x - s.shift)
 		case exponentialKind:
-			mv = math.Exp(-s.alpha * (x - s.work.reference[i]))
+			mv = math.Exp(-s.alpha * (x - g.reference[i]))
 			md = mv
 		case linearKind:
 			mv, md = s.bliss-x, 1
@@ -131,7 +131,7 @@ func (s *Solver) addBequest(v, d []float64) {
 }
 
 // inverse sets c[i] to the consumption whose marginal utility is growth·v[i].
-func (s *Solver) inverse(c, v []float64) {
+func (s *Solver) inverse(g *ground, c, v []float64) {
 	growth := s.euler.growth
 	switch s.kind {
 	case powerKind:
@@ -143,7 +143,7 @@ func (s *Solver) inverse(c, v []float64) {
 		}
 	case exponentialKind:
 		for i, x := range v {
-			c[i] = s.work.reference[i] - math.Log(growth*x)/s.alpha
+			c[i] = g.reference[i] - math.Log(growth*x)/s.alpha
 		}
 	case linearKind:
 		for i, x := range v {
@@ -172,13 +172,13 @@ func (s *Solver) assetSlope(c, v, d float64) float64 {
 
 // slopeTerm is what one kink adds to the slope sum: the weight of an outcome
 // times the derivative of marginal utility, in the units of the kind.
-func (s *Solver) slopeTerm(consumption, weight float64, asset int) float64 {
+func (s *Solver) slopeTerm(g *ground, consumption, weight float64, asset int) float64 {
 	switch s.kind {
 	case powerKind:
 		x := consumption - s.shift
 		return weight * s.forward.at(x) / x
 	case exponentialKind:
-		return weight * math.Exp(-s.alpha*(consumption-s.work.reference[asset]))
+		return weight * math.Exp(-s.alpha*(consumption-g.reference[asset]))
 	case linearKind:
 		return weight
 	}

@@ -36,6 +36,9 @@ type Options struct {
 	Interpolation Interpolation // between the nodes
 	KinkThreshold float64       // a kink of next year's rule gets a node of its own while its slope jump times its probability exceeds this, ≥ 0
 
+	EntitlementPoints int                   // nodes of an accrued entitlement in a working year, ≥ 2
+	EntitlementNodes  [MaxPillars][]float64 // the nodes in every year, ascending, at least 2; nil: placed year by year over what can be reached
+
 	// OnAge, if set, is called on the caller's goroutine after each age is solved.
 	OnAge func(age int)
 }
@@ -44,7 +47,7 @@ type Options struct {
 func DefaultOptions() Options {
 	auto := math.NaN()
 	return Options{AssetPoints: 200, HighestAssets: auto, LowestAssets: auto, AssetScale: auto,
-		Interpolation: Cubic, KinkThreshold: 1e-3}
+		Interpolation: Cubic, KinkThreshold: 1e-3, EntitlementPoints: 12}
 }
 
 // Validate reports every fault at once, each as a *FieldError.
@@ -70,6 +73,21 @@ func (o Options) Validate() error {
 	}
 	if !(o.KinkThreshold >= 0) || math.IsInf(o.KinkThreshold, 1) {
 		bad("KinkThreshold", o.KinkThreshold, "at least 0 and finite")
+	}
+	if o.EntitlementPoints < 2 || o.EntitlementPoints > 1000 {
+		bad("EntitlementPoints", o.EntitlementPoints, "from 2 to 1000")
+	}
+	for p, x := range o.EntitlementNodes {
+		if x == nil {
+			continue
+		}
+		sound := len(x) >= 2
+		for i, e := range x {
+			sound = sound && finite(e) && (i == 0 || e > x[i-1])
+		}
+		if !sound {
+			bad(fmt.Sprintf("EntitlementNodes[%d]", p), x, "at least 2 finite numbers, ascending")
+		}
 	}
 	return errors.Join(errs...)
 }

@@ -23,7 +23,7 @@ type oracleProblem struct {
 // oracleProblemOf spells out the problem of h, whose limit must not be none.
 func oracleProblemOf(t testing.TB, h Household) oracleProblem {
 	t.Helper()
-	lowest, err := h.bounds()
+	lowest, err := h.bounds(nil)
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -53,17 +53,56 @@ func (c *Curve) cubic(j int) (c1, c2, c3 float64) {
 func (c *Curve) Top() float64 { return c.Cash[len(c.Cash)-1] }
 
 // Rule is the solution of a household's problem: consumption as a function of
-// age, persistent node and cash-on-hand. It is immutable and safe for concurrent
-// use.
+// age, persistent node, accrued entitlement and cash-on-hand. It is immutable and
+// safe for concurrent use.
 type Rule struct {
-	Household Household
-	Curves    [][]Curve // [t][node]
-	Bounds    []float64 // [T] lowest assets at the end of year t over the nodes (a node's own: Curve.Bound); −Inf without limit
-	Updates   int64     // evaluations of next year's rule that solving took
+	Household    Household
+	Curves       [][]Curve         // [t][node·K+k], k of the K = Entitlements[t].Len() entitlement nodes; [t][node] without an entitlement
+	Entitlements []EntitlementGrid // [T]; nil without an entitlement
+	Bounds       []float64         // [T] lowest assets at the end of year t over the nodes (a node's own: Curve.Bound); −Inf without limit
+	Updates      int64             // evaluations of next year's rule that solving took
+}
+
+// At returns consumption (money) and the marginal propensity to consume in year t
+// (from FirstAge) at a persistent node with entitlement e, this year's credit
+// included, and cash-on-hand m. Without an entitlement e does not matter.
+func (r *Rule) At(t, node int, e Entitlement, m float64) (consumption, propensity float64) {
+	g := r.accruing(t)
+	if g == nil {
+		return r.Curves[t][node].At(m)
+	}
+	var b blend
+	g.blend(e, &b)
+	n := g.Len()
+	return g.read(r.Curves[t][node*n:(node+1)*n], &b, m)
+}
+
+// Lowest returns the lowest assets, in money, that a household may hold at the end
+// of year t at a persistent node with entitlement e; −Inf without limit.
+func (r *Rule) Lowest(t, node int, e Entitlement) float64 {
+	g := r.accruing(t)
+	if g == nil {
+		return r.Curves[t][node].Bound
+	}
+	var b blend
+	g.blend(e, &b)
+	bound := 0.0
+	for i := range b.n {
+		bound += b.weight[i] * r.Curves[t][node*g.Len()+b.node[i]].Bound
+	}
+	return bound
+}
+
+// accruing returns the entitlement grid of year t, nil without an entitlement.
+func (r *Rule) accruing(t int) *EntitlementGrid {
+	if r.Entitlements == nil {
+		return nil
+	}
+	return &r.Entitlements[t]
 }
 
 // Consumption returns c, in money, in year t (from FirstAge) at a persistent node
-// with cash-on-hand m.
+// with cash-on-hand m, of a rule without an entitlement.
 func (r *Rule) Consumption(t, node int, m float64) float64 {
 	c, _ := r.Curves[t][node].At(m)
 	return c
@@ -80,11 +119,11 @@ func (r *Rule) Propensity(t, node int, m float64) float64 {
 
 // check looks for values that no rule can have. They would come from a problem
 // whose numbers overflow, and would otherwise spread in silence.
-func (c *Curve) check(floor float64, age, node int) error {
+func (c *Curve) check(floor float64, age, node, entitlement int) error {
 	for i, x := range c.Consumption {
 		bad := math.IsNaN(x) || math.IsInf(x, 0) || x < floor || math.IsNaN(c.Left[i]) || math.IsNaN(c.Right[i])
 		if bad || i > 0 && !(c.Cash[i] > c.Cash[i-1]) {
-			return &RuleError{Age: age, Node: node, Cash: c.Cash[i], Consumption: x}
+			return &RuleError{Age: age, Node: node, Entitlement: entitlement, Cash: c.Cash[i], Consumption: x}
 		}
 	}
 	return nil
@@ -94,6 +133,7 @@ func (c *Curve) check(floor float64, age, node int) error {
 // infinite, at or below the consumption that utility allows, or falling assets.
 type RuleError struct {
 	Age, Node         int
+	Entitlement       int     // entitlement node
 	Cash, Consumption float64 // money
 }
 

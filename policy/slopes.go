@@ -2,10 +2,10 @@ package policy
 
 import "math"
 
-// slopes completes a cubic rule: the slope at every node from above and, at
-// kinks, from below. v and d are the expectation and its slope sum, row the
-// chance of each next node, the first of which is from.
-func (s *Solver) slopes(c *Curve, v, d []float64, from int, row []float64) {
+// slopes completes a cubic rule on the assets of g: the slope at every node from
+// above and, at kinks, from below. v and d are the expectation and its slope sum,
+// row the chance of each next node, the first of which is from.
+func (s *Solver) slopes(c *Curve, g *ground, v, d []float64, from int, row []float64) {
 	n := len(v)
 	right := s.arena.take(n)
 	if s.kind == powerKind {
@@ -17,10 +17,10 @@ func (s *Solver) slopes(c *Curve, v, d []float64, from int, row []float64) {
 		}
 	}
 	left := right
-	if !math.IsInf(c.Bound, -1) || len(s.kinks) > 0 {
+	if !math.IsInf(c.Bound, -1) || len(g.kinks) > 0 {
 		left = s.arena.take(n)
 		copy(left, right)
-		s.leftSlopes(c, left, v, d, from, row)
+		s.leftSlopes(c, g, left, v, d, from, row)
 	}
 	c.Left, c.Right = left, right
 	if math.IsInf(c.Bound, -1) {
@@ -44,11 +44,11 @@ func powerSlopes(dst, consumption, v, d []float64, returns, shift float64) {
 
 // leftSlopes corrects the slopes from below at the assets from which a kink of
 // next year's rule is met exactly.
-func (s *Solver) leftSlopes(c *Curve, left, v, d []float64, from int, row []float64) {
-	extra := s.work.extra
+func (s *Solver) leftSlopes(c *Curve, g *ground, left, v, d []float64, from int, row []float64) {
+	extra := s.work.extra[:len(v)]
 	clear(extra)
-	for i := range s.kinks {
-		k := &s.kinks[i]
+	for i := range g.kinks {
+		k := &g.kinks[i]
 		if k.index > 0 {
 			extra[k.index] += row[int(k.node)-from] * k.delta
 		}
@@ -61,13 +61,13 @@ func (s *Solver) leftSlopes(c *Curve, left, v, d []float64, from int, row []floa
 	}
 }
 
-// secants completes a linear rule.
-func (s *Solver) secants(j int, c *Curve) {
+// secants completes the linear rule of a state.
+func (s *Solver) secants(state int, c *Curve) {
 	n := len(c.Cash)
 	k := s.arena.take(n + 1) // slope below each node, and above the last
 	c.Left, c.Right = k[:n], k[1:]
 	if s.lined() {
-		s.sound = s.next.setLines(j, c, k, s.tolerance(), s.shift) && s.sound
+		s.sound = s.next.setLines(state, c, k, s.tolerance(), s.shift) && s.sound
 		return
 	}
 	k[0] = 1

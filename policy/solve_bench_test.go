@@ -62,10 +62,13 @@ func processTime() int64 {
 // BenchmarkSolve reports time per node update: one evaluation of next year's rule
 // at one node, income outcome and asset point.
 func BenchmarkSolve(b *testing.B) {
-	for _, size := range []string{"S", "L"} {
+	for _, size := range []string{"S", "L", "Q"} {
 		for _, method := range []Interpolation{Linear, Cubic} {
 			b.Run(fmt.Sprintf("size=%s/interpolation=%v", size, method), func(b *testing.B) {
 				h, o := referenceHousehold(b, size, 2.5)
+				if size == "Q" {
+					h, o = referenceAccrual(b, 2.5)
+				}
 				o.Interpolation = method
 				s := NewSolver(h.Years())
 				ctx := context.Background()

@@ -102,3 +102,72 @@ func (q *segment) at(x float64) (consumption, propensity float64) {
 	e1 := q.c1 + u*e2
 	return q.c0 + u*e1, e1 + u*(e2+u*q.c3)
 }
+
+// readSegments adds weight times a rule's consumption and propensity, at
+// cash-on-hand gross[i] + y, ascending in i.
+func readSegments(sg []segment, y, weight float64, gross, consumption, propensity []float64) {
+	consumption, propensity = consumption[:len(gross)], propensity[:len(gross)]
+	j := 0
+	q := &sg[0]
+	for i, a := range gross {
+		x := a + y
+		for x >= q.high {
+			j++
+			q = &sg[j]
+		}
+		u := x - q.origin
+		e2 := q.c2 + u*q.c3
+		e1 := q.c1 + u*e2
+		consumption[i] += weight * (q.c0 + u*e1)
+		propensity[i] += weight * (e1 + u*(e2+u*q.c3))
+	}
+}
+
+// readLines sets row to the consumption of a linear rule at cash-on-hand
+// gross[i] + y, ascending in i.
+func readLines(ln []line, y float64, gross, row []float64) {
+	row = row[:len(gross)]
+	j := 0
+	q := &ln[0]
+	for i, a := range gross {
+		x := a + y
+		for x >= q.high {
+			j++
+			q = &ln[j]
+		}
+		row[i] = q.level + q.slope*x
+	}
+}
+
+// addPower adds w·c^−γ to value and w·γ⁻¹·(−u″)·dc/dm to slope.
+func addPower(p *powerTable, w float64, consumption, propensity, value, slope []float64) {
+	propensity, value, slope = propensity[:len(consumption)], value[:len(consumption)], slope[:len(consumption)]
+	b1, b2, b3, b4, b5 := p.series[1], p.series[2], p.series[3], p.series[4], p.series[5]
+	for i, c := range consumption {
+		bits := math.Float64bits(c)
+		cell := &p.cell[bits>>44&255]
+		r := math.Float64frombits(bits&(1<<52-1)|1023<<52)*cell[0] - 1
+		v := w * p.scale[bits>>52] * cell[1] * (1 + r*(b1+r*(b2+r*(b3+r*(b4+r*b5)))))
+		value[i] += v
+		slope[i] += v / c * propensity[i]
+	}
+}
+
+// addPair adds w·c^−γ to value, c = u·a + v·b.
+func addPair(p *powerTable, w, u float64, a []float64, v float64, b, value []float64) {
+	a, b = a[:len(value)], b[:len(value)]
+	b1, b2, b3, b4, b5 := p.series[1], p.series[2], p.series[3], p.series[4], p.series[5]
+	for i, x := range a {
+		bits := math.Float64bits(u*x + v*b[i])
+		cell := &p.cell[bits>>44&255]
+		r := math.Float64frombits(bits&(1<<52-1)|1023<<52)*cell[0] - 1
+		value[i] += w * p.scale[bits>>52] * cell[1] * (1 + r*(b1+r*(b2+r*(b3+r*(b4+r*b5)))))
+	}
+}
+
+func addScaled(dst []float64, w float64, row []float64) {
+	row = row[:len(dst)]
+	for i := range dst {
+		dst[i] += w * row[i]
+	}
+}

@@ -1,6 +1,9 @@
 package policy
 
-import "math"
+import (
+	"math"
+	"slices"
+)
 
 // Table is a rule in one year, laid out for evaluating it at many states: every
 // curve cut into pieces, each a cubic in the distance from the piece's lower edge,
@@ -18,6 +21,12 @@ type Table struct {
 	guide []int32      // [node][bucket] first piece of the node that can hold a point of the bucket
 	top   []float64    // [node] where extrapolation begins
 
+	// with an entitlement every node has a curve for each entitlement node
+	grid   *EntitlementGrid
+	stride int       // curves a node; 0 where all nodes have the same ones
+	kink   []float64 // [curve] where its limit stops binding
+	bound  []float64 // [curve] its lowest assets
+
 	buckets int     // a node
 	shift   uint    // of the bits of the scaled cash-on-hand
 	low     float64 // cash-on-hand where the first bucket begins
@@ -28,6 +37,9 @@ type Table struct {
 func (r *Rule) Table(t int) *Table {
 	curves := r.Curves[t]
 	tb := &Table{low: math.Inf(1)}
+	if g := r.accruing(t); g != nil {
+		curves = tb.accrue(g, curves)
+	}
 	high, nodes, edges, gap := math.Inf(-1), 0, 0, 0.0
 	for j := range curves {
 		cash := curves[j].Cash
@@ -37,6 +49,7 @@ func (r *Rule) Table(t int) *Table {
 		edges += n + 2
 		gap = math.Max(gap, cash[min(n-1, max(1, n/8))]-cash[0])
 		tb.top = append(tb.top, cash[n-1])
+		tb.kink, tb.bound = append(tb.kink, cash[0]), append(tb.bound, curves[j].Bound)
 	}
 	if tb.scale = 1 / gap; gap == 0 { // curves of a single node
 		tb.scale = 1
@@ -101,13 +114,25 @@ func (tb *Table) fillGuide(guide []int32, first int) {
 	}
 }
 
-// Top returns the cash-on-hand above which the rule at a node is extrapolated.
-func (tb *Table) Top(node int) float64 { return tb.top[node] }
+// Top returns the cash-on-hand above which the rule at a node is extrapolated,
+// whatever the entitlement.
+func (tb *Table) Top(node int) float64 {
+	if tb.grid == nil {
+		return tb.top[node]
+	}
+	n := tb.grid.Len()
+	return slices.Min(tb.top[node*tb.stride : node*tb.stride+n])
+}
 
 // Evaluate sets consumption and the marginal propensity to consume at every state
 // (node[i], cash[i]). A nil node means node 0 throughout; a nil propensity is not
-// computed. The slices must be as long as cash.
-func (tb *Table) Evaluate(node []uint8, cash, consumption, propensity []float64) {
+// computed. With an entitlement there must be one column for each pillar, this
+// year's credit included. The slices must be as long as cash.
+func (tb *Table) Evaluate(node []uint8, cash, consumption, propensity []float64, entitlement ...[]float64) {
+	if tb.grid != nil {
+		tb.evaluateAccrued(node, cash, consumption, propensity, entitlement)
+		return
+	}
 	var piece [len(firstNode)]int32
 	for from := 0; from < len(cash); from += len(piece) {
 		to := min(from+len(piece), len(cash))

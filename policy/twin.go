@@ -6,7 +6,9 @@ import "cistern/income"
 // replaced by its mean at that age, so that the persistent part, the transitory
 // shock and job loss are off while mean income at every age is untouched. What
 // the household saves beyond its twin is precautionary (Leland 1968, Quarterly
-// Journal of Economics 82; Kimball 1990, Econometrica 58).
+// Journal of Economics 82; Kimball 1990, Econometrica 58). Under Laws the twin earns
+// mean earnings and the laws make of them what they do: mean net income differs
+// where they are progressive.
 func (h Household) Twin() (Household, error) {
 	process := income.Process{
 		FirstAge:   h.FirstAge,
@@ -25,6 +27,9 @@ func (h Household) Twin() (Household, error) {
 	}
 	twin := h
 	twin.Earnings = earnings
+	if h.Laws != nil {
+		return twin, nil
+	}
 	twin.Pension.FinalEarningsRate, twin.Pension.Flat = 0, 0
 	if h.WorkingYears() < h.Years() {
 		whole := h
