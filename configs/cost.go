@@ -15,7 +15,7 @@ type Cost struct {
 // scenarios; another machine is within a factor of two or three.
 const (
 	secondsPerUpdate   = 15e-9
-	secondsPerRow      = 250e-9 // simulation, twins and all passes of the summary
+	secondsPerRow      = 750e-9 // simulation, twins and all passes of the summary
 	secondsPerRowFile  = 350e-9 // encoding, compressing and writing a row
 	bytesPerRowDouble  = 40
 	bytesPerRowSingle  = 20

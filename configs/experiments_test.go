@@ -124,3 +124,14 @@ func TestTransferCost(t *testing.T) {
 		t.Errorf("costs %+v, %+v and %+v", none, two, late)
 	}
 }
+
+// An empty block takes what a file has asked for back.
+func TestExperimentsOff(t *testing.T) {
+	sc, err := Builtin("quayside", []Override{{"experiments", "{}"}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if sc.Experiments != (Experiments{}) {
+		t.Errorf("experiments %+v", sc.Experiments)
+	}
+}

@@ -57,6 +57,9 @@ func (n *node) stamp(source string) {
 // replace returns a copy of n with the value at path in place.
 func replace(n *node, path []string, value *node, source string) (*node, error) {
 	if len(path) == 0 {
+		if value.kind == mapping && len(value.keys) == 0 {
+			return value, nil // {} empties a block
+		}
 		return merge(n, value), nil
 	}
 	if n != nil && n.kind == list {
