@@ -43,6 +43,9 @@ func (p Process) Build() (*Earnings, error) {
 	}
 	e.placeShock()
 	for t := range years {
+		if e.meanInLogs() {
+			e.Kappa[t] = logMeanExp(e.Distribution[t], e.Chain.Nodes)
+		}
 		e.fillYear(t)
 		if err := e.checkYear(t); err != nil {
 			return nil, err
@@ -101,9 +104,6 @@ func (e *Earnings) weigh(p float64) []float64 {
 // fillYear fills the tables of year t.
 func (e *Earnings) fillYear(t int) {
 	n := e.Chain.Len()
-	if e.meanInLogs() {
-		e.Kappa[t] = logMeanExp(e.Distribution[t], e.Chain.Nodes)
-	}
 	c := e.change(t)
 	e.Base[t], e.Benefit[t], e.values[t] = make([]float64, n), make([]float64, n), make([][]float64, n)
 	for j := range e.Chain.Nodes {

@@ -48,17 +48,6 @@ type target struct{ group, band int }
 // yearResults are the figures of one year: [target].
 type yearResults []figures
 
-// figures are those of one target in one year.
-type figures struct {
-	rows      int64
-	means     []stats.Estimate                   // [variable]
-	below     [2][]stats.Estimate                // [world][runway]
-	shares    stats.Estimate                     // mean shortfall over mean usual consumption
-	worst     [2][]stats.Estimate                // [money, relative][share]
-	quantiles [2][len(compared)][]stats.Estimate // [world][variable][percentile]
-	gaps      [len(compared)][]stats.Estimate
-}
-
 // New prepares a contrast. Faults of the options are reported at once.
 func New(o Options) (*Contrast, error) {
 	if err := o.Validate(); err != nil {
@@ -111,52 +100,6 @@ func (c *Contrast) begin(from int) error {
 		c.studies = append(c.studies, s)
 	}
 	return nil
-}
-
-func (c *Contrast) studyOptions() distribution.Options {
-	o := distribution.Options{Cells: len(c.o.Groups) * (len(c.o.Bands) + 1), Percentiles: c.percentiles, Shortfalls: c.o.Worst, Rows: max(1, c.o.RowsAYear),
-		Weighted: c.o.Weighted, Workers: c.o.Workers, Budget: c.o.budget() / int64(c.to-c.from)}
-	wants := map[int]distribution.Set{}
-	for _, v := range compared {
-		wants[v.usual], wants[v.event] = distribution.Percentiles, distribution.Percentiles
-	}
-	wants[consumptionGap], wants[relativeGap] = distribution.Shortfall, distribution.Shortfall
-	for v := range belowFirst + len(c.o.RunwayMonths) {
-		x := distribution.Variable{Name: c.nameOf(v), Held: wants[v] != 0}
-		switch v {
-		case runwayUsual, runwayEvent:
-			for _, months := range c.o.RunwayMonths {
-				x.Shares = append(x.Shares, distribution.Threshold{Value: months, Strict: true})
-			}
-			x.Optional = true
-		case lossUsual, lossEvent, lossGap, relativeGap, relativeShortfall:
-			x.Optional = true
-		}
-		x.Optional = x.Optional || v >= belowFirst
-		o.Variables = append(o.Variables, x)
-	}
-	for _, t := range c.targets {
-		d := distribution.Target{Wants: make([]distribution.Set, len(o.Variables)), Independent: !c.o.Weighted}
-		for v, w := range wants {
-			d.Wants[v] = w
-		}
-		for g := range c.o.Groups {
-			for b := range len(c.o.Bands) + 1 {
-				if t.has(g, b) {
-					d.Cells = append(d.Cells, distribution.Cell{Index: c.cell(g, b), Weight: 1})
-				}
-			}
-		}
-		o.Targets = append(o.Targets, d)
-	}
-	return o
-}
-
-func (c *Contrast) nameOf(v int) string {
-	if v < belowFirst {
-		return names[v]
-	}
-	return fmt.Sprintf("runway below %g months", c.o.RunwayMonths[v-belowFirst])
 }
 
 // Passes returns the number of passes begun so far.
@@ -280,47 +223,6 @@ func (c *Contrast) EndPass() (more bool, err error) {
 	return false, nil
 }
 
-// figures takes the figures of a finished study.
-func (c *Contrast) figures(s *distribution.Study) yearResults {
-	list := make(yearResults, len(c.targets))
-	for i := range c.targets {
-		r := s.Target(i)
-		f := &list[i]
-		f.rows = r.Rows()
-		for v := range belowFirst + len(c.o.RunwayMonths) {
-			switch v {
-			case lossUsual, lossEvent, dryInUsual, dryInEvent, dryFarUsual, dryFarEvent, newlyDry, newlyDryFar:
-				f.means = append(f.means, r.Proportion(v))
-			default:
-				f.means = append(f.means, r.Mean(v))
-			}
-		}
-		f.shares = r.Ratio(shortfall, consumptionUsual)
-		for w, v := range []int{runwayUsual, runwayEvent} {
-			for k := range c.o.RunwayMonths {
-				f.below[w] = append(f.below[w], r.Share(v, k))
-			}
-		}
-		for w, v := range []int{consumptionGap, relativeGap} {
-			for k := range c.o.Worst {
-				f.worst[w] = append(f.worst[w], negative(r.Shortfall(v, k)))
-			}
-		}
-		for n, v := range compared {
-			for k := range c.percentiles {
-				f.quantiles[0][n] = append(f.quantiles[0][n], r.Percentile(v.usual, k))
-				f.quantiles[1][n] = append(f.quantiles[1][n], r.Percentile(v.event, k))
-			}
-		}
-	}
-	return list
-}
-
-// negative returns −e.
-func negative(e stats.Estimate) stats.Estimate {
-	return stats.Estimate{Value: 0 - e.Value, StandardError: e.StandardError, Lower: 0 - e.Upper, Upper: 0 - e.Lower}
-}
-
 // pairsAYear is how many pairs of percentiles a year has.
 func (c *Contrast) pairsAYear() int { return len(c.targets) * len(compared) * len(c.percentiles) }
 
@@ -334,83 +236,6 @@ func (c *Contrast) settle(list yearResults, joint []joint) {
 				f.gaps[n] = append(f.gaps[n], gap(f.quantiles[0][n][k], f.quantiles[1][n][k], joint[at].correlation(p/100)))
 				at++
 			}
-		}
-	}
-}
-
-// pairs are the counts of one block.
-type pairs struct{ years [][]joint }
-
-func (c *Contrast) take() *pairs {
-	c.mu.Lock()
-	defer c.mu.Unlock()
-	if n := len(c.spare); n > 0 {
-		p := c.spare[n-1]
-		c.spare = c.spare[:n-1]
-		return p
-	}
-	return &pairs{}
-}
-
-func (c *Contrast) fold(p *pairs) {
-	for i, year := range p.years {
-		for k := range year {
-			c.joint[i][k].fold(year[k])
-		}
-	}
-	c.mu.Lock()
-	defer c.mu.Unlock()
-	c.spare = append(c.spare, p)
-}
-
-// count counts the pairs of a block that a splitter has split.
-func (p *pairs) count(c *Contrast, s *splitter) {
-	for len(p.years) < c.to-c.from {
-		p.years = append(p.years, nil)
-	}
-	p.years = p.years[:c.to-c.from]
-	for i := range p.years {
-		p.years[i] = slices.Grow(p.years[i][:0], c.pairsAYear())[:c.pairsAYear()]
-		clear(p.years[i])
-		y := &s.years[c.from+i]
-		for _, cell := range y.cells {
-			for n, t := range c.targets {
-				if t.has(cell.group, cell.band) {
-					size := len(compared) * len(c.percentiles)
-					c.results[c.from+i][n].pair(p.years[i][n*size:(n+1)*size], y, cell)
-				}
-			}
-		}
-	}
-}
-
-// pair counts the rows of a cell about each percentile.
-func (f *figures) pair(dst []joint, y *yearRows, cell cellSpan) {
-	weight := y.weight[cell.from:cell.to]
-	at := 0
-	for n, v := range compared {
-		usual, event := y.values[v.usual][cell.from:cell.to], y.values[v.event][cell.from:cell.to]
-		for k := range f.quantiles[0][n] {
-			a, b := f.quantiles[0][n][k].Value, f.quantiles[1][n][k].Value
-			j := &dst[at]
-			for i, w := range weight {
-				x, z := usual[i], event[i]
-				if x != x || z != z {
-					continue
-				}
-				w *= w
-				j.rows += w
-				if x <= a {
-					j.usual += w
-					if z <= b {
-						j.both += w
-					}
-				}
-				if z <= b {
-					j.event += w
-				}
-			}
-			at++
 		}
 	}
 }

@@ -2,6 +2,7 @@ package contrast
 
 import (
 	"math"
+	"slices"
 
 	"cistern/output/stats"
 )
@@ -44,4 +45,81 @@ func gap(usual, event stats.Estimate, correlation float64) stats.Estimate {
 		e.Lower, e.Upper = e.Value-normal*e.StandardError, e.Value+normal*e.StandardError
 	}
 	return e
+}
+
+// pairs are the counts of one block.
+type pairs struct{ years [][]joint }
+
+func (c *Contrast) take() *pairs {
+	c.mu.Lock()
+	defer c.mu.Unlock()
+	if n := len(c.spare); n > 0 {
+		p := c.spare[n-1]
+		c.spare = c.spare[:n-1]
+		return p
+	}
+	return &pairs{}
+}
+
+func (c *Contrast) fold(p *pairs) {
+	for i, year := range p.years {
+		for k := range year {
+			c.joint[i][k].fold(year[k])
+		}
+	}
+	c.mu.Lock()
+	defer c.mu.Unlock()
+	c.spare = append(c.spare, p)
+}
+
+// count counts the pairs of a block that a splitter has split.
+func (p *pairs) count(c *Contrast, s *splitter) {
+	for len(p.years) < c.to-c.from {
+		p.years = append(p.years, nil)
+	}
+	p.years = p.years[:c.to-c.from]
+	for i := range p.years {
+		p.years[i] = slices.Grow(p.years[i][:0], c.pairsAYear())[:c.pairsAYear()]
+		clear(p.years[i])
+		y := &s.years[c.from+i]
+		for _, cell := range y.cells {
+			for n, t := range c.targets {
+				if t.has(cell.group, cell.band) {
+					size := len(compared) * len(c.percentiles)
+					c.results[c.from+i][n].pair(p.years[i][n*size:(n+1)*size], y, cell)
+				}
+			}
+		}
+	}
+}
+
+// pair counts the rows of a cell about each percentile.
+func (f *figures) pair(dst []joint, y *yearRows, cell cellSpan) {
+	weight := y.weight[cell.from:cell.to]
+	at := 0
+	for n, v := range compared {
+		usual, event := y.values[v.usual][cell.from:cell.to], y.values[v.event][cell.from:cell.to]
+		for k := range f.quantiles[0][n] {
+			a, b := f.quantiles[0][n][k].Value, f.quantiles[1][n][k].Value
+			j := &dst[at]
+			for i, w := range weight {
+				x, z := usual[i], event[i]
+				if x != x || z != z {
+					continue
+				}
+				w *= w
+				j.rows += w
+				if x <= a {
+					j.usual += w
+					if z <= b {
+						j.both += w
+					}
+				}
+				if z <= b {
+					j.event += w
+				}
+			}
+			at++
+		}
+	}
 }

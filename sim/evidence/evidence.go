@@ -27,7 +27,7 @@ type suite func(ctx context.Context) ([]Check, error)
 // check that fails is no error.
 func Run(ctx context.Context, onCheck func(Check)) ([]Check, error) {
 	var all []Check
-	for _, s := range []suite{chains, certainPaths, exponential, limits, panel} {
+	for _, s := range []suite{chains, certainPaths, exponential, limits, panel, events} {
 		checks, err := s(ctx)
 		if err != nil {
 			return all, fmt.Errorf("evidence: %w", err)
