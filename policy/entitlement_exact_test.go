@@ -116,7 +116,7 @@ func (l funded) Work(_ int, e Entitlement, earnings float64, _ bool) (float64, E
 
 func (l funded) Pension(_ int, e Entitlement, _ float64) float64 { return l.instalment * e[0] }
 
-func (l funded) Kinks(int) Kinks { return Kinks{} }
+func (l funded) Bends(int) (_ [MaxPillars][]float64) { return }
 
 // With certain income and no limit that binds, forced saving in an actuarially fair
 // funded pillar displaces free saving one for one: consumption is the same, and

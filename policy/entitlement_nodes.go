@@ -197,7 +197,7 @@ type window struct{ low, high float64 }
 func (h Household) bends(p int) []window {
 	var kinks []float64
 	for t := h.WorkingYears(); t < h.Years(); t++ {
-		kinks = append(kinks, h.Laws.Kinks(t).Entitlement[p]...)
+		kinks = append(kinks, h.Laws.Bends(t)[p]...)
 	}
 	slices.Sort(kinks)
 	var w []window

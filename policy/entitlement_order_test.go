@@ -198,9 +198,9 @@ func TestTwoPillars(t *testing.T) {
 // twoPillars credit 3 % and 2 % of earnings up to 2.
 type twoPillars struct{}
 
-func (twoPillars) Pillars() int                { return 2 }
-func (twoPillars) Initial() (_, _ Entitlement) { return }
-func (twoPillars) Kinks(int) Kinks             { return Kinks{} }
+func (twoPillars) Pillars() int                        { return 2 }
+func (twoPillars) Initial() (_, _ Entitlement)         { return }
+func (twoPillars) Bends(int) (_ [MaxPillars][]float64) { return }
 func (twoPillars) Work(_ int, e Entitlement, earnings float64, _ bool) (float64, Entitlement) {
 	y := math.Min(earnings, 2)
 	return earnings, Entitlement{e[0] + 0.015*y, e[1] + 0.035*y}

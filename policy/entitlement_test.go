@@ -46,23 +46,22 @@ func (l careerAverage) Pension(_ int, e Entitlement, final float64) float64 {
 	return l.spendable(math.Max(l.least, l.flat+e[0]+l.final*final))
 }
 
-func (l careerAverage) Kinks(int) Kinks {
-	k := Kinks{Earnings: append([]float64{l.ceiling}, l.bends...)}
+func (l careerAverage) Bends(int) (x [MaxPillars][]float64) {
 	if l.least > 0 {
-		k.Entitlement[0] = []float64{l.least - l.flat}
+		x[0] = []float64{l.least - l.flat}
 	}
-	for _, x := range l.bends {
-		k.Entitlement[0] = append(k.Entitlement[0], x-l.flat)
+	for _, y := range l.bends {
+		x[0] = append(x[0], y-l.flat)
 	}
-	return k
+	return x
 }
 
 // noLaws take nothing and give what Pension does.
 type noLaws struct{ paid Pension }
 
-func (l noLaws) Pillars() int                { return 0 }
-func (l noLaws) Initial() (_, _ Entitlement) { return }
-func (l noLaws) Kinks(int) Kinks             { return Kinks{} }
+func (l noLaws) Pillars() int                        { return 0 }
+func (l noLaws) Initial() (_, _ Entitlement)         { return }
+func (l noLaws) Bends(int) (_ [MaxPillars][]float64) { return }
 func (l noLaws) Work(_ int, e Entitlement, earnings float64, _ bool) (float64, Entitlement) {
 	return earnings, e
 }

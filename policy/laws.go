@@ -7,7 +7,7 @@ const MaxPillars = 2
 
 // Entitlement is what a household has accrued in each pillar, in the units of the
 // laws: money a year, points, a balance. Pillars that the laws do not have stay 0.
-type Entitlement [MaxPillars]float64
+type Entitlement = [MaxPillars]float64
 
 // Laws are the public rules between gross earnings and what a household can spend:
 // taxes and contributions while it works, the entitlement that it accrues, and the
@@ -32,15 +32,10 @@ type Laws interface {
 	// that the persistent part supported in the last working year). The entitlement
 	// does not change any more.
 	Pension(t int, e Entitlement, final float64) float64
-	// Kinks returns where Work or Pension bend in year t.
-	Kinks(t int) Kinks
-}
-
-// Kinks says where laws bend or jump: amounts of the current year's gross earnings
-// and, pillar by pillar, entitlements. Order does not matter.
-type Kinks struct {
-	Earnings    []float64
-	Entitlement [MaxPillars][]float64
+	// Bends returns, pillar by pillar and in any order, the entitlements at which
+	// Pension bends in year t, from the claim age on. (Where Work bends in earnings
+	// need not be known: the shocks of earnings smooth it.)
+	Bends(t int) [MaxPillars][]float64
 }
 
 // pillars returns how many entitlements h accrues.
