@@ -90,19 +90,17 @@ func (l *layout) findCells(ctx context.Context) (*cells, error) {
 // none is the combination of a row that lacks one of the values.
 var none = [4]int32{-1}
 
-// places returns the combination of codes of every row, entering new ones.
-func (l *layout) places(g rowGroup, r *reader, c *cells, mu *sync.Mutex) ([][4]int32, error) {
+// combinations returns the combination of codes of every row; none where a value is
+// missing. code numbers the values of a column.
+func (l *layout) combinations(g rowGroup, r *reader, code func(column int, kind output.Kind, v value) (int32, error)) ([][4]int32, error) {
 	rows := make([][4]int32, g.rows)
 	for i, name := range l.o.By {
 		column, err := r.column(g, name)
 		if err != nil {
 			return nil, err
 		}
-		mu.Lock()
-		c.kinds[i] = column.Kind
-		mu.Unlock()
 		var before value
-		code := int32(-1)
+		now := int32(-1)
 		for k := range rows {
 			if column.IsMissing(k) {
 				rows[k] = none
@@ -114,16 +112,25 @@ func (l *layout) places(g rowGroup, r *reader, c *cells, mu *sync.Mutex) ([][4]i
 			} else {
 				v.number = column.Ints[k]
 			}
-			if code < 0 || v != before {
-				if code, err = c.code(i, v, mu); err != nil {
+			if now < 0 || v != before {
+				if now, err = code(i, column.Kind, v); err != nil {
 					return nil, err
 				}
 				before = v
 			}
 			if rows[k] != none {
-				rows[k][i] = code
+				rows[k][i] = now
 			}
 		}
+	}
+	return rows, nil
+}
+
+// places returns the combination of codes of every row, entering new ones.
+func (l *layout) places(g rowGroup, r *reader, c *cells, mu *sync.Mutex) ([][4]int32, error) {
+	rows, err := l.combinations(g, r, func(i int, kind output.Kind, v value) (int32, error) { return c.code(i, kind, v, mu) })
+	if err != nil {
+		return nil, err
 	}
 	seen := map[[4]int32]bool{}
 	for k, p := range rows {
@@ -142,13 +149,11 @@ func (l *layout) places(g rowGroup, r *reader, c *cells, mu *sync.Mutex) ([][4]i
 	return rows, nil
 }
 
-// code returns the number of a value of column i.
-func (c *cells) code(i int, v value, mu *sync.Mutex) (int32, error) {
+// code returns the number of a value of column i, a new one where it is new.
+func (c *cells) code(i int, kind output.Kind, v value, mu *sync.Mutex) (int32, error) {
 	mu.Lock()
 	defer mu.Unlock()
-	if c.index != nil { // all are known
-		return c.codes[i][v], nil
-	}
+	c.kinds[i] = kind
 	code, known := c.codes[i][v]
 	if !known {
 		code = int32(len(c.values[i]))

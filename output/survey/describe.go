@@ -210,32 +210,9 @@ func (l *layout) placesOf(c *cells, g rowGroup, r *reader) ([]int32, error) {
 	if len(l.o.By) == 0 {
 		return out, nil
 	}
-	codes := make([][4]int32, g.rows)
-	for i, name := range l.o.By {
-		column, err := r.column(g, name)
-		if err != nil {
-			return nil, err
-		}
-		var before value
-		code := int32(-1)
-		for k := range codes {
-			if column.IsMissing(k) {
-				codes[k] = none
-				continue
-			}
-			var v value
-			if column.Kind == output.String {
-				v.text = column.Strings[k]
-			} else {
-				v.number = column.Ints[k]
-			}
-			if code < 0 || v != before {
-				code, before = c.codes[i][v], v
-			}
-			if codes[k] != none {
-				codes[k][i] = code
-			}
-		}
+	codes, err := l.combinations(g, r, func(i int, _ output.Kind, v value) (int32, error) { return c.codes[i][v], nil })
+	if err != nil {
+		return nil, err
 	}
 	for k, p := range codes {
 		switch {
