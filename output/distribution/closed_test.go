@@ -14,7 +14,7 @@ import (
 func alone(n int) Options {
 	return Options{Variables: []Variable{{Name: "x", Held: true, Shares: []Threshold{{Value: 1}}}}, Cells: 1,
 		Targets:     []Target{{Cells: []Cell{{0, 1}}, Wants: []Set{all &^ Classes}, Independent: true}},
-		Percentiles: []float64{50, 99.9}, Lorenz: []float64{10, 50, 90, 99}, TopShares: []float64{10, 1, 0.1}, Shortfalls: []float64{1, 5}, Tails: []float64{1, 5},
+		Percentiles: []float64{50, 99.9}, Lorenz: []float64{10, 50, 90, 99}, TopShares: []float64{10, 1, 0.1}, Shortfalls: []float64{1, 5}, Tails: []float64{1, 5, 50},
 		Rows: int64(n), Workers: 1}
 }
 
@@ -156,8 +156,9 @@ func TestErrors(t *testing.T) {
 			"top share 10": func(r *Result) stats.Estimate { return r.TopShare(0, 0) },
 			"s80/s20":      func(r *Result) stats.Estimate { return r.QuintileRatio(0) },
 			"hill 5":       func(r *Result) stats.Estimate { e, _ := r.Hill(0, 1); return e },
+			"hill 50":      func(r *Result) stats.Estimate { e, _ := r.Hill(0, 2); return e },
 		}
-		truth := map[string]float64{"mean": c.mean, "gini": c.gini, "median": c.quantile(0.5), "shortfall 5": c.lowest(0.05), "hill 5": c.hill(0.05)}
+		truth := map[string]float64{"mean": c.mean, "gini": c.gini, "median": c.quantile(0.5), "shortfall 5": c.lowest(0.05), "hill 5": c.hill(0.05), "hill 50": c.hill(0.5)}
 		if c.lorenz != nil {
 			truth["lorenz 50"], truth["lorenz 90"], truth["top share 10"] = c.lorenz(0.5), c.lorenz(0.9), 1-c.lorenz(0.9)
 			truth["s80/s20"] = (1 - c.lorenz(0.8)) / c.lorenz(0.2)
