@@ -24,13 +24,14 @@ type Axis struct {
 type View struct {
 	Group  string // the group it is about; empty: about none
 	Option string // the choice it answers
+	YLabel string // of the y axis; empty: the chart's
 	Series []Series
 }
 
 // Series is a line, a band, or both.
 type Series struct {
 	Name  string
-	Label string    // written at the end of the line; empty: none
+	Label string    // written beside the line; empty: none
 	X, Y  []float64 // Y nil: a band alone
 	Lower []float64 // of the band or interval; nil: none
 	Upper []float64
@@ -47,6 +48,16 @@ func (v *View) empty() bool {
 			if s.Y != nil && finite(s.Y[k]) || s.Y == nil && finite(s.Lower[k]) && finite(s.Upper[k]) {
 				return false
 			}
+		}
+	}
+	return true
+}
+
+// dotted reports whether a view has dots alone.
+func (v *View) dotted() bool {
+	for i := range v.Series {
+		if !v.Series[i].Dots {
+			return false
 		}
 	}
 	return true

@@ -3,7 +3,6 @@ package report
 import (
 	"fmt"
 	"math"
-	"slices"
 
 	"cistern/output"
 )
@@ -25,26 +24,44 @@ func accuracy(r *Run, s *summary) Section {
 		section.Words = append(section.Words, "No simulated household left the grid on which the rule was solved.")
 	}
 	section.Words = append(section.Words, r.Warnings...)
-	if t := eulerErrors(r.Accuracy); len(t.Rows) > 0 {
-		section.Words = append(section.Words, "Euler-equation errors: by what share of consumption a household that follows the computed rule errs in a year, as a power of ten. "+
-			"They understate the error of the rule itself, which adds up over the years ahead.")
-		section.Tables = append(section.Tables, t)
+	if section.Tables = eulerErrors(r.Accuracy); len(section.Tables) > 0 {
+		section.Words = append(section.Words, "Euler-equation errors say by what share of consumption a household that follows the computed rule errs in a year, as a power of ten: "+
+			"10^−3 is one part in a thousand. They understate the error of the rule itself, which adds up over the years ahead.")
 	}
 	return section
 }
 
-// eulerErrors is the part of accuracy.csv about all ages.
-func eulerErrors(a *output.Table) Table {
-	t := Table{ID: "euler-errors", Title: "Euler-equation errors away from the borrowing limit", Head: []string{"states", "expectations by", "group", "mean", "99th percentile", "largest"},
-		Numbers: []bool{false, false, false, true, true, true}}
+// eulerNames are the words of accuracy.csv as a reader understands them.
+var eulerNames = map[string]string{"simulated": "where households are", "between_nodes": "between the nodes of the grid",
+	"solver": "the rule's own nodes", "fine": "the continuous shock"}
+
+// eulerErrors are the parts of accuracy.csv about all ages, a table a group.
+func eulerErrors(a *output.Table) []Table {
 	if a == nil {
-		return t
+		return nil
 	}
+	var groups []string
+	tables := map[string]*Table{}
 	for i := range a.Len() {
 		if !a.Column("age").IsMissing(i) || a.Column("mean_log10").IsMissing(i) {
 			continue
 		}
-		row := []string{a.Column("states").Strings[i], a.Column("quadrature").Strings[i], groupName(a.Column("group").Strings[i])}
+		g := a.Column("group").Strings[i]
+		t := tables[g]
+		if t == nil {
+			groups = append(groups, g)
+			t = &Table{ID: fmt.Sprintf("euler-errors-%d", len(groups)), Group: g, Title: "Euler-equation errors of " + groupName(g) + " away from the borrowing limit",
+				Head: []string{"taken", "against", "mean", "99th percentile", "largest"}, Numbers: []bool{false, false, true, true, true}}
+			tables[g] = t
+		}
+		var row []string
+		for _, c := range []string{"states", "quadrature"} {
+			text := a.Column(c).Strings[i]
+			if name := eulerNames[text]; name != "" {
+				text = name
+			}
+			row = append(row, text)
+		}
 		for _, c := range []string{"mean_log10", "p99_log10", "max_log10"} {
 			text := "–"
 			if x := floatAt(a.Column(c), i); finite(x) {
@@ -54,7 +71,11 @@ func eulerErrors(a *output.Table) Table {
 		}
 		t.Rows = append(t.Rows, row)
 	}
-	return t
+	var list []Table
+	for _, g := range groups {
+		list = append(list, *tables[g])
+	}
+	return list
 }
 
 // peak is the age at which mean wealth of a group is highest.
@@ -94,53 +115,4 @@ func provenance(r *Run) Section {
 	section.Words = []string{"The same scenario, seed and program give the same bytes."}
 	section.Tables = []Table{t}
 	return section
-}
-
-// Lead returns the answer in words: what the results say first.
-func Lead(r *Run) []string {
-	s := readSummary(r.Summary)
-	all := output.Everyone
-	age := peak(s, all)
-	if age == everyone {
-		return nil
-	}
-	var words []string
-	mean, _ := s.at(all, age, "assets", "mean", nan)
-	text := fmt.Sprintf("Wealth is highest at age %d: %s %s on average (95 %% interval %s to %s)", age, rounded(mean.Value, mean.StandardError), r.Currency,
-		rounded(mean.Lower, mean.StandardError), rounded(mean.Upper, mean.StandardError))
-	if median, ok := s.at(all, age, "assets", "percentile", 50); ok {
-		text += fmt.Sprintf(", and %s for the household in the middle", rounded(median.Value, median.StandardError))
-	}
-	words = append(words, text+".")
-	if gap, ok := s.at(all, age, "precautionary_assets", "mean", nan); ok {
-		share, _ := s.at(all, age, "precautionary_assets", "share_of_mean_assets", nan)
-		words = append(words, fmt.Sprintf("Of that mean, %s %s (standard error %s), or %s, is held because income is risky: so much less the same households would hold if every income came at its mean.",
-			rounded(gap.Value, gap.StandardError), r.Currency, rounded(gap.StandardError, gap.StandardError), percent(share.Value, share.StandardError)))
-	}
-	words = append(words, fragile(s)...)
-	return words
-}
-
-// fragile says how many households are close to the edge.
-func fragile(s *summary) []string {
-	all := output.Everyone
-	var words []string
-	if e, ok := s.at(all, everyone, "runway_months", "share_below", 3); ok {
-		words = append(words, fmt.Sprintf("%s of all households could live for less than three months on what they have (95 %% interval %s to %s).",
-			percent(e.Value, e.StandardError), percent(e.Lower, e.StandardError), percent(e.Upper, e.StandardError)))
-	}
-	worst, at := 0.0, everyone
-	for _, a := range s.ages {
-		if a >= s.ages[0]+35 {
-			break
-		}
-		if e, ok := s.at(all, a, "assets", "share_at_limit", nan); ok && e.Value > worst {
-			worst, at = e.Value, a
-		}
-	}
-	if at != everyone {
-		e, _ := s.at(all, at, "assets", "share_at_limit", nan)
-		words = append(words, fmt.Sprintf("Among the young the borrowing limit binds most often at age %d, for %s of households.", at, percent(e.Value, e.StandardError)))
-	}
-	return slices.Clip(words)
 }

@@ -37,7 +37,7 @@ func Compare(runs []*Run) (*Page, error) {
 				p.Groups = append(p.Groups, g)
 			}
 		}
-		p.Lead = append(p.Lead, r.Name+", "+r.Title+": "+strings.Join(Lead(r), " "))
+		p.Lead = append(p.Lead, r.Name+": "+strings.Join(Lead(r)[:min(1, len(Lead(r)))], ""))
 	}
 	for _, s := range []Section{sideBySide(runs, summaries, p.Groups), differences(runs)} {
 		if len(s.Charts)+len(s.Tables) > 0 {
@@ -60,7 +60,7 @@ func Compare(runs []*Run) (*Page, error) {
 }
 
 func single(r *Run) *Page {
-	p := &Page{Title: r.Title, Lead: Lead(r), Sections: Sections(r), Caution: r.Caution}
+	p := &Page{Title: r.Title, Subtitle: Subtitle(r), Lead: Lead(r), Sections: Sections(r), Caution: r.Caution}
 	if r.Summary != nil {
 		p.Groups = readSummary(r.Summary).groups
 	}
@@ -101,7 +101,53 @@ func sideBySide(runs []*Run, summaries []*summary, groups []string) Section {
 		}
 		section.add(c)
 	}
+	for k, g := range groups {
+		if t := keyFigures(runs, summaries, g); len(t.Rows) > 0 {
+			t.ID = fmt.Sprintf("key-figures-%d", k+1)
+			section.Tables = append(section.Tables, t)
+		}
+	}
 	return section
+}
+
+// keyFigures holds the figures of all ages, and those at the age of the highest
+// wealth, beside each other.
+func keyFigures(runs []*Run, summaries []*summary, group string) Table {
+	t := Table{Group: group, Title: "Key figures of " + groupName(group), Note: "With Monte Carlo standard errors.", Head: []string{""}, Numbers: []bool{false}}
+	for _, r := range runs {
+		t.Head, t.Numbers = append(t.Head, r.Name), append(t.Numbers, true)
+	}
+	add := func(name string, cell func(s *summary) string) {
+		row, known := []string{name}, false
+		for _, s := range summaries {
+			text := cell(s)
+			row, known = append(row, text), known || text != "–"
+		}
+		if known {
+			t.Rows = append(t.Rows, row)
+		}
+	}
+	figure := func(name string, at func(s *summary) int, variable, statistic string, level float64, share bool) {
+		add(name, func(s *summary) string { return s.cell(group, at(s), variable, statistic, level, share) })
+	}
+	highest := func(s *summary) int { return peak(s, group) }
+	all := func(*summary) int { return everyone }
+	money := ", " + runs[0].Currency
+	add("age of the highest mean wealth", func(s *summary) string {
+		if a := peak(s, group); a != everyone {
+			return fmt.Sprint(a)
+		}
+		return "–"
+	})
+	figure("mean wealth at that age"+money, highest, "assets", "mean", nan, false)
+	figure("median wealth at that age"+money, highest, "assets", "percentile", 50, false)
+	figure("precautionary part at that age"+money, highest, "precautionary_assets", "mean", nan, false)
+	figure("share of it in mean wealth", highest, "precautionary_assets", "share_of_mean_assets", nan, true)
+	figure("mean consumption, all ages"+money+" a year", all, "consumption", "mean", nan, false)
+	figure("Gini coefficient of assets, all ages", all, "assets", "gini", nan, false)
+	figure("at the borrowing limit, all ages", all, "assets", "share_at_limit", nan, true)
+	figure("runway under three months, all ages", all, "runway_months", "share_below", 3, true)
+	return t
 }
 
 // differences lists the settings in which runs differ.

@@ -48,7 +48,7 @@ func takenApart(r *Run, _ *summary) Section {
 		Caption: "Causes are removed one after the other, in this order; the same households live again on the same luck. A part depends on its place in the order."}
 	var premiums []string
 	for k, g := range groups {
-		table := Table{ID: fmt.Sprintf("parts-%d", k), Group: g, Title: "Parts of mean wealth of " + groupName(g) + " of all ages, " + r.Currency, Head: []string{"held because of", "amount", "share of mean wealth"},
+		table := Table{ID: fmt.Sprintf("parts-%d", k), Group: g, Title: "Parts of mean wealth of " + groupName(g) + " of all ages, " + r.Currency, Note: "With Monte Carlo standard errors.", Head: []string{"held because of", "amount", "share of mean wealth"},
 			Numbers: []bool{false, true, true}}
 		v := View{Group: g}
 		for i, s := range steps {
@@ -73,7 +73,7 @@ func takenApart(r *Run, _ *summary) Section {
 		section.Tables = append(section.Tables, table)
 	}
 	if len(premiums) > 0 {
-		section.Words = []string{"At the start of life households would give up so much of the consumption of a life without income risk to be rid of that risk: " + strings.Join(premiums, ", ") + "."}
+		section.Words = []string{"To be rid of income risk households would give up, at the start of life, this share of the consumption of a life without it: " + strings.Join(premiums, ", ") + "."}
 	}
 	section.add(c)
 	return section

@@ -8,8 +8,8 @@ import (
 
 // Size of a chart, in the units that text is measured in.
 const (
-	width    = 460.0
-	height   = 300.0
+	width    = 400.0
+	height   = 272.0
 	textSize = 13.0
 )
 
@@ -57,68 +57,35 @@ func advance(s string) float64 {
 // draw puts a view of a chart on a painter and returns where its values lie.
 func draw(p painter, c *Chart, v *View) box {
 	x0, x1, y0, y1 := v.extent()
+	if v.dotted() { // dots stand clear of the axis
+		x0, x1 = x0-0.5, x1+0.5
+	}
 	b := box{x: newScale(x0, x1, c.X, 6), y: newScale(y0, y1, c.Y, 5)}
 	left := 0.0
 	for _, t := range b.y.ticks {
 		left = math.Max(left, advance(b.y.tick(t, c.Y)))
 	}
 	b.y.from, b.y.to = height-42, 26
-	right, apart := 14.0, labelsApart(v, &b)
-	for _, s := range v.Series {
-		if s.Label != "" && apart {
-			right = math.Max(right, advance(s.Label)+10)
-		}
+	right := 14.0
+	if n := len(b.x.ticks); n > 0 { // the last tick's number stands half beyond the axis
+		right = math.Max(right, advance(b.x.tick(b.x.ticks[n-1], c.X))/2)
 	}
-	b.x.from, b.x.to = left+12, width-math.Min(right, width*0.4)
-	if !apart {
+	b.x.from, b.x.to = left+12, width-right
+	names := besideLines(v, &b)
+	if names == nil {
 		b.y.to += drawLegend(p, v)
 	}
-	drawAxes(p, c, &b)
+	drawAxes(p, c, v, &b)
 	for i := range v.Series {
 		drawBand(p, &v.Series[i], &b)
 	}
 	for i := range v.Series {
 		drawLine(p, &v.Series[i], &b)
 	}
-	if apart {
-		drawLabels(p, v, &b)
+	for _, n := range names {
+		p.text(point{n.left, n.bottom - textSize*0.25}, start, n.text, n.style)
 	}
 	return b
-}
-
-// lastValue is where the end of a line is labelled; NaN where it has none.
-func (s *Series) lastValue() float64 {
-	for k := len(s.X) - 1; k >= 0; k-- {
-		y := math.NaN()
-		switch {
-		case s.Y != nil:
-			y = s.Y[k]
-		case s.Upper != nil:
-			y = (s.Upper[k] + s.Lower[k]) / 2
-		}
-		if finite(y) {
-			return y
-		}
-	}
-	return math.NaN()
-}
-
-// labelsApart reports whether the lines end so far apart that names at their ends
-// say which is which.
-func labelsApart(v *View, b *box) bool {
-	var ends []float64
-	for i := range v.Series {
-		if y := v.Series[i].lastValue(); v.Series[i].Label != "" && finite(y) {
-			ends = append(ends, b.y.at(y))
-		}
-	}
-	slices.Sort(ends)
-	for i := 1; i < len(ends); i++ {
-		if ends[i]-ends[i-1] < textSize {
-			return false
-		}
-	}
-	return true
 }
 
 // drawLegend names the lines above the picture, each after a piece of it, and
@@ -142,7 +109,7 @@ func drawLegend(p painter, v *View) float64 {
 	return y - 32 + 20
 }
 
-func drawAxes(p painter, c *Chart, b *box) {
+func drawAxes(p painter, c *Chart, v *View, b *box) {
 	for _, t := range b.y.ticks {
 		y := b.y.at(t)
 		p.rule(point{b.x.from, y}, point{b.x.to, y}, t == 0)
@@ -155,11 +122,18 @@ func drawAxes(p painter, c *Chart, b *box) {
 		p.text(point{x, b.y.from + 18}, middle, b.x.tick(t, c.X), -2)
 	}
 	p.text(point{(b.x.from + b.x.to) / 2, height - 6}, middle, c.X.Label, -2)
-	p.text(point{2, 13}, start, c.Y.Label, -2)
+	label := c.Y.Label
+	if v.YLabel != "" {
+		label = v.YLabel
+	}
+	p.text(point{2, 13}, start, label, -2)
 }
 
+// hair is the height of a band that its line hides.
+const hair = 2.0
+
 func drawBand(p painter, s *Series, b *box) {
-	if s.Lower == nil || s.Dots {
+	if s.Lower == nil || s.Dots || s.Y != nil && s.thickest(b) < hair {
 		return
 	}
 	var up, down []point
@@ -179,6 +153,17 @@ func drawBand(p painter, s *Series, b *box) {
 		down = append(down, point{b.x.at(x), b.y.at(s.Lower[k])})
 	}
 	flush()
+}
+
+// thickest is the height of a band where it is highest.
+func (s *Series) thickest(b *box) float64 {
+	most := 0.0
+	for k := range s.X {
+		if finite(s.Lower[k]) && finite(s.Upper[k]) {
+			most = math.Max(most, b.y.at(s.Lower[k])-b.y.at(s.Upper[k]))
+		}
+	}
+	return most
 }
 
 func drawLine(p painter, s *Series, b *box) {
@@ -208,49 +193,4 @@ func drawLine(p painter, s *Series, b *box) {
 		p.dot(at, s.Style)
 	}
 	flush()
-}
-
-// drawLabels writes the names of the lines at their ends, pushed apart where they
-// would overlap.
-func drawLabels(p painter, v *View, b *box) {
-	type label struct {
-		y     float64
-		text  string
-		style int
-	}
-	var labels []label
-	for i := range v.Series {
-		s := &v.Series[i]
-		if s.Label == "" {
-			continue
-		}
-		if y := s.lastValue(); finite(y) {
-			labels = append(labels, label{b.y.at(y), s.Label, s.Style})
-		}
-	}
-	slices.SortStableFunc(labels, func(a, b label) int {
-		switch {
-		case a.y < b.y:
-			return -1
-		case a.y > b.y:
-			return 1
-		}
-		return 0
-	})
-	const apart = textSize + 2
-	for i := range labels { // downwards, then back up where the bottom is passed
-		if i > 0 {
-			labels[i].y = math.Max(labels[i].y, labels[i-1].y+apart)
-		}
-	}
-	for i := len(labels) - 1; i >= 0; i-- {
-		most := b.y.from
-		if i < len(labels)-1 {
-			most = labels[i+1].y - apart
-		}
-		labels[i].y = math.Min(labels[i].y, most)
-	}
-	for _, l := range labels {
-		p.text(point{b.x.to + 6, l.y + textSize*0.35}, start, l.text, l.style)
-	}
 }

@@ -37,8 +37,8 @@ func mobility(r *Run, _ *summary) Section {
 		cells[m][[2]int64{t.Column("from_quantile").Ints[i], t.Column("to_quantile").Ints[i]}] = e
 	}
 	for k, m := range order {
-		table := Table{ID: fmt.Sprintf("mobility-%d", k), Group: m.group, Head: []string{"from"}, Numbers: []bool{true},
-			Title: fmt.Sprintf("Of the %s in each of %d classes of wealth at age %d: share in each class at age %d", groupName(m.group), m.quantiles, m.from, m.to)}
+		table := Table{ID: fmt.Sprintf("mobility-%d", k), Group: m.group, Head: []string{"from class"}, Numbers: []bool{true},
+			Title: fmt.Sprintf("Classes of %s at age %d, and at age %d", groupName(m.group), m.from, m.to)}
 		for to := range m.quantiles {
 			table.Head, table.Numbers = append(table.Head, fmt.Sprintf("to %d", to+1)), append(table.Numbers, true)
 		}
@@ -51,11 +51,11 @@ func mobility(r *Run, _ *summary) Section {
 			table.Rows = append(table.Rows, row)
 		}
 		if e, ok := index[m]; ok {
-			table.Title += fmt.Sprintf(". Shorrocks index %s ± %s (0: nobody moves; 1: the start does not matter)", rounded(e.Value, e.StandardError), rounded(e.StandardError, e.StandardError))
+			table.Note = fmt.Sprintf("Shorrocks index %s ± %s; 0: nobody moves, 1: the start does not matter.", rounded(e.Value, e.StandardError), rounded(e.StandardError, e.StandardError))
 		}
 		section.Tables = append(section.Tables, table)
 	}
-	section.Words = []string{"Classes are quantiles of assets at each age among households alive at both, the poorest first."}
+	section.Words = []string{"A row shows where the households of a class are later. Classes are quantiles of assets at each age among households alive at both, the poorest first."}
 	return section
 }
 

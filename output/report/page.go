@@ -24,7 +24,10 @@ var styleSheet string
 //go:embed page.js
 var script string
 
-var page = template.Must(template.New("page").Parse(pageText))
+var page = template.Must(template.New("page").Funcs(template.FuncMap{"bound": bound}).Parse(pageText))
+
+// bound keeps a number and its per cent sign on one line.
+func bound(s string) string { return strings.ReplaceAll(s, " %", "\u00a0%") }
 
 // MostBytes is the size that a page keeps below: views of the groups named last are
 // left out, with a word about it, where there are too many.
@@ -33,6 +36,7 @@ const MostBytes = 1_400_000
 // Page is what a reader gets.
 type Page struct {
 	Title    string
+	Subtitle string // what the results come from, in a line
 	Lead     []string
 	Sections []Section
 	Caution  string

@@ -73,8 +73,9 @@ class Figure {
   }
 
   point(e) {
-    const r = this.elements.find(e => !e.hidden).getBoundingClientRect();
-    const at = (e.clientX - r.left) / r.width * 460;
+    const picture = this.elements.find(e => !e.hidden).querySelector("svg");
+    const r = picture.getBoundingClientRect();
+    const at = (e.clientX - r.left) / r.width * picture.viewBox.baseVal.width;
     let best = 0;
     this.places.forEach((p, k) => { if (Math.abs(x(this.view, p) - at) < Math.abs(x(this.view, this.places[best]) - at)) best = k; });
     this.move(best);
@@ -96,8 +97,7 @@ class Figure {
     this.at = k;
     if (this.cursor) this.cursor.replaceChildren();
     if (k < 0) {
-      this.read.textContent = "Point at the chart, or use the arrow keys, to read values.";
-      this.read.classList.add("idle");
+      this.read.textContent = "";
       this.plot.setAttribute("aria-valuenow", 0);
       this.plot.removeAttribute("aria-valuetext");
       return;
@@ -116,7 +116,6 @@ class Figure {
     }
     const text = this.chart.x.label + " " + show(at, this.chart.x) + ": " + words.join("; ");
     this.read.textContent = text;
-    this.read.classList.remove("idle");
     this.plot.setAttribute("aria-valuenow", k);
     this.plot.setAttribute("aria-valuetext", text);
   }
@@ -157,11 +156,14 @@ class Figure {
 }
 
 const figures = charts.map(c => new Figure(c));
-const tables = [...document.querySelectorAll(".scroll[data-group]")];
+const tables = [...document.querySelectorAll(".table[data-group]")];
 const choose = () => {
   for (const t of tables) t.hidden = !!group && t.dataset.group !== group.value;
   for (const f of figures) f.update();
 };
-if (group) group.addEventListener("change", choose);
+if (group) group.addEventListener("change", () => {
+  choose();
+  document.getElementById("said").textContent = "Charts and tables show " + group.selectedOptions[0].textContent;
+});
 choose();
 })();

@@ -36,11 +36,15 @@ var typeface = sync.OnceValue(func() font.Face {
 	return font.NewCache(liberation.Collection()).Lookup(font.Font{Typeface: "Liberation", Variant: "Sans", Weight: xfont.WeightNormal}, textSize)
 })
 
-// raster is a painter on pixels. Its origin is at the bottom.
-type raster struct{ c *vgimg.Canvas }
+// raster is a painter on pixels, bottom below the origin of a chart.
+type raster struct {
+	c      *vgimg.Canvas
+	bottom float64
+}
 
+// at turns a place around: the origin of pixels is at the bottom.
 func (r raster) at(p point) vg.Point {
-	return vg.Point{X: vg.Length(p.x), Y: vg.Length(height + margin/2 - p.y)}
+	return vg.Point{X: vg.Length(p.x), Y: vg.Length(r.bottom - p.y)}
 }
 
 func (r raster) path(p []point) vg.Path {
@@ -124,18 +128,18 @@ func (r raster) text(p point, a anchor, s string, style int) {
 	r.c.FillString(face, at, s)
 }
 
-// margin is the white around a picture in a file, and dpi how fine it is: twice the
-// pixels of a screen, for paper.
-const (
-	margin = 16.0
-	dpi    = 144
-)
+// dpi is how fine a picture is: more than twice as fine as a screen, for paper.
+const dpi = 168
 
 // writePNG draws a view as a PNG file.
 func writePNG(w io.Writer, c *Chart, v *View) error {
-	canvas := vgimg.NewWith(vgimg.UseWH(vg.Length(width+margin), vg.Length(height+margin)), vgimg.UseDPI(dpi), vgimg.UseBackgroundColor(color.White))
+	lines := heading(c, v)
+	h := height + above(lines) + margin
+	canvas := vgimg.NewWith(vgimg.UseWH(vg.Length(width+margin), vg.Length(h)), vgimg.UseDPI(dpi), vgimg.UseBackgroundColor(color.White))
 	canvas.Translate(vg.Point{X: margin / 2})
-	draw(raster{canvas}, c, v)
+	r := raster{canvas, height + margin/2}
+	drawHeading(r, lines)
+	draw(r, c, v)
 	_, err := vgimg.PngCanvas{Canvas: canvas}.WriteTo(w)
 	return err
 }

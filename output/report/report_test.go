@@ -86,8 +86,9 @@ func write(t *testing.T, runs ...*Run) string {
 // The page's own words come from the numbers: derived by hand from figures.
 func TestLead(t *testing.T) {
 	got := strings.Join(Lead(newRun()), "\n")
-	want := "Wealth is highest at age 50: 400,000 crown on average (95 % interval 399,960 to 400,040), and 400,000 for the household in the middle.\n" +
-		"Of that mean, 100,000 crown (standard error 4), or 25.0 %, is held because income is risky: so much less the same households would hold if every income came at its mean."
+	want := "Mean wealth is highest at age 50, at 400,000 crown (95 % interval 399,960 to 400,040); the household in the middle holds 400,000.\n" +
+		"Of that mean, 25.0 % is held because income is risky: 100,000 crown (95 % interval 99,992 to 100,008) that the same households would not hold if every income came at its mean.\n" +
+		"The intervals say how far these figures would move with other draws of luck. Whether the model is right they do not say."
 	if got != want {
 		t.Errorf("got\n%s\nwant\n%s", got, want)
 	}

@@ -33,6 +33,9 @@ func newScale(low, high float64, a Axis, n int) scale {
 		d := math.Max(math.Abs(low)*0.1, 1)
 		low, high = low-d, high+d
 	}
+	if a.Integer { // ages are short
+		n += 2
+	}
 	raw := (high - low) / float64(n)
 	power := math.Pow(10, math.Floor(math.Log10(raw)))
 	step := 10 * power

@@ -15,6 +15,7 @@ type Section struct {
 type Table struct {
 	ID      string
 	Title   string
+	Note    string // how to read it
 	Head    []string
 	Rows    [][]string
 	Numbers []bool // [column] aligned to the right
@@ -49,7 +50,7 @@ type Assumption struct{ Key, Value, Meaning string }
 func Sections(r *Run) []Section {
 	s := readSummary(r.Summary)
 	var list []Section
-	for _, make := range []func(*Run, *summary) Section{wealth, precaution, takenApart, flows, rules, concentration, percentiles, runway, propensity, transferred, mobility} {
+	for _, make := range []func(*Run, *summary) Section{wealth, precaution, takenApart, flows, rules, concentration, percentiles, runway, falls, propensity, transferred, mobility} {
 		if section := make(r, s); len(section.Charts)+len(section.Tables) > 0 {
 			list = append(list, section)
 		}

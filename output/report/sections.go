@@ -32,13 +32,12 @@ func money(what string, r *Run, yearly bool) Axis {
 // wealth shows how unequal wealth, consumption and income are at every age.
 func wealth(r *Run, s *summary) Section {
 	section := Section{ID: "wealth", Title: "Wealth over life"}
-	c := Chart{ID: "wealth-by-age", Title: "Half of all households lie in the dark band, most in the light one", Choice: "Variable", X: ageAxis,
-		Caption: "Percentiles across households of one age; the line is the median. Of every age only those who are still alive count."}
+	c := Chart{ID: "wealth-by-age", Title: "How far apart households of one age are", Choice: "Variable", X: ageAxis, Y: money("assets", r, false)}
+	var bands []string
 	for _, v := range []string{"assets", "consumption", "income"} {
 		all := s.levelsOf(v, "percentile")
-		c.Y = money("amount", r, false)
 		for _, g := range s.groups {
-			view := View{Group: g, Option: v}
+			view := View{Group: g, Option: v, YLabel: money(v, r, v != "assets").Label}
 			for i := range len(all) / 2 { // pairs around the median, the widest first
 				low, high := all[i], all[len(all)-1-i]
 				if math.Abs(low+high-100) > 1e-9 || low != 5 && low != 10 && low != 25 {
@@ -47,8 +46,11 @@ func wealth(r *Run, s *summary) Section {
 				if low == 5 && slices.Contains(all, 10) {
 					continue
 				}
-				view.Series = append(view.Series, s.ranged(g, v, "percentile", low, high).named(
-					fmt.Sprintf("%s to %s percentile", ordinal(low), ordinal(high)), "", 0))
+				name := fmt.Sprintf("%s to %s percentile", ordinal(low), ordinal(high))
+				view.Series = append(view.Series, s.ranged(g, v, "percentile", low, high).named(name, "", 0))
+				if !slices.Contains(bands, name) {
+					bands = append(bands, name)
+				}
 			}
 			view.Series = append(view.Series, s.byAge(g, v, "percentile", 50).values().named("median", "median", 0))
 			if mean := s.byAge(g, v, "mean", nan); len(mean.X) > 0 {
@@ -57,6 +59,13 @@ func wealth(r *Run, s *summary) Section {
 			c.Views = append(c.Views, view)
 		}
 	}
+	switch len(bands) {
+	case 1:
+		c.Caption = "The band reaches from the " + bands[0] + ". "
+	case 2:
+		c.Caption = "The light band reaches from the " + bands[0] + ", the dark one from the " + bands[1] + ". "
+	}
+	c.Caption += "Of every age those count who are still alive."
 	section.add(c)
 	share := Chart{ID: "at-the-limit", Title: "Households at the borrowing limit", X: ageAxis, Y: Axis{Label: "share of households", Share: true, Zero: true},
 		Caption: "Those at the limit consume all they have: a change of their income is a change of their consumption. The band is the 95 % interval."}
@@ -149,7 +158,7 @@ func concentration(_ *Run, s *summary) Section {
 	c := Chart{ID: "lorenz", Title: "Lorenz curves of the whole population", X: Axis{Label: "poorest share of households", Share: true, Zero: true},
 		Y: Axis{Label: "their share of the total", Share: true, Zero: true}, Caption: "The further a curve hangs below the straight line, the more unequal. Each variable is ordered by itself."}
 	for _, g := range s.groups {
-		t := Table{ID: "concentration-" + slug(g, s.groups), Group: g, Title: "Concentration among " + groupName(g) + " of all ages, with standard errors",
+		t := Table{ID: "concentration-" + slug(g, s.groups), Group: g, Title: "Concentration among " + groupName(g) + " of all ages", Note: "With Monte Carlo standard errors.",
 			Head: []string{"variable", "Gini", "top 10 %", "top 1 %", "top 0.1 %", "S80/S20"}, Numbers: []bool{false, true, true, true, true, true}}
 		view := View{Group: g, Series: []Series{{Name: "equality", Label: "equality", X: []float64{0, 1}, Y: []float64{0, 1}, Style: 4}}}
 		for i, v := range []string{"consumption", "income", "assets"} {
@@ -166,11 +175,11 @@ func concentration(_ *Run, s *summary) Section {
 			line.X, line.Y = append(line.X, 1), append(line.Y, 1)
 			line.Lower, line.Upper = append(line.Lower, 1), append(line.Upper, 1)
 			view.Series = append(view.Series, line.named(v, v, i))
-			row := []string{v, s.cell(g, v, "gini", nan, false)}
+			row := []string{v, s.cell(g, everyone, v, "gini", nan, false)}
 			for _, top := range []float64{10, 1, 0.1} {
-				row = append(row, s.cell(g, v, "top_share", top, true))
+				row = append(row, s.cell(g, everyone, v, "top_share", top, true))
 			}
-			t.Rows = append(t.Rows, append(row, s.cell(g, v, "s80_s20", nan, false)))
+			t.Rows = append(t.Rows, append(row, s.cell(g, everyone, v, "s80_s20", nan, false)))
 		}
 		if len(view.Series) > 1 {
 			c.Views = append(c.Views, view)
@@ -183,9 +192,9 @@ func concentration(_ *Run, s *summary) Section {
 	return section
 }
 
-// cell writes a figure of all ages with its standard error.
-func (s *summary) cell(group, variable, statistic string, level float64, share bool) string {
-	e, ok := s.at(group, everyone, variable, statistic, level)
+// cell writes a figure with its standard error.
+func (s *summary) cell(group string, age int, variable, statistic string, level float64, share bool) string {
+	e, ok := s.at(group, age, variable, statistic, level)
 	if !ok {
 		return "–"
 	}
@@ -206,12 +215,12 @@ func percentiles(r *Run, s *summary) Section {
 		var ages []int
 		if _, ok := s.at(g, everyone, "assets", "percentile", 50); ok {
 			ages = append(ages, everyone)
-			t.Head = append(t.Head, "all ages")
+			t.Head = append(t.Head, "all ages")
 		}
 		for _, a := range s.ages {
 			if a%10 == 0 || a == 25 && len(s.ages) > 0 && s.ages[0] == 25 {
 				ages = append(ages, a)
-				t.Head = append(t.Head, fmt.Sprintf("age %d", a))
+				t.Head = append(t.Head, fmt.Sprintf("age %d", a))
 			}
 		}
 		for _, p := range s.levelsOf("assets", "percentile") {
@@ -270,6 +279,31 @@ func runway(_ *Run, s *summary) Section {
 	}
 	section.add(c)
 	section.add(m)
+	return section
+}
+
+// falls shows how often consumption falls from one year to the next.
+func falls(_ *Run, s *summary) Section {
+	section := Section{ID: "falls", Title: "When consumption falls"}
+	for _, f := range []struct{ id, variable, title, caption string }{
+		{"falls-by-age", "consumption_change", "Households whose consumption falls from one year to the next", "By more than so much. Bands are 95 % intervals."},
+		{"falls-at-job-loss", "consumption_change_job_loss", "The same among those who lose their job in the year", "The fewer lose it at an age, the wider the 95 % interval."},
+	} {
+		c := Chart{ID: f.id, Title: f.title, X: ageAxis, Y: Axis{Label: "share of households", Share: true, Zero: true}, Caption: f.caption}
+		for _, g := range s.groups {
+			v := View{Group: g}
+			levels := slices.DeleteFunc(slices.Clone(s.levelsOf(f.variable, "share_below")), func(l float64) bool { return l >= 0 })
+			slices.Reverse(levels)
+			for i, l := range levels {
+				name := "by over " + strconv.FormatFloat(math.Round(-1e4*l)/100, 'g', -1, 64) + " %"
+				if line := s.byAge(g, f.variable, "share_below", l); len(line.X) > 0 {
+					v.Series = append(v.Series, line.named(name, name, i))
+				}
+			}
+			c.Views = append(c.Views, v)
+		}
+		section.add(c)
+	}
 	return section
 }
 

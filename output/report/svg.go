@@ -12,8 +12,12 @@ import (
 const styles = 5
 
 // svg is a painter that writes SVG. Marks have classes; colours come from a style
-// sheet.
-type svg struct{ b strings.Builder }
+// sheet. With letters of its own text becomes their outlines.
+type svg struct {
+	b       strings.Builder
+	letters *letters
+	rules   [2]string // paths of grid and axes, which are written as one
+}
 
 func number(x float64) string {
 	return strconv.FormatFloat(math.Round(x*10)/10, 'f', -1, 64)
@@ -55,11 +59,22 @@ func (s *svg) bar(a, b point, style int) {
 }
 
 func (s *svg) rule(a, b point, axis bool) {
-	class := "g"
+	k := 0
 	if axis {
-		class = "a"
+		k = 1
 	}
-	fmt.Fprintf(&s.b, `<path class="%s" d="%s"/>`, class, path([]point{a, b}, false))
+	s.rules[k] += path([]point{a, b}, false)
+}
+
+// String returns all marks, the rules below the others.
+func (s *svg) String() string {
+	var b strings.Builder
+	for k, class := range []string{"g", "a"} {
+		if s.rules[k] != "" {
+			fmt.Fprintf(&b, `<path class="%s" d="%s"/>`, class, s.rules[k])
+		}
+	}
+	return b.String() + s.b.String()
 }
 
 func (s *svg) text(p point, a anchor, t string, style int) {
@@ -70,13 +85,17 @@ func (s *svg) text(p point, a anchor, t string, style int) {
 	case style >= 0:
 		class = fmt.Sprintf("t f%d", style%styles)
 	}
-	fmt.Fprintf(&s.b, `<text class="%s" x="%s" y="%s" text-anchor="%s">%s</text>`, class, number(p.x), number(p.y),
-		[]string{"start", "middle", "end"}[a], html.EscapeString(t))
+	if s.letters != nil {
+		fmt.Fprintf(&s.b, `<g class="%s">%s</g>`, class, s.letters.set(p, a, t))
+		return
+	}
+	side := []string{"", ` text-anchor="middle"`, ` text-anchor="end"`}[a]
+	fmt.Fprintf(&s.b, `<text class="%s" x="%s" y="%s"%s>%s</text>`, class, number(p.x), number(p.y), side, html.EscapeString(t))
 }
 
 // markup draws a view as an SVG element for the page.
 func markup(c *Chart, v *View) (element string, b box) {
 	var s svg
 	b = draw(&s, c, v)
-	return fmt.Sprintf(`<svg viewBox="0 0 %s %s" aria-hidden="true" focusable="false">%s<g class="cursor"></g></svg>`, number(width), number(height), s.b.String()), b
+	return fmt.Sprintf(`<svg viewBox="0 0 %s %s" aria-hidden="true" focusable="false">%s<g class="cursor"></g></svg>`, number(width), number(height), s.String()), b
 }
