@@ -23,6 +23,7 @@ type Table struct {
 
 	// with an entitlement every node has a curve for each entitlement node
 	grid   *EntitlementGrid
+	axes   [MaxPillars]*axisGuide
 	stride int       // curves a node; 0 where all nodes have the same ones
 	kink   []float64 // [curve] where its limit stops binding
 	bound  []float64 // [curve] its lowest assets
