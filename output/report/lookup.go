@@ -83,21 +83,6 @@ func (s *summary) at(group string, age int, variable, statistic string, level fl
 	return e, ok && finite(e.Value)
 }
 
-// has reports whether the table has a figure of any group and age.
-func (s *summary) has(variable, statistic string, level float64) bool {
-	for _, g := range s.groups {
-		if _, ok := s.at(g, everyone, variable, statistic, level); ok {
-			return true
-		}
-		for _, a := range s.ages {
-			if _, ok := s.at(g, a, variable, statistic, level); ok {
-				return true
-			}
-		}
-	}
-	return false
-}
-
 // levelsOf lists the levels of a statistic, ascending.
 func (s *summary) levelsOf(variable, statistic string) []float64 {
 	return s.levels[variable+"\x00"+statistic]

@@ -227,7 +227,7 @@ func TestSections(t *testing.T) {
 
 // The same content gives the same bytes, and many groups do not make a large page.
 func TestPageSize(t *testing.T) {
-	if write(t, newRun()) != write(t, newRun()) {
+	if once, twice := write(t, newRun()), write(t, newRun()); once != twice {
 		t.Error("the same run gives two pages")
 	}
 	r := newRun()
