@@ -327,7 +327,7 @@ func TestStressFolder(t *testing.T) {
 // A stress that is stopped says so, and the same command runs it to the end.
 func TestStressInterrupt(t *testing.T) {
 	inStressFolder(t)
-	args := []string{"stress", "port.yaml", "layoffs.yaml", "--households", "400000", "--out", "r"}
+	args := []string{"stress", "port.yaml", "layoffs.yaml", "--households", "100000", "--out", "r"}
 	ctx, cancel := context.WithCancel(context.Background())
 	defer cancel()
 	go func() {
@@ -344,6 +344,18 @@ func TestStressInterrupt(t *testing.T) {
 	}
 	if _, err := os.Stat("r/run.json"); err == nil {
 		t.Error("a stopped stress is finished")
+	}
+	if status, stdout, stderr := cistern(t, args...); status != 0 || !strings.Contains(stdout, "Run dry") {
+		t.Errorf("status %d: %s", status, stderr)
+	}
+	if err := output.Verify("r"); err != nil {
+		t.Error(err)
+	}
+	if err := os.Remove("r/run.json"); err != nil { // as if it had been stopped again
+		t.Fatal(err)
+	}
+	if err := os.WriteFile("r/.unfinished.json", []byte(`{"scenario_sha256": "x", "version": "y", "files": ["stress.yaml"]}`), 0o666); err != nil {
+		t.Fatal(err)
 	}
 	args[4] = "5000"
 	if status, _, stderr := cistern(t, args...); status != exitFailed || !strings.Contains(stderr, "unfinished run of another scenario") {
