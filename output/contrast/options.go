@@ -41,9 +41,9 @@ const DefaultBudget = 1 << 30
 // or without.
 func (o *Options) bytesPerRow() int64 {
 	if o.Weighted {
-		return 240
+		return 170
 	}
-	return 180
+	return 120
 }
 
 // Held returns how many bytes the values held at a time will take, at most.
