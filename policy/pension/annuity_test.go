@@ -118,7 +118,12 @@ func TestInternalReturn(t *testing.T) {
 		t.Fatal(err)
 	}
 	near(t, "half of it lost over three years", r, math.Cbrt(0.5)-1, 1e-14)
-	for _, flow := range [][]float64{{1, 2}, {-1, 2, -1}, {0, 0}, nil} {
+	r, err = pension.InternalReturn([]float64{0, 0, -100, 55, 60.5, 0})
+	if err != nil {
+		t.Fatal(err)
+	}
+	near(t, "begun later", r, 0.1, 1e-14)
+	for _, flow := range [][]float64{{1, 2}, {-1, 2, -1}, {0, 0}, nil, {-1, math.NaN()}, {-1, inf()}} {
 		if r, err := pension.InternalReturn(flow); err == nil {
 			t.Errorf("%v has the return %v", flow, r)
 		}
@@ -143,6 +148,12 @@ func TestMortality(t *testing.T) {
 	near(t, "at 65 in 2005", s[65], 1-math.Sqrt(q(2000, 65)*q(2010, 65)), 1e-15)
 	near(t, "at 90 in 2030", s[90], 1-q(2010, 90)*math.Pow(0.99, 20), 1e-15)
 	near(t, "last age", s[100], 0, 0)
+	q0, q1 := income.LifeTable{Q: []float64{0}}, income.LifeTable{Q: []float64{0.4}}
+	none, err := pension.Mortality{Years: []int{2000, 2010}, Tables: []income.LifeTable{q0, q1}}.Survival(2003, 0, 1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	near(t, "between a table where nobody dies and one where four tenths do", none[0], 1-0.3*0.4, 1e-15)
 	old, err := m.Survival(1880, 50, 100)
 	if err != nil {
 		t.Fatal(err)

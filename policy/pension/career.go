@@ -1,8 +1,8 @@
 package pension
 
 import (
-	"errors"
 	"fmt"
+	"math"
 )
 
 // A Career is a certain working life: earnings are a multiple of average earnings
@@ -68,7 +68,8 @@ func (c *Career) validate(f *faults, firstAge, claimAge int) {
 // of the first year, minimum and assistance for a household without assets or other
 // income included; net is after income tax and the household's contributions; wealth
 // is the present value at the claim age of pensions for life over gross yearly
-// pre-retirement earnings. All amounts are at the rules of the year of claim.
+// pre-retirement earnings. Pre-retirement earnings are taxed by the rules of the
+// year of claim.
 type Adequacy struct {
 	Career           Career
 	ClaimAge         int
@@ -126,7 +127,9 @@ func (l *Law) Adequacy(c Career, claim int, rate float64) (Adequacy, error) {
 	a.GrossReplacement, a.NetReplacement = gross[0]/a.GrossEarnings, net[0]/a.NetEarnings
 	a.GrossWealth = PresentValue(l.cohort.Survival[claim:], gross, rate) / a.GrossEarnings
 	a.NetWealth = PresentValue(l.cohort.Survival[claim:], net, rate) / a.GrossEarnings
-	a.InternalReturn, _ = InternalReturn(flow) // NaN where there is none
+	if a.InternalReturn, err = InternalReturn(flow); err != nil {
+		a.InternalReturn = math.NaN() // nothing paid in, or nothing paid out
+	}
 	return a, nil
 }
 
@@ -147,7 +150,7 @@ func (l *Law) live(a *Adequacy, claim int) (final float64, flow []float64, err e
 		a.Entitlement = l.Next(t, a.Entitlement, y, works)
 	}
 	if a.YearsWorked == 0 {
-		return 0, nil, errors.Join(&FieldError{Field: "Career.Breaks", Value: "the whole career", Want: "at least a year of work"})
+		return 0, nil, &FieldError{Field: "Career.Breaks", Value: "the whole career", Want: "at least a year of work"}
 	}
 	return final, flow, nil
 }

@@ -92,7 +92,7 @@ type claims struct {
 func (c Claim) claims(r *resolver) claims {
 	at := func(field string, p Parameter) float64 { return r.at(field, p, 0) }
 	s, low, high := at("Claim.Statutory", c.Statutory), at("Claim.Earliest", c.Earliest), at("Claim.Latest", c.Latest)
-	if len(*r.f) > 0 {
+	if len(*r.f) > 0 { // no value for the birth year
 		return claims{}
 	}
 	first, last := float64(r.cohort.FirstAge), float64(r.cohort.FirstAge+len(r.cohort.Survival)-1)

@@ -56,6 +56,9 @@ func TestClaimAgeByBirthYear(t *testing.T) {
 
 func TestClaimFaults(t *testing.T) {
 	gap := byBirth(pension.Row{From: pension.Always, To: 1964, Value: 65}, pension.Row{From: 1970, To: pension.Forever, Value: 67})
+	r := rules()
+	r.Claim = pension.ClaimAt(100) // the last age will do
+	law(t, r, cohort(makeham(0, 0.001, 1.1, 20, 100)))
 	tests := []struct {
 		name string
 		c    pension.Claim

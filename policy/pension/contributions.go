@@ -15,7 +15,7 @@ type Contributions struct {
 	Ceiling    Parameter // money in the base year, positive; +Inf where there is none
 	Uprating   Index     // of the ceiling
 	Deductible Parameter // share of the employee's and pensioner's part that lowers taxable income, 0 to 1
-	OnBenefits bool      // the benefit in a year of job loss counts as earnings: contributions are paid on it and it is credited
+	OnBenefits bool      // the benefit in a year of job loss counts as earnings: both parts are paid on it and it is credited
 }
 
 // NoContributions returns contributions of nothing on earnings without a ceiling.

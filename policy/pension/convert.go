@@ -25,11 +25,11 @@ func (l *Law) Convert(before *Law, t int, e Entitlement) (Entitlement, error) {
 	if t >= c {
 		return out, fmt.Errorf("pension: entitlements are converted before the claim")
 	}
-	owed, kept := 0.0, [MaxPillars]bool{}
+	owed := 0.0
 	for i := range before.pillars {
 		old := &before.pillars[i]
 		if k := l.find(old.kind); k >= 0 {
-			out[k], kept[k] = e[i], true
+			out[k] = e[i]
 			continue
 		}
 		if e[i] == 0 {
@@ -44,7 +44,7 @@ func (l *Law) Convert(before *Law, t int, e Entitlement) (Entitlement, error) {
 		return out, nil
 	}
 	for k := range l.pillars {
-		if kept[k] || before.find(l.pillars[k].kind) >= 0 {
+		if before.find(l.pillars[k].kind) >= 0 {
 			continue
 		}
 		p := &l.pillars[k]

@@ -49,6 +49,23 @@ func TestConvert(t *testing.T) {
 	p, q = old.Parts(45, 45, a, 0), l.Parts(45, 45, b, 0)
 	near(t, "pension at 65", q.Pillars[0]/p.Pillars[0], 1, 1e-14)
 
+	// Out of a career average revalued with prices, which loses ground to wages.
+	prices := before
+	prices.Points = nil
+	prices.CareerAverage = &pension.CareerAverage{Accrual: constant(0.01), Revaluation: pension.WithPrices()}
+	lagging := law(t, prices, cohort(s))
+	l = law(t, after, cohort(s))
+	if b, err = l.Convert(lagging, 24, pension.Entitlement{0.3, 0}); err != nil {
+		t.Fatal(err)
+	}
+	a = pension.Entitlement{0.3, 0}
+	for t := 25; t < 47; t++ {
+		a, b = lagging.Next(t, a, 0, false), l.Next(t, b, 0, false)
+	}
+	p, q = lagging.Parts(47, 47, a, 0), l.Parts(47, 47, b, 0)
+	near(t, "pension at 67, in real money of 2024", p.Pillars[0], 0.3*1.12*lagging.Wage(24), 1e-9)
+	near(t, "the same from the account", q.Pillars[0]/p.Pillars[0], 1, 1e-14)
+
 	same, err := old.Convert(old, 24, e)
 	if err != nil || same != e {
 		t.Errorf("no change turns %v into %v, %v", e, same, err)
@@ -71,7 +88,7 @@ func TestConvert(t *testing.T) {
 	if _, err := law(t, after, other).Convert(old, 24, e); err == nil {
 		t.Error("another cohort")
 	}
-	if _, err := l.Convert(old, 45, e); err == nil {
+	if _, err := l.Convert(old, 47, e); err == nil {
 		t.Error("after the claim")
 	}
 }

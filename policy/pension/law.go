@@ -45,8 +45,9 @@ type accrued struct {
 	rate    []float64   // [c] the return that prices a drawdown; nil for life
 }
 
-// For returns the rules as a cohort meets them. Every fault is reported at once,
-// each as a *FieldError; years for which a table has no value are among them.
+// For returns the rules as a cohort meets them, which must not be changed any more.
+// Every fault is reported at once, each as a *FieldError; years for which a table
+// has no value are among them.
 func (r Rules) For(c Cohort) (*Law, error) {
 	if err := r.Validate(); err != nil {
 		return nil, err
@@ -58,10 +59,10 @@ func (r Rules) For(c Cohort) (*Law, error) {
 	c.Survival, c.Returns = slices.Clone(c.Survival), slices.Clone(c.Returns)
 	l := &Law{rules: r, cohort: c}
 	rs := &resolver{wages: r.Wages, cohort: c, f: &f}
-	l.fillWages(rs)
-	if l.claims = r.Claim.claims(rs); f != nil {
+	if l.fillWages(rs); f != nil {
 		return nil, f.err()
 	}
+	l.claims = r.Claim.claims(rs)
 	l.fillYears(rs)
 	l.fillPillars(rs)
 	if f != nil {
@@ -153,7 +154,12 @@ func (l *Law) fillPillars(r *resolver) {
 		if fund, ok := p.(*FundedAccount); ok {
 			fund.checkCredit(r, l.rules.Contributions)
 		}
-		l.pillars = append(l.pillars, l.accrue(r, p, m))
+		if len(*r.f) == 0 {
+			l.pillars = append(l.pillars, l.accrue(r, p, m))
+		}
+	}
+	if len(*r.f) > 0 {
+		return
 	}
 	if p := l.rules.FinalEarnings; p != nil {
 		l.final = accrued{claimed: make([]claimable, T), grow: make([]float64, T), index: r.chain("FinalEarnings.Indexation", p.Indexation), years: T}

@@ -47,6 +47,8 @@ func TestTableFaults(t *testing.T) {
 		{"overlap", table(false, pension.Row{From: 2000, To: 2009}, pension.Row{From: 2009, To: 2020}), []string{"Contributions.Employee.Table.Rows[1]: do not overlap: the one before it is for years 2000 to 2009"}},
 		{"overlap, linear", table(true, pension.Row{From: 2000, To: pension.Forever}, pension.Row{From: 2009, To: 2009}), []string{"Contributions.Employee.Table.Rows[1]: do not overlap: the one before it is for years from 2000"}},
 		{"not ascending", table(false, pension.Row{From: 2010, To: 2019}, pension.Row{From: 2000, To: 2009}), []string{"Contributions.Employee.Table.Rows[1]: ascending order: the one before it is for years 2010 to 2019"}},
+		{"all years twice", table(false, pension.Row{From: pension.Always, To: pension.Forever}, pension.Row{From: 2010, To: 2011}), []string{"Contributions.Employee.Table.Rows[1]: is years 2010 to 2011, want rows that do not overlap: the one before it is for all years"}},
+		{"a year twice", table(true, pension.Row{From: pension.Always, To: 2010}, pension.Row{From: 2010, To: 2010}), []string{"Contributions.Employee.Table.Rows[1]: is year 2010, want rows that do not overlap: the one before it is for years to 2010"}},
 		{"backwards", table(false, pension.Row{From: 2010, To: 2009}), []string{"Contributions.Employee.Table.Rows[0]: years in ascending order"}},
 		{"value", table(false, pension.Row{From: pension.Always, To: pension.Forever, Value: 1}), []string{"Contributions.Employee.Table.Rows[0].Value: is 1, want at least 0 and below 1"}},
 		{"empty", table(false), []string{"Contributions.Employee.Table.Rows: at least one row"}},

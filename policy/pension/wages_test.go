@@ -17,6 +17,17 @@ func TestWages(t *testing.T) {
 	}{{20, 30000}, {21, 30300}, {22, 30603}, {19, 30000 / 1.01}, {0, 30000 / math.Pow(1.01, 20)}} {
 		near(t, "average earnings", l.Wage(tt.t), tt.want, 1e-9)
 	}
+	// Growth of 2 % in 2010 and of 3 % in 2022 only: 2010 is the year after 2009.
+	r := rules()
+	r.Wages.Growth = pension.Parameter{Table: &pension.Table{Rows: []pension.Row{{From: pension.Always, To: 2009}, {From: 2010, To: 2010, Value: 0.02},
+		{From: 2011, To: 2021}, {From: 2022, To: 2022, Value: 0.03}, {From: 2023, To: pension.Forever}}}}
+	l = law(t, r, cohort(makeham(0, 0.001, 1.1, 20, 100)))
+	for _, tt := range []struct {
+		year int
+		want float64
+	}{{2009, 30000 / 1.02}, {2010, 30000}, {2021, 30000}, {2022, 30900}} {
+		near(t, "average earnings", l.Wage(tt.year-2000), tt.want, 1e-9)
+	}
 }
 
 // Derived: an index that mixes wages and prices with weight ω moves, under inflation
