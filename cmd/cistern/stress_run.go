@@ -194,13 +194,12 @@ func (r *stressRun) report(ctx context.Context) error {
 // does.
 func stressPage(sc *configs.Scenario, st *configs.Stress, of *report.Run, warnings []string, t *output.Table) *report.Page {
 	p := &report.StressRun{Title: title(sc, st), Currency: sc.Currency, Table: t, Assumptions: of.Assumptions, Provenance: of.Provenance, Warnings: warnings, Caution: caution}
-	for _, a := range newAnswers(sc, st, contrast.ReadTable(t)).all() {
-		for i, line := range a.lines {
-			if i == 0 {
-				line = a.who + ". " + line
-			}
-			p.Words = append(p.Words, line)
+	for k, a := range newAnswers(sc, st, contrast.ReadTable(t)).all() {
+		if k == 0 { // everybody
+			p.Words = append(p.Words, a.lines...)
+			continue
 		}
+		p.Hit = append(p.Hit, report.Section{ID: fmt.Sprintf("hit-%d", k), Title: a.who, Words: a.lines})
 	}
 	for _, s := range st.Settings() {
 		p.Event = append(p.Event, report.Assumption(s))

@@ -39,7 +39,7 @@ func Compare(runs []*Run) (*Page, error) {
 		}
 		p.Lead = append(p.Lead, r.Name+": "+strings.Join(Lead(r)[:min(1, len(Lead(r)))], ""))
 	}
-	for _, s := range []Section{sideBySide(runs, summaries, p.Groups), differences(runs)} {
+	for _, s := range []Section{keySection(runs, summaries, p.Groups), differences(runs), sideBySide(runs, summaries, p.Groups)} {
 		if len(s.Charts)+len(s.Tables) > 0 {
 			p.Sections = append(p.Sections, s)
 		}
@@ -101,6 +101,12 @@ func sideBySide(runs []*Run, summaries []*summary, groups []string) Section {
 		}
 		section.add(c)
 	}
+	return section
+}
+
+// keySection holds the key figures of every group.
+func keySection(runs []*Run, summaries []*summary, groups []string) Section {
+	section := Section{ID: "key-figures", Title: "Key figures"}
 	for k, g := range groups {
 		if t := keyFigures(runs, summaries, g); len(t.Rows) > 0 {
 			t.ID = fmt.Sprintf("key-figures-%d", k+1)
@@ -113,7 +119,7 @@ func sideBySide(runs []*Run, summaries []*summary, groups []string) Section {
 // keyFigures holds the figures of all ages, and those at the age of the highest
 // wealth, beside each other.
 func keyFigures(runs []*Run, summaries []*summary, group string) Table {
-	t := Table{Group: group, Title: "Key figures of " + groupName(group), Note: "With Monte Carlo standard errors.", Head: []string{""}, Numbers: []bool{false}}
+	t := Table{Group: group, Title: "Of " + groupName(group), Note: "With Monte Carlo standard errors.", Head: []string{""}, Numbers: []bool{false}}
 	for _, r := range runs {
 		t.Head, t.Numbers = append(t.Head, r.Name), append(t.Numbers, true)
 	}

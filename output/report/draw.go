@@ -91,7 +91,7 @@ func draw(p painter, c *Chart, v *View) box {
 // drawLegend names the lines above the picture, each after a piece of it, and
 // returns the height that takes.
 func drawLegend(p painter, v *View) float64 {
-	const sample, gap = 24.0, 16.0
+	const sample, gap = 24.0, 12.0
 	x, y := 2.0, 32.0
 	for i := range v.Series {
 		s := &v.Series[i]

@@ -84,7 +84,7 @@ func sheet() string {
 		c := paint[i].ink
 		return fmt.Sprintf("#%02x%02x%02x", c.R, c.G, c.B)
 	}
-	b.WriteString(".t{fill:#20242a}.q{fill:#5b616b}.g{stroke:#dcdad3;fill:none}.a{stroke:#8d9199;fill:none}" +
+	b.WriteString(".t{fill:#20242a;paint-order:stroke;stroke:#fff;stroke-width:3}.q{fill:#5b616b;stroke:none}.g{stroke:#dcdad3;fill:none}.a{stroke:#8d9199;fill:none}" +
 		".l{fill:none;stroke-width:2.25;stroke-linejoin:round}.i{fill-opacity:.16}.w{fill-opacity:.2}")
 	for i := range styles {
 		fmt.Fprintf(&b, ".l%d{stroke:%s", i, hex(i))

@@ -78,7 +78,15 @@ type groupChoice struct{ Name, Shown string }
 
 type sectionData struct {
 	Section
-	Charts []chartData
+	Charts  []chartData
+	Tables  []tableData
+	Options []string // of its tables
+}
+
+// tableData is a table of a section, hidden where the page first shows another.
+type tableData struct {
+	Table
+	Hidden bool
 }
 
 // chartData is a chart as the page and its script see it.
@@ -108,7 +116,7 @@ type viewData struct {
 
 type seriesData struct {
 	Name  string  `json:"name"`
-	X     numbers `json:"x"`
+	X     numbers `json:"x,omitempty"` // left out where it is that of the first series
 	Y     numbers `json:"y,omitempty"`
 	Lower numbers `json:"lower,omitempty"`
 	Upper numbers `json:"upper,omitempty"`
@@ -148,7 +156,15 @@ func (p *Page) render(groups []string) ([]byte, error) {
 	}
 	for _, s := range p.Sections {
 		section := sectionData{Section: s}
-		section.Tables = slices.DeleteFunc(slices.Clone(s.Tables), func(t Table) bool { return t.Group != "" && !slices.Contains(groups, t.Group) })
+		for _, t := range s.Tables {
+			if t.Group != "" && !slices.Contains(groups, t.Group) {
+				continue
+			}
+			if t.Option != "" && !slices.Contains(section.Options, t.Option) {
+				section.Options = append(section.Options, t.Option)
+			}
+			section.Tables = append(section.Tables, tableData{t, t.Option != "" && t.Option != section.Options[0]})
+		}
 		for i := range s.Charts {
 			c := newChartData(&s.Charts[i], groups)
 			if len(c.Views) > 0 {
@@ -213,7 +229,11 @@ func newChartData(c *Chart, groups []string) chartData {
 		view := viewData{Group: v.Group, Option: v.Option, SVG: template.HTML(element), First: len(d.Views) == 0,
 			Box: [8]float64{b.x.low, b.x.high, b.x.from, b.x.to, b.y.low, b.y.high, b.y.from, b.y.to}}
 		for _, s := range v.Series {
-			view.Series = append(view.Series, seriesData{s.Name, s.X, s.Y, s.Lower, s.Upper, s.Wide, s.Style % styles})
+			data := seriesData{s.Name, s.X, s.Y, s.Lower, s.Upper, s.Wide, s.Style % styles}
+			if len(view.Series) > 0 && slices.Equal(s.X, v.Series[0].X) {
+				data.X = nil
+			}
+			view.Series = append(view.Series, data)
 		}
 		d.Views = append(d.Views, view)
 	}

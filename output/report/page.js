@@ -3,6 +3,7 @@
 const root = document.documentElement;
 root.classList.add("live");
 const charts = JSON.parse(document.getElementById("data").textContent) || [];
+for (const c of charts) for (const v of c.views) for (const s of v.series) s.x ??= v.series[0].x || [];
 const group = document.getElementById("group");
 const ns = "http://www.w3.org/2000/svg";
 const pick = (tag, attributes, parent) => {
@@ -156,11 +157,18 @@ class Figure {
 }
 
 const figures = charts.map(c => new Figure(c));
-const tables = [...document.querySelectorAll(".table[data-group]")];
+const tables = [...document.querySelectorAll(".table")].map(e => ({e, option: document.getElementById(e.parentElement.id + "-option")}));
+const showTables = () => {
+  for (const {e, option} of tables) {
+    e.hidden = "group" in e.dataset && !!group && e.dataset.group !== group.value ||
+      "option" in e.dataset && !!option && e.dataset.option !== option.value;
+  }
+};
 const choose = () => {
-  for (const t of tables) t.hidden = !!group && t.dataset.group !== group.value;
+  showTables();
   for (const f of figures) f.update();
 };
+for (const option of new Set(tables.map(t => t.option))) if (option) option.addEventListener("change", showTables);
 if (group) group.addEventListener("change", () => {
   choose();
   document.getElementById("said").textContent = "Charts and tables show " + group.selectedOptions[0].textContent;

@@ -117,6 +117,12 @@ func (r raster) text(p point, a anchor, s string, style int) {
 	case end:
 		at.X -= face.Width(s)
 	}
+	if style >= 0 { // a rim of paper around the name of a line
+		r.c.SetColor(color.White)
+		for _, d := range []vg.Point{{X: 1}, {X: -1}, {Y: 1}, {Y: -1}, {X: 0.7, Y: 0.7}, {X: 0.7, Y: -0.7}, {X: -0.7, Y: 0.7}, {X: -0.7, Y: -0.7}} {
+			r.c.FillString(face, at.Add(d), s)
+		}
+	}
 	switch {
 	case style >= 0:
 		r.c.SetColor(paint[style%styles].ink)

@@ -214,10 +214,11 @@ func TestSections(t *testing.T) {
 	r.Summary = figures(40, func(add func(string, int, string, string, float64, float64, float64)) {
 		add(output.Everyone, -1, "assets", "lorenz", 50, 0.1, 0.01)
 		add(output.Everyone, 40, "runway_months", "share_below", 3, 0.2, 0.01)
+		add(output.Everyone, 40, "consumption_change", "share_below", -0.05, 0.2, 0.01)
 		add(output.Everyone, -1, "propensity_by_wealth", "mean", 1, 0.5, 0.01)
 	})
 	r.Extra = []Section{{ID: "extra", Title: "Extra", Words: []string{"more"}}}
-	if got, want := ids(r), "wealth precaution flows concentration percentiles runway propensity extra accuracy assumptions provenance"; got != want {
+	if got, want := ids(r), "wealth precaution flows concentration percentiles runway falls propensity extra accuracy assumptions provenance"; got != want {
 		t.Errorf("sections %s, want %s", got, want)
 	}
 	if text := write(t, &Run{Title: "nothing", Caution: "No advice."}); !strings.Contains(text, "No advice.") {
@@ -260,12 +261,33 @@ func TestCompare(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	series := p.Sections[0].Charts[0].Views[0].Series
+	section := func(id string) Section {
+		t.Helper()
+		for _, s := range p.Sections {
+			if s.ID == id {
+				return s
+			}
+		}
+		t.Fatalf("no section %s", id)
+		return Section{}
+	}
+	series := section("side-by-side").Charts[0].Views[0].Series
 	if len(series) != 2 || series[0].Name != "port" || series[1].Name != "port-67" {
 		t.Errorf("series %+v", series)
 	}
-	if rows := p.Sections[1].Tables[0].Rows; len(rows) != 1 || rows[0][1] != "0.03" || rows[0][2] != "0.04" {
+	if rows := section("differences").Tables[0].Rows; len(rows) != 1 || rows[0][1] != "0.03" || rows[0][2] != "0.04" {
 		t.Errorf("differences %v", rows)
+	}
+	// By hand from figures: 1000·20·20 at age 50, a quarter of it precautionary.
+	var key []string
+	for _, row := range section("key-figures").Tables[0].Rows {
+		key = append(key, strings.Join(row, " | "))
+	}
+	want := "age of the highest mean wealth | 50 | 50\nmean wealth at that age, crown | 400,000 ± 20 | 400,000 ± 20\n" +
+		"median wealth at that age, crown | 400,000 ± 30 | 400,000 ± 30\nprecautionary part at that age, crown | 100,000 ± 4 | 100,000 ± 4\n" +
+		"share of it in mean wealth | 25.0 % ± 0.4 % | 25.0 % ± 0.4 %"
+	if got := strings.Join(key, "\n"); got != want {
+		t.Errorf("key figures\n%s\nwant\n%s", got, want)
 	}
 	b.Currency = "shilling"
 	if _, err := Compare([]*Run{a, b}); err == nil {
@@ -397,5 +419,75 @@ func TestStressPage(t *testing.T) {
 	var b bytes.Buffer
 	if err := page.Write(&b); err != nil || strings.Count(b.String(), "<script") != 2 {
 		t.Errorf("%v, %d scripts", err, strings.Count(b.String(), "<script"))
+	}
+}
+
+// A line's name stands clear of every other line, nearest to its own; where lines lie
+// on each other there is none.
+func TestBesideLines(t *testing.T) {
+	line := func(name string, f func(x float64) float64) Series {
+		s := Series{Name: name, Label: name}
+		for x := 0.0; x <= 100; x += 4 {
+			s.X, s.Y = append(s.X, x), append(s.Y, f(x))
+		}
+		return s
+	}
+	b := box{x: scale{low: 0, high: 100, from: 50, to: 380}, y: scale{low: 0, high: 100, from: 230, to: 26}}
+	steep := View{Series: []Series{line("dockers", func(x float64) float64 { return x }), line("clerks", func(x float64) float64 { return 100 - x }), line("pilots", func(float64) float64 { return 50 })}}
+	names := besideLines(&steep, &b)
+	if len(names) != 3 {
+		t.Fatalf("%d names", len(names))
+	}
+	for i, n := range names {
+		nearest, at := math.Inf(1), -1
+		for k := range steep.Series {
+			for _, p := range trailOf(&steep.Series[k], &b) {
+				if d := n.distance(p); d < nearest {
+					nearest, at = d, k
+				}
+				if d := n.distance(p); k != i && d < clear {
+					t.Fatalf("%s is %.1f from %s", n.text, d, steep.Series[k].Name)
+				}
+			}
+		}
+		if n.text != steep.Series[i].Label || at != i || nearest > 2*off || nearest < near {
+			t.Errorf("%s stands %.1f from %s", n.text, nearest, steep.Series[at].Name)
+		}
+		if n.left < b.x.from || n.right > width || n.top < b.y.to || n.bottom > b.y.from {
+			t.Errorf("%s lies outside the picture: %+v", n.text, n)
+		}
+	}
+	same := View{Series: []Series{line("dockers", math.Sqrt), line("clerks", math.Sqrt)}}
+	if names := besideLines(&same, &b); names != nil {
+		t.Errorf("names %+v beside lines that are one", names)
+	}
+}
+
+// The table of percentiles is that of the age chosen; the page shows the first.
+func TestTableChoice(t *testing.T) {
+	text := write(t, newRun())
+	tables := regexp.MustCompile(`<div class="table" data-group="all" data-option="age ([0-9]+)"( hidden)?>`).FindAllStringSubmatch(text, -1)
+	if len(tables) != 4 || tables[0][1] != "30" || tables[0][2] != "" || tables[1][2] != " hidden" {
+		t.Errorf("tables %v", tables)
+	}
+}
+
+// The caption under a share of falls is about falls: levels below nothing alone.
+func TestFalls(t *testing.T) {
+	r := newRun()
+	r.Summary = figures(40, func(add func(string, int, string, string, float64, float64, float64)) {
+		for _, l := range []float64{-0.2, -0.05, 0, 0.1} {
+			for _, age := range []float64{40, 41} {
+				add(output.Everyone, int(age), "consumption_change", "share_below", l, 0.5+l, 0.01)
+			}
+		}
+	})
+	section := falls(r, readSummary(r.Summary))
+	if len(section.Charts) != 1 || len(section.Charts[0].Views) != 1 {
+		t.Fatalf("charts %+v", section.Charts)
+	}
+	series := section.Charts[0].Views[0].Series
+	if len(series) != 2 || series[0].Name != "by over 5 %" || series[0].Y[1] != 0.45 || series[1].Name != "by over 20 %" || series[1].Y[0] != 0.3 {
+		t.Errorf("series %+v", series)
 	}
 }

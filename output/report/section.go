@@ -7,6 +7,7 @@ type Section struct {
 	ID     string // letters, digits and hyphens
 	Title  string
 	Words  []string
+	Choice string // what a reader chooses among its tables, such as "Age"; empty: nothing
 	Charts []Chart
 	Tables []Table
 }
@@ -20,6 +21,7 @@ type Table struct {
 	Rows    [][]string
 	Numbers []bool // [column] aligned to the right
 	Group   string // shown where this group is chosen; empty: always
+	Option  string // the choice of its section that it answers; empty: shown always
 }
 
 // Run is what a page says about one run. Nil tables and empty lists are left out.

@@ -205,51 +205,60 @@ func (s *summary) cell(group string, age int, variable, statistic string, level 
 	return a.value(e.Value, e.StandardError) + " ± " + a.value(e.StandardError, e.StandardError)
 }
 
-// percentiles tells the percentiles of wealth with their intervals, of the whole
-// population and at some ages.
+// percentiles tells the percentiles with their intervals, of the whole population
+// and at some ages.
 func percentiles(r *Run, s *summary) Section {
-	section := Section{ID: "percentiles", Title: "Percentiles of wealth", Words: []string{
+	section := Section{ID: "percentiles", Title: "Percentiles", Choice: "Age", Words: []string{
 		"Under each percentile stands the 95 % interval that the number of simulated households leaves."}}
+	variables := []string{"assets", "consumption", "income"}
+	levels := s.levelsOf("assets", "percentile")
 	for _, g := range s.groups {
-		t := Table{ID: "percentiles-" + slug(g, s.groups), Title: "Assets of " + groupName(g) + ", " + r.Currency, Head: []string{"percentile"}, Numbers: []bool{false}, Group: g}
-		var ages []int
-		if _, ok := s.at(g, everyone, "assets", "percentile", 50); ok {
-			ages = append(ages, everyone)
-			t.Head = append(t.Head, "all ages")
-		}
-		for _, a := range s.ages {
-			if a%10 == 0 || a == 25 && len(s.ages) > 0 && s.ages[0] == 25 {
-				ages = append(ages, a)
-				t.Head = append(t.Head, fmt.Sprintf("age %d", a))
+		for _, a := range append([]int{everyone}, s.ages...) {
+			if a != everyone && a%10 != 0 {
+				continue
 			}
-		}
-		for _, p := range s.levelsOf("assets", "percentile") {
-			row, known := []string{ordinal(p)}, false
-			for _, a := range ages {
-				e, ok := s.at(g, a, "assets", "percentile", p)
-				if !ok {
-					row = append(row, "–")
-					continue
+			t := Table{Title: "Percentiles of " + groupName(g) + ", " + ageOf(a), Group: g, Option: ageOf(a), Head: []string{"percentile", "assets, " + r.Currency}, Numbers: []bool{false, true, true, true}}
+			for _, v := range variables[1:] {
+				t.Head = append(t.Head, v+", "+r.Currency+" a year")
+			}
+			for _, p := range levels {
+				row, known := []string{ordinal(p)}, false
+				for _, v := range variables {
+					text := s.ranging(g, a, v, p)
+					row, known = append(row, text), known || text != "–"
 				}
-				known = true
-				text := rounded(e.Value, e.StandardError)
-				if finite(e.Lower) && finite(e.Upper) {
-					text += "\n" + rounded(e.Lower, e.StandardError) + " to " + rounded(e.Upper, e.StandardError)
+				if known {
+					t.Rows = append(t.Rows, row)
 				}
-				row = append(row, text)
 			}
-			if known {
-				t.Rows = append(t.Rows, row)
+			if len(t.Rows) > 0 {
+				t.ID = fmt.Sprintf("percentiles-%s-%d", slug(g, s.groups), a-everyone)
+				section.Tables = append(section.Tables, t)
 			}
-		}
-		for range ages {
-			t.Numbers = append(t.Numbers, true)
-		}
-		if len(t.Rows) > 0 {
-			section.Tables = append(section.Tables, t)
 		}
 	}
 	return section
+}
+
+// ranging writes a percentile with its interval below it.
+func (s *summary) ranging(group string, age int, variable string, level float64) string {
+	e, ok := s.at(group, age, variable, "percentile", level)
+	if !ok {
+		return "–"
+	}
+	text := rounded(e.Value, e.StandardError)
+	if finite(e.Lower) && finite(e.Upper) {
+		text += "\n" + rounded(e.Lower, e.StandardError) + " to " + rounded(e.Upper, e.StandardError)
+	}
+	return text
+}
+
+// ageOf names an age.
+func ageOf(a int) string {
+	if a == everyone {
+		return "all ages"
+	}
+	return fmt.Sprintf("age %d", a)
 }
 
 // slug is a group's name in an id: its place, since a name may be anything.

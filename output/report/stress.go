@@ -10,8 +10,9 @@ import (
 
 // StressRun is what a page says about an event that households did not foresee.
 type StressRun struct {
-	Title       string   // of scenario and event
-	Words       []string // the answer
+	Title       string    // of scenario and event
+	Words       []string  // the answer
+	Hit         []Section // words about the groups that the event hits, if not all
 	Currency    string
 	Table       *output.Table // stress.parquet
 	Assumptions []Assumption
@@ -26,6 +27,7 @@ type StressRun struct {
 func StressPage(r *StressRun) *Page {
 	s := readStress(r.Table)
 	p := &Page{Title: r.Title, Lead: r.Words, Caution: r.Caution, Groups: s.groups}
+	p.Sections = append(p.Sections, r.Hit...)
 	for _, section := range []Section{s.dry(), s.runway(), s.money(r), s.shortfall(), s.after(r)} {
 		if len(section.Charts)+len(section.Tables) > 0 {
 			p.Sections = append(p.Sections, section)

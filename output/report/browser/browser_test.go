@@ -208,7 +208,7 @@ func (w *window) shown(chart string) []series {
 	return eval[[]series](w, fmt.Sprintf(`(() => {
 		const c = JSON.parse(document.getElementById("data").textContent).find(c => c.id === %q);
 		const k = [...document.getElementById(%q).querySelectorAll(".view")].findIndex(v => !v.hidden);
-		return c.views[k].series.map(s => ({Name: s.name, X: s.x, Y: s.y || []}));
+		return c.views[k].series.map(s => ({Name: s.name, X: s.x || c.views[k].series[0].x, Y: s.y || []}));
 	})()`, chart, chart))
 }
 
@@ -260,6 +260,12 @@ func TestNumbersAndChoices(t *testing.T) {
 	check("pilots", "consumption", "percentile", "median", 50)
 	if n := eval[int](w, `[...document.querySelectorAll("#percentiles .table")].filter(e => !e.hidden).length`); n != 1 {
 		t.Errorf("%d tables of percentiles are shown, want that of the group", n)
+	}
+	w.choose("percentiles-option", "age 50")
+	median := figures(t, summary, "pilots", "assets", "percentile", 50)[50]
+	cell := eval[string](w, `[...document.querySelectorAll("#percentiles .table:not([hidden]) tr")].find(r => r.cells[0].textContent === "50th").cells[1].textContent.split("\n")[0]`)
+	if shown, err := strconv.ParseFloat(strings.ReplaceAll(cell, ",", ""), 64); err != nil || math.Abs(shown-median) > 0.01*median {
+		t.Errorf("the median of pilots at 50 is shown as %s, want about %.0f", cell, median)
 	}
 	if n := eval[int](w, `[...document.querySelectorAll("figure")].filter(f => !f.hidden && [...f.querySelectorAll(".view")].filter(v => !v.hidden).length !== 1).length`); n != 0 {
 		t.Errorf("%d charts show no view or several", n)
