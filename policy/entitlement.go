@@ -32,7 +32,7 @@ type stencil struct {
 }
 
 // newEntitlementGrid returns a grid on the given axes. Where smooth, four nodes are
-// used if there are as many, but two between those of a window, and none from
+// used if there are as many, but two in the window of a single bend, and none from
 // beyond it.
 func newEntitlementGrid(axes [MaxPillars][]float64, bends [MaxPillars][]window, smooth, aligned bool) EntitlementGrid {
 	g := EntitlementGrid{Axes: axes, aligned: aligned}
@@ -59,11 +59,12 @@ func newEntitlementGrid(axes [MaxPillars][]float64, bends [MaxPillars][]window, 
 }
 
 // smoothRange returns the first and the last of the nodes x around cell i between
-// which no window lies, or false if the cell is in one.
+// which no window of a single bend lies, or false if the cell is in one.
 func smoothRange(x []float64, i int, bends []window) (from, to int, ok bool) {
 	to = len(x) - 1
 	for _, w := range bends {
 		switch {
+		case w.several:
 		case w.high <= x[i]:
 			for x[from] < w.high {
 				from++

@@ -43,7 +43,7 @@ func (h Household) entitlementGrids(o Options) []EntitlementGrid {
 			case frozen:
 				bends[p] = h.bends(p)
 			default:
-				h.carryBack(bends[p], t, p, middle[t])
+				bends[p] = h.carryBack(bends[p], t, p, middle[t])
 			}
 			axes[p] = entitlementNodes(reach[t].low[p], reach[t].high[p], reach[t].likely[p], middle[t][p], h.entitlementPoints(o, t, reached(t, p)))
 			seen[p] = nil
@@ -190,8 +190,11 @@ func (h Household) best(t int, mean, variance Entitlement) (m, v Entitlement) {
 }
 
 // A window is where, in some year, entitlements lie that will most likely end up
-// where pensions bend.
-type window struct{ low, high float64 }
+// where pensions bend. A single bend would have one as wide as blur.
+type window struct {
+	low, high, blur float64
+	several         bool // bends, which together make a curve
+}
 
 // bends returns where pensions bend in pillar p.
 func (h Household) bends(p int) []window {
@@ -202,7 +205,7 @@ func (h Household) bends(p int) []window {
 	slices.Sort(kinks)
 	var w []window
 	for _, x := range slices.Compact(kinks) {
-		w = append(w, window{x, x})
+		w = append(w, window{low: x, high: x})
 	}
 	return w
 }
@@ -212,16 +215,28 @@ const likely = 0.9
 
 // carryBack turns windows of year t+1 into those of year t: entitlements that the
 // credits of year t+1 take there, from the earnings of the highest likely persistent
-// node to those of the lowest. The other pillar is that of e.
-func (h Household) carryBack(windows []window, t, p int, e Entitlement) {
+// node to those of the lowest. The other pillar is that of e. Windows that overlap
+// become one: bends that close together, as where a threshold rises from year to year,
+// come to a curve.
+func (h Household) carryBack(windows []window, t, p int, e Entitlement) []window {
 	if len(windows) == 0 {
-		return
+		return nil
 	}
 	low, high := h.likelyEarnings(t + 1)
-	for i := range windows {
-		w := &windows[i]
-		w.low, w.high = h.before(w.low, high, t+1, p, e), h.before(w.high, low, t+1, p, e)
+	var all []window
+	for _, w := range windows {
+		next := window{low: h.before(w.low, high, t+1, p, e), high: h.before(w.high, low, t+1, p, e)}
+		next.blur = w.blur + math.Max(0, (next.high-next.low)-(w.high-w.low))
+		next.several = w.several
+		w = next
+		if n := len(all); n > 0 && w.low <= all[n-1].high {
+			all[n-1].high, all[n-1].blur = math.Max(all[n-1].high, w.high), math.Max(all[n-1].blur, w.blur)
+			all[n-1].several = true
+			continue
+		}
+		all = append(all, w)
 	}
+	return all
 }
 
 // likelyEarnings returns mean earnings of year t at the lowest and the highest
@@ -274,11 +289,11 @@ func (h Household) before(x, earnings float64, t, p int, e Entitlement) float64 
 	return high
 }
 
-// windowNodes is how many nodes a window gets.
+// windowNodes is how many nodes the window of a single bend gets.
 const windowNodes = 7
 
-// nodes returns the nodes that the window adds to those of an axis: none where it
-// has become so wide that they would be hardly closer than the axis's own.
+// nodes returns the nodes that the window adds to those of an axis: none where the
+// blur has become so wide that they would be hardly closer than the axis's own.
 func (w window) nodes(axis []float64) []float64 {
 	last := len(axis) - 1
 	if w.low == w.high {
@@ -289,13 +304,15 @@ func (w window) nodes(axis []float64) []float64 {
 		return nil
 	}
 	i, _ := slices.BinarySearch(axis, middle)
-	step := (w.high - w.low) / (windowNodes - 1)
-	if step > 0.6*(axis[i]-axis[i-1]) {
+	own := axis[i] - axis[i-1]
+	step := w.blur / (windowNodes - 1)
+	if step > 0.6*own {
 		return nil
 	}
-	x := make([]float64, windowNodes)
+	n := max(windowNodes, 1+int(math.Ceil((w.high-w.low)/math.Max(step, 0.3*own))))
+	x := make([]float64, n)
 	for k := range x {
-		x[k] = w.low + float64(k)*step
+		x[k] = w.low + (w.high-w.low)*float64(k)/float64(n-1)
 	}
 	return x
 }

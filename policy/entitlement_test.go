@@ -355,7 +355,7 @@ func TestEntitlementGrid(t *testing.T) {
 // (Lagrange), the first next to a window.
 func TestEntitlementWeights(t *testing.T) {
 	axes := [MaxPillars][]float64{{0, 1, 3, 4, 4.5, 5, 8, 9, 11, 15}, {-1, 0, 2, 5}}
-	bends := [MaxPillars][]window{{{4, 5}}}
+	bends := [MaxPillars][]window{{{low: 4, high: 5}}}
 	g := newEntitlementGrid(axes, bends, true, true)
 	for _, e := range []Entitlement{{0, 0}, {0.4, 1}, {2, -0.5}, {3.3, 4}, {4.2, 5}, {4.9, 0.1}, {6, 3}, {14, 1}} {
 		var b blend
