@@ -157,7 +157,7 @@ func checkStressPage(t *testing.T, dir string) {
 	if err1 != nil || err2 != nil || !bytes.Equal(first, again) {
 		t.Errorf("the page made again is another one: %v, %v", err1, err2)
 	}
-	for _, want := range []string{"Quayside in small: The quay is closed", `<p class="lead">Run dry: `, "Group dockers</h2>", "event.job_loss.probability.times", "what the usual rate is multiplied by", "no personal financial advice"} {
+	for _, want := range []string{"Quayside in small: The quay is closed", `<p class="lead">Run dry: `, ">Group dockers</h2>\n<p>Run dry: ", "event.job_loss.probability.times", "what the usual rate is multiplied by", "no personal financial advice"} {
 		if !bytes.Contains(first, []byte(want)) {
 			t.Errorf("the page has no %q", want)
 		}

@@ -94,6 +94,18 @@ func TestLead(t *testing.T) {
 	}
 }
 
+// Running text has fewer digits than a table: its last is worth twice the error or more.
+func TestBriefly(t *testing.T) {
+	for _, tt := range []struct{ got, want string }{
+		{briefly(201394.2, 1120), "201,000"}, {briefly(201394.2, 70), "201,400"}, {briefly(-5.57, 0.3), "−5.6"},
+		{share(0.19987, 0.0009), "20.0"}, {share(0.35166, 0.003), "35.2"}, {share(0.5, nan), "50.0"}, {share(0.35166, 0.03), "35"},
+	} {
+		if tt.got != tt.want {
+			t.Errorf("got %s, want %s", tt.got, tt.want)
+		}
+	}
+}
+
 // The policy of the page allows its own script and style, by their hashes, and
 // nothing else.
 func TestContentSecurityPolicy(t *testing.T) {

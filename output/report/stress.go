@@ -27,6 +27,9 @@ type StressRun struct {
 func StressPage(r *StressRun) *Page {
 	s := readStress(r.Table)
 	p := &Page{Title: r.Title, Lead: r.Words, Caution: r.Caution, Groups: s.groups}
+	if len(r.Words) > 0 {
+		p.Subtitle = "All households, held against the same years on the same luck without the event"
+	}
 	p.Sections = append(p.Sections, r.Hit...)
 	for _, section := range []Section{s.dry(), s.runway(), s.money(r), s.shortfall(), s.after(r)} {
 		if len(section.Charts)+len(section.Tables) > 0 {
