@@ -48,7 +48,7 @@ func advance(s string) float64 {
 		case strings.ContainsRune("mwMW%−", r):
 			w += 0.86
 		default:
-			w += 0.56
+			w += 0.6
 		}
 	}
 	return w * textSize
