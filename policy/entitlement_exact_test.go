@@ -116,6 +116,10 @@ func (l funded) Work(_ int, e Entitlement, earnings float64, _ bool) (float64, E
 
 func (l funded) Pension(_ int, e Entitlement, _ float64) float64 { return l.instalment * e[0] }
 
+func (l funded) GrossPension(t int, e Entitlement, final float64) float64 {
+	return l.Pension(t, e, final)
+}
+
 func (l funded) Bends(int) (_ [MaxPillars][]float64) { return }
 
 // With certain income and no limit that binds, forced saving in an actuarially fair

@@ -206,6 +206,9 @@ func (twoPillars) Work(_ int, e Entitlement, earnings float64, _ bool) (float64,
 	return earnings, Entitlement{e[0] + 0.015*y, e[1] + 0.035*y}
 }
 func (twoPillars) Pension(_ int, e Entitlement, _ float64) float64 { return 0.1 + e[0] + e[1] }
+func (l twoPillars) GrossPension(t int, e Entitlement, final float64) float64 {
+	return l.Pension(t, e, final)
+}
 
 // Under laws the certain twin earns what its household earns on average, and its
 // entitlement is a certain one.

@@ -42,8 +42,12 @@ func (l careerAverage) Work(_ int, e Entitlement, earnings float64, _ bool) (inc
 	return l.spendable(earnings), e
 }
 
-func (l careerAverage) Pension(_ int, e Entitlement, final float64) float64 {
-	return l.spendable(math.Max(l.least, l.flat+e[0]+l.final*final))
+func (l careerAverage) Pension(t int, e Entitlement, final float64) float64 {
+	return l.spendable(l.GrossPension(t, e, final))
+}
+
+func (l careerAverage) GrossPension(_ int, e Entitlement, final float64) float64 {
+	return math.Max(l.least, l.flat+e[0]+l.final*final)
 }
 
 func (l careerAverage) Bends(int) (x [MaxPillars][]float64) {
@@ -67,6 +71,9 @@ func (l noLaws) Work(_ int, e Entitlement, earnings float64, _ bool) (float64, E
 }
 func (l noLaws) Pension(_ int, _ Entitlement, final float64) float64 {
 	return float64(l.paid.FinalEarningsRate*final) + l.paid.Flat
+}
+func (l noLaws) GrossPension(t int, e Entitlement, final float64) float64 {
+	return l.Pension(t, e, final)
 }
 
 // referenceAccrual is the reference problem of the speed comparison at size Q: size S

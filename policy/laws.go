@@ -32,6 +32,9 @@ type Laws interface {
 	// that the persistent part supported in the last working year). The entitlement
 	// does not change any more.
 	Pension(t int, e Entitlement, final float64) float64
+	// GrossPension returns that pension before taxes and contributions, whatever tops
+	// it up included.
+	GrossPension(t int, e Entitlement, final float64) float64
 	// Bends returns, pillar by pillar and in any order, the entitlements at which
 	// Pension bends in year t, from the claim age on. (Where Work bends in earnings
 	// need not be known: the shocks of earnings smooth it.)

@@ -122,15 +122,16 @@ func (h Household) lowest(t, node int, e Entitlement, bound func(next Entitlemen
 			net, income = x, y
 		}
 	}
-	switch {
-	case h.Limit.Kind == LimitNatural && h.Working(t):
+	natural := h.Limit.Kind == LimitNatural && h.Working(t)
+	if !natural || h.Laws != nil {
+		h.forEachOutcome(t, node, e, consider)
+	}
+	if natural && (h.Laws == nil || h.Earnings.TransitorySD(t) > 0 && h.Earnings.JobLossIn(t).Probability < 1) {
 		y, next := h.Earnings.Infimum(t), e
 		if h.Laws != nil && !math.IsInf(y, -1) {
-			y, next = h.Laws.Work(t, e, y, h.Earnings.JobLossIn(t).Probability < 1)
+			y, next = h.Laws.Work(t, e, y, true)
 		}
 		consider(y, next, 1)
-	default:
-		h.forEachOutcome(t, node, e, consider)
 	}
 	return net, income
 }

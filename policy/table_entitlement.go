@@ -70,17 +70,7 @@ func (tb *Table) evaluateAccrued(node []uint8, cash, consumption, propensity []f
 	copy(all[:], entitlement)
 	for from := 0; from < len(cash); from += chunk {
 		to := min(from+chunk, len(cash))
-		nodes := firstNode[:to-from]
-		if node != nil {
-			nodes = node[from:to]
-		}
-		for p, g := range tb.axes {
-			if g.terms > 1 {
-				tb.weigh(p, all[p][from:to], &s)
-			}
-		}
-		tb.combine(nodes, &s)
-		tb.findKinks(&s, to-from)
+		tb.locateTerms(node, all, from, to, &s)
 		c, d := consumption[from:to], propensity
 		clear(c)
 		if d != nil {
@@ -92,6 +82,21 @@ func (tb *Table) evaluateAccrued(node []uint8, cash, consumption, propensity []f
 		}
 		tb.holdToLimit(&s, cash[from:to], c, d)
 	}
+}
+
+// locateTerms sets the terms of the states from … to−1.
+func (tb *Table) locateTerms(node []uint8, entitlement [MaxPillars][]float64, from, to int, s *accruing) {
+	nodes := firstNode[:to-from]
+	if node != nil {
+		nodes = node[from:to]
+	}
+	for p, g := range tb.axes {
+		if g.terms > 1 {
+			tb.weigh(p, entitlement[p][from:to], s)
+		}
+	}
+	tb.combine(nodes, s)
+	tb.findKinks(s, to-from)
 }
 
 // combine makes the terms of the pillars those of their products.
@@ -209,6 +214,29 @@ func (tb *Table) addTerm(s *accruing, t int, cash, consumption, propensity []flo
 	for i, w := range weight {
 		q, u := &tb.cubic[piece[i&(chunk-1)]], dist[i&(chunk-1)]
 		propensity[i] += w * (q[1] + u*(2*q[2]+3*u*q[3]))
+	}
+}
+
+// Lowest sets the lowest assets, in money, that households may hold at the end of the
+// year at states as in Evaluate; −Inf without limit.
+func (tb *Table) Lowest(node []uint8, lowest []float64, entitlement ...[]float64) {
+	if tb.grid == nil {
+		for i := range lowest {
+			j := 0
+			if node != nil {
+				j = int(node[i])
+			}
+			lowest[i] = tb.bound[j]
+		}
+		return
+	}
+	var s accruing
+	var all [MaxPillars][]float64
+	copy(all[:], entitlement)
+	for from := 0; from < len(lowest); from += chunk {
+		to := min(from+chunk, len(lowest))
+		tb.locateTerms(node, all, from, to, &s)
+		copy(lowest[from:to], s.bound[:])
 	}
 }
 

@@ -38,9 +38,12 @@ type valueCurve struct {
 	bound, atBound       float64   // below cash[0] the limit binds: V = u(k·(m − bound)) + atBound
 }
 
-// NewValue evaluates a rule with consumption scaled by k > 0; 1: as it is. It takes
-// about as long as solving.
+// NewValue evaluates a rule without laws with consumption scaled by k > 0; 1: as it is.
+// It takes about as long as solving.
 func NewValue(r *Rule, k float64) *Value {
+	if r.Household.Laws != nil {
+		panic("policy: the value of a rule under laws is not reckoned")
+	}
 	T := len(r.Curves)
 	v := &Value{Rule: r, Scale: k, horizon: make([]float64, T+1), curves: make([][]valueCurve, T)}
 	h := &r.Household

@@ -53,6 +53,13 @@ func (c *Claimant) Pension(t int, e Entitlement, final float64) float64 {
 	return c.law.Resources(t, Receipts{Pension: c.law.Pension(c.claim, t, e, final), Claimed: true}, 0)
 }
 
+// GrossPension returns the pension of year t from the claim on before taxes and
+// contributions, with what tops it up.
+func (c *Claimant) GrossPension(t int, e Entitlement, final float64) float64 {
+	p := c.law.Pension(c.claim, t, e, final)
+	return p + c.law.years[t].minimum.at(p)
+}
+
 // Bends returns the entitlements at which Pension may bend in year t, pillar by
 // pillar.
 func (c *Claimant) Bends(t int) [MaxPillars][]float64 {

@@ -11,20 +11,15 @@ import (
 	"cistern/policy/pension"
 )
 
-// dockers live from 25 to 85 and work until 65 at average earnings of 30000 crowns,
-// with the shocks of the example town.
-func dockers(t *testing.T, shocks bool) policy.Household {
+// dockers live from 25 to 85 and work until 65 at mean earnings of 30000 crowns.
+func dockers(t *testing.T) policy.Household {
 	t.Helper()
-	p := income.Process{FirstAge: 25, Profile: slices.Repeat([]float64{30000}, 40), Form: income.Level, Chain: income.Degenerate(), Initial: []float64{1},
-		Transitory: income.Transitory{Nodes: 1}}
-	if shocks {
-		chain, err := income.Rouwenhorst{Points: 5}.Discretise(income.AR1{Autocorrelation: 0.95, InnovationSD: 0.15})
-		if err != nil {
-			t.Fatal(err)
-		}
-		p.Form, p.Chain, p.Initial = income.Log, chain, chain.Stationary()
-		p.Transitory, p.JobLoss = income.Transitory{SD: 0.2, Nodes: 21}, income.JobLoss{Probability: 0.05, BenefitRate: 0.5}
+	chain, err := income.Rouwenhorst{Points: 5}.Discretise(income.AR1{Autocorrelation: 0.95, InnovationSD: 0.15})
+	if err != nil {
+		t.Fatal(err)
 	}
+	p := income.Process{FirstAge: 25, Profile: slices.Repeat([]float64{30000}, 40), Chain: chain, Initial: chain.Stationary(),
+		Transitory: income.Transitory{SD: 0.2, Nodes: 21}, JobLoss: income.JobLoss{Probability: 0.05, BenefitRate: 0.5}}
 	e, err := p.Build()
 	if err != nil {
 		t.Fatal(err)
@@ -40,7 +35,7 @@ func dockers(t *testing.T, shocks bool) policy.Household {
 // claiming makes rules the laws of dockers.
 func claiming(t *testing.T, h *policy.Household, r pension.Rules) {
 	t.Helper()
-	c, err := law(t, r, pension.Cohort{Birth: 1990, FirstAge: 25, Survival: h.Survival, Return: h.Return}).Claiming(40, pension.Entitlement{}, pension.Entitlement{})
+	c, err := law(t, r, pension.Cohort{Birth: 1990, FirstAge: 25, Survival: h.Survival, Return: h.Return}).Claimant(40, pension.Entitlement{}, pension.Entitlement{}, 30000)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -86,31 +81,6 @@ func live(rule *policy.Rule, random *rand.Rand, yield func(t int, s policy.State
 	}
 }
 
-// With certain income and no limit that binds, an actuarially fair funded account
-// displaces free saving one for one: consumption is the same with it and without
-// (derived from the budget: contributions and payments have the same present value).
-// Where the limit binds it is not.
-func TestFundedAccountDisplacesSaving(t *testing.T) {
-	consume := func(credit float64, limit policy.LimitKind) (consumption []float64) {
-		h := dockers(t, false)
-		h.Limit.Kind = limit
-		r := rules()
-		r.Contributions.Employee = constant(credit)
-		r.FundedAccount = &pension.FundedAccount{Credit: constant(credit)}
-		claiming(t, &h, r)
-		live(solveRule(t, h), rand.New(rand.NewSource(1)), func(_ int, _ policy.State, _, c float64) { consumption = append(consumption, c) })
-		return consumption
-	}
-	without, with := consume(0, policy.LimitNatural), consume(0.1, policy.LimitNatural)
-	for year := range without {
-		near(t, "consumption", with[year], without[year], 1e-8*without[year])
-	}
-	bound := consume(0.3, policy.LimitAmount)
-	if !(bound[0] < 0.9*consume(0, policy.LimitAmount)[0]) {
-		t.Errorf("at the limit a household that must save 30 %% consumes %.0f at first, want clearly less than one that need not", bound[0])
-	}
-}
-
 // Under rules of every kind the rule is accurate at the states of a simulation:
 // Euler-equation errors judged with a continuous shock are 10^−4.5 on average, as
 // required of the solver; the maximum is next to a bend of the pension.
@@ -142,7 +112,7 @@ func TestRulesAreSolvedAccurately(t *testing.T) {
 		}},
 	} {
 		t.Run(tt.name, func(t *testing.T) {
-			h := dockers(t, true)
+			h := dockers(t)
 			r := rules()
 			taxed(&r)
 			tt.set(&r)
@@ -169,13 +139,4 @@ func TestRulesAreSolvedAccurately(t *testing.T) {
 			}
 		})
 	}
-}
-
-// What depends on assets is refused, not ignored.
-func TestClaimingFaults(t *testing.T) {
-	h := dockers(t, false)
-	r := rules()
-	r.Floor = &pension.ConsumptionFloor{Amount: constant(5000)}
-	_, err := law(t, r, pension.Cohort{Birth: 1990, FirstAge: 25, Survival: h.Survival}).Claiming(40, pension.Entitlement{}, pension.Entitlement{})
-	wantFaults(t, err, "Floor: depends on assets")
 }
