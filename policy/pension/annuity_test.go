@@ -168,6 +168,6 @@ func TestMortality(t *testing.T) {
 	if c, p := pension.Annuity(s, 0, 0), pension.Annuity(period, 0, 0); !(c > p+5) {
 		t.Errorf("the cohort of 1940 lives %v years, its period table says %v", c, p)
 	}
-	_, err = pension.Mortality{Years: []int{2000, 1990}, Tables: []income.LifeTable{{Q: []float64{0.1}}, {Q: []float64{2}}}, Improvement: 1}.Survival(1940, 0, 5)
+	_, err = pension.Mortality{Years: []int{2000, 2000}, Tables: []income.LifeTable{{Q: []float64{0.1}}, {Q: []float64{2}}}, Improvement: 1}.Survival(1940, 0, 5)
 	wantFaults(t, err, "Improvement: is 1", "Tables[0]: every age from 0 to 4", "Years[1]: above 2000", "Tables[1]: every age", "Tables[1].Q[0] (age 0): is 2")
 }

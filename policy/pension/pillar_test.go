@@ -228,8 +228,8 @@ func TestFinalEarningsAndFlat(t *testing.T) {
 	_, d := l.PensionSlopes(45, 50, pension.Entitlement{}, 50000, pension.Above)
 	near(t, "slope in final earnings", d, 0.4, 0)
 	defer func() {
-		if recover() == nil {
-			t.Error("a claim in a year in which nobody can claim")
+		if got := recover(); got != "pension: claim in year 46, outside 45 to 45" {
+			t.Errorf("a claim in a year in which nobody can claim: %v", got)
 		}
 	}()
 	l.Pension(46, 47, pension.Entitlement{}, 50000)
