@@ -2,9 +2,11 @@ package configs
 
 import (
 	"slices"
+	"strings"
 
 	"cistern/policy"
 	"cistern/sim"
+	"cistern/sim/decomposition"
 )
 
 // Experiments says which experiments a run makes beside its panel; nil: not made.
@@ -32,26 +34,44 @@ func readExperiments(s *section, sc *Scenario) {
 		return
 	}
 	sc.Experiments.Transfer = readTransfer(e, sc)
-	sc.Experiments.Decomposition = readDecomposition(e)
+	sc.Experiments.Decomposition = readDecomposition(e, sc)
 	e.done()
 }
 
-func readDecomposition(e *section) *Decomposition {
+func readDecomposition(e *section, sc *Scenario) *Decomposition {
 	s := e.optional("decomposition", "mean wealth taken apart: how much is held because income is risky, life of uncertain length, borrowing limited")
 	if s == nil {
 		return nil
 	}
 	causes := []string{"income_risk", "longevity_risk", "borrowing_limit"}
-	d := &Decomposition{Order: s.words("order", "what is removed, one after the other; longevity_risk after income_risk", causes, causes...)}
+	d := &Decomposition{Order: s.words("order", "what is removed, one after the other", causes, causes...)}
 	if v := s.n.get("order"); v != nil && v.kind == list && len(v.values) == 0 {
 		s.at("order", "is empty, want at least one of income_risk, longevity_risk and borrowing_limit")
 	}
-	if i := slices.Index(d.Order, "longevity_risk"); i >= 0 && !slices.Contains(d.Order[:i], "income_risk") {
-		s.at("order", "removes longevity_risk before income_risk, want it after")
+	for _, g := range sc.Groups {
+		if g.Household.Utility == nil {
+			continue // not built: at fault already
+		}
+		if err := decomposition.Feasible(g.Household, d.Causes()); err != nil {
+			s.at("order", "%s, in group %s; leave it out, or remove it later", strings.ReplaceAll(err.Error(), "\n", "; "), g.Name)
+			break
+		}
 	}
 	d.Households = s.integer(number{key: "households", meaning: "the first so many households live again without each cause; 0: all", in: within(0, sim.Unit*1_000_000), def: 0})
 	s.done()
 	return d
+}
+
+// Causes returns Order as the experiment knows it.
+func (d *Decomposition) Causes() (order []decomposition.Cause) {
+	for _, name := range d.Order {
+		for c := decomposition.IncomeRisk; c <= decomposition.BorrowingLimit; c++ {
+			if c.String() == name {
+				order = append(order, c)
+			}
+		}
+	}
+	return order
 }
 
 func readTransfer(e *section, sc *Scenario) *Transfer {

@@ -49,7 +49,7 @@ func TestExperiments(t *testing.T) {
 func TestExperimentFaults(t *testing.T) {
 	for _, tt := range []struct{ text, want string }{
 		{"experiments: {decomposition: {order: [income]}}", "experiments.decomposition.order: has income, want each of income_risk, longevity_risk or borrowing_limit at most once"},
-		{"experiments: {decomposition: {order: [longevity_risk, income_risk]}}", "experiments.decomposition.order: removes longevity_risk before income_risk, want it after"},
+		{"experiments: {decomposition: {order: [longevity_risk, 3]}}", "experiments.decomposition.order: has 3, want each of"},
 		{"experiments: {decomposition: {order: [income_risk, income_risk]}}", "experiments.decomposition.order"},
 		{"experiments: {decomposition: {order: []}}", "experiments.decomposition.order: is empty, want at least one of"},
 		{"experiments: {decomposition: {households: -1}}", "experiments.decomposition.households: is -1"},
@@ -98,6 +98,23 @@ func TestExperimentsInSchema(t *testing.T) {
 	transfer := schema.Properties.Experiments.Properties.Transfer
 	if !reflect.DeepEqual(transfer.Required, []string{"amount"}) || transfer.Properties.Ages.Default != nil || transfer.Properties.Years.Default != 5.0 {
 		t.Errorf("transfer in the schema: %+v", transfer)
+	}
+}
+
+// A debt that an estate cannot bear is refused before the run, and allowed once death
+// is known.
+func TestDecompositionFeasible(t *testing.T) {
+	order := func(o string) error {
+		_, err := Builtin("quayside-patience", []Override{{"experiments", "{decomposition: {order: " + o + "}}"}})
+		return err
+	}
+	err := order("[borrowing_limit, longevity_risk]")
+	want := "experiments.decomposition.order: borrowing_limit cannot be removed: Bequest.Shift: is 20000, want at least "
+	if err == nil || !IsFault(err) || !strings.Contains(err.Error(), want) || strings.Contains(err.Error(), "\n") {
+		t.Errorf("%v\nwant %q in it", err, want)
+	}
+	if err := order("[longevity_risk, borrowing_limit]"); err != nil {
+		t.Error(err)
 	}
 }
 

@@ -11,6 +11,7 @@ const chunk = 1024
 type crew struct {
 	pl   *plan
 	want Columns
+	only func(id int64) bool // nil: everybody
 	out  Block
 
 	members [][]int32 // [type] households of the block, by their place in it
@@ -39,8 +40,8 @@ type birth struct {
 	node   uint8
 }
 
-func newCrew(pl *plan, want Columns) *crew {
-	c := &crew{pl: pl, want: want, members: make([][]int32, len(pl.types)), births: make([]birth, Unit),
+func newCrew(pl *plan, want Columns, only func(id int64) bool) *crew {
+	c := &crew{pl: pl, want: want, only: only, members: make([][]int32, len(pl.types)), births: make([]birth, Unit),
 		slot: make([]int32, Unit), streams: make([]state, Unit), node: make([]uint8, Unit),
 		assets: make([]float64, Unit), spent: make([]float64, Unit), twin: make([]float64, Unit), lives: make([]int32, Unit),
 		dead: make([]int32, 0, Unit), counts: make([]Count, len(pl.p.Groups))}
@@ -49,6 +50,9 @@ func newCrew(pl *plan, want Columns) *crew {
 		c.event = newEventCrew()
 		c.want |= underEvent
 		rows = min(rows, Unit*(pl.event.last-pl.event.first+1))
+	}
+	if only != nil {
+		rows = 0 // as many as will be
 	}
 	c.out.resize(rows, c.want)
 	if want&Order != 0 {
@@ -91,6 +95,10 @@ func (c *crew) bear(first int64, n int) {
 	p := c.pl.p
 	for i := range n {
 		id := first + int64(i)
+		if c.only != nil && !c.only(id) {
+			c.lives[i] = 0
+			continue
+		}
 		x, stream := drawBirth(p.Seed, id)
 		types := p.Groups[p.GroupOf(id)].Types
 		k := types[(x[3]>>32)*uint64(len(types))>>32]

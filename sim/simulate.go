@@ -3,6 +3,7 @@ package sim
 import (
 	"context"
 	"fmt"
+	"math"
 	"runtime/debug"
 	"sync"
 	"sync/atomic"
@@ -16,6 +17,10 @@ type Options struct {
 	From    int64   // first household id; a multiple of Unit
 	To      int64   // one past the last id; 0: all
 	Event   *Event  // what households meet; nil: nothing
+
+	// Only, if set, picks households: the others are left out, and who is picked lives
+	// as without it. It must be safe for concurrent use.
+	Only func(id int64) bool
 
 	// OnProgress, if set, is called after every block, one call at a time, with the
 	// number of households done and to do.
@@ -116,7 +121,7 @@ func newRunner(ctx context.Context, p *Population, o Options, work Work) *runner
 
 // worker simulates blocks until there is none left.
 func (r *runner) worker(w int) {
-	c := newCrew(r.plan, r.o.Columns)
+	c := newCrew(r.plan, r.o.Columns, r.o.Only)
 	for {
 		first, ok := r.take()
 		if !ok || !r.block(w, c, first) {
@@ -184,7 +189,7 @@ func (r *runner) commit(first int64, c *crew, commit func() error) bool {
 		}
 	}
 	r.committed = first + Unit
-	if r.result.Households == 0 || c.highestCash > r.result.HighestCash {
+	if lived := !math.IsInf(c.highestCash, -1); lived && (r.result.Households == 0 || c.highestCash > r.result.HighestCash) {
 		r.result.HighestCash = c.highestCash
 	}
 	for g, n := range c.counts {

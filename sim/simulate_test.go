@@ -382,3 +382,48 @@ func TestBlocksAreReused(t *testing.T) {
 		t.Errorf("%d bytes allocated for 4 blocks, %d for 24", few, many)
 	}
 }
+
+// Whoever is picked lives as without picking, to the bit, and nobody else does.
+func TestOnly(t *testing.T) {
+	p := mixed(t, Unit+300)
+	picked := func(id int64) bool { return id%7 == 3 || id >= Unit }
+	want, got := map[int64][]float64{}, map[int64][]float64{}
+	take := func(into map[int64][]float64) Work {
+		return func(_ int, b *Block) (func() error, error) {
+			return func() error {
+				for k, id := range b.Household {
+					into[id] = append(into[id], b.CashOnHand[k], b.Consumption[k], b.Assets[k], b.Income[k])
+				}
+				return nil
+			}, nil
+		}
+	}
+	if _, err := Simulate(t.Context(), p, Options{Columns: All}, take(want)); err != nil {
+		t.Fatal(err)
+	}
+	r, err := Simulate(t.Context(), p, Options{Columns: All, Only: picked, Workers: 2}, take(got))
+	if err != nil {
+		t.Fatal(err)
+	}
+	households := 0
+	for id, rows := range want {
+		if !picked(id) {
+			continue
+		}
+		if households++; !slices.Equal(got[id], rows) {
+			t.Fatalf("household %d has rows %v, want %v", id, got[id], rows)
+		}
+	}
+	if len(got) != households || r.Households != int64(households) {
+		t.Errorf("%d households, counted %d, want %d", len(got), r.Households, households)
+	}
+	for _, workers := range []int{1, 3} {
+		r, err := Simulate(t.Context(), p, Options{Workers: workers, Only: func(id int64) bool { return id == Unit+5 }}, nothing)
+		if err != nil || r.Households != 1 || !(r.HighestCash > 0) {
+			t.Errorf("one household of the second block: %+v, %v", r.Count, err)
+		}
+	}
+	if r, err := Simulate(t.Context(), p, Options{Only: func(int64) bool { return false }}, nothing); err != nil || r.Count != (Count{}) || r.HighestCash != 0 {
+		t.Errorf("nobody: %+v, %v", r, err)
+	}
+}

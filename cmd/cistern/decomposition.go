@@ -11,14 +11,7 @@ import (
 // decompose makes the experiment of that name, which the scenario asks for.
 func (r *run) decompose(ctx context.Context) error {
 	d := r.sc.Experiments.Decomposition
-	o := decomposition.Options{Households: d.Households, Solver: r.sc.Solver, Workers: r.g.workers}
-	for _, name := range d.Order {
-		for c := decomposition.IncomeRisk; c <= decomposition.BorrowingLimit; c++ {
-			if c.String() == name {
-				o.Order = append(o.Order, c)
-			}
-		}
-	}
+	o := decomposition.Options{Order: d.Causes(), Households: d.Households, Solver: r.sc.Solver, Workers: r.g.workers}
 	var p *progress
 	stage := ""
 	o.OnProgress = func(now string, done, total int64) {

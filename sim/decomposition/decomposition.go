@@ -4,7 +4,6 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"math"
 	"slices"
 	"sync"
 	"sync/atomic"
@@ -38,7 +37,7 @@ func (c Cause) String() string {
 
 // Options says what to remove, and how to work.
 type Options struct {
-	Order      []Cause        // each at most once; income risk before longevity risk
+	Order      []Cause        // each at most once
 	Households int64          // the first so many; 0: all
 	Solver     policy.Options // for the problems without the causes
 	Workers    int            // goroutines, at least 1; 0 counts as 1
@@ -59,9 +58,6 @@ func (o Options) Validate() error {
 	for i, c := range o.Order {
 		if c < IncomeRisk || c > BorrowingLimit || slices.Contains(o.Order[:i], c) {
 			bad("%v is no cause or stands twice", c)
-		}
-		if c == LongevityRisk && !slices.Contains(o.Order[:i], IncomeRisk) {
-			bad("longevity_risk is removed before income_risk, want it after")
 		}
 	}
 	if o.Households < 0 {
@@ -135,30 +131,17 @@ type run struct {
 func (r *run) remove(k int, cause Cause) error {
 	changed := false
 	for i := range r.households {
-		h := &r.households[i]
-		switch cause {
-		case IncomeRisk:
-			twin, err := h.Twin()
-			if err != nil {
-				return err
-			}
-			changed = changed || !certain(h)
-			*h = twin
-		case LongevityRisk:
-			for _, s := range h.Survival[:h.Years()-1] {
-				changed = changed || s < 1
-			}
-		case BorrowingLimit:
-			free := policy.Limit{Kind: policy.LimitNatural}
-			if math.IsInf(h.Utility.Infimum(), -1) {
-				free.Kind = policy.LimitNone
-			}
-			changed = changed || h.Limit != free
-			h.Limit = free
+		h, differs, err := without(r.households[i], cause)
+		if err != nil {
+			return err
 		}
+		r.households[i] = h
+		changed = changed || differs
 	}
 	r.known = r.known || cause == LongevityRisk
-	if !changed { // nobody's problem is another: nobody lives otherwise
+	stage := "without " + cause.String()
+	switch {
+	case !changed: // nobody's problem is another: nobody lives otherwise
 		for t := range r.result.Cells {
 			for g := range r.result.Cells[t] {
 				c := &r.result.Cells[t][g]
@@ -166,9 +149,7 @@ func (r *run) remove(k int, cause Cause) error {
 			}
 		}
 		return nil
-	}
-	stage := "without " + cause.String()
-	if r.known {
+	case r.known:
 		return r.liveKnowing(k, stage)
 	}
 	rules, err := r.solve(r.households, stage)
@@ -179,17 +160,7 @@ func (r *run) remove(k int, cause Cause) error {
 	return r.live(k, stage)
 }
 
-// certain reports whether a household has no income risk.
-func certain(h *policy.Household) bool {
-	for t := range h.WorkingYears() {
-		if values, _ := h.Income(t, 0); len(values) > 1 {
-			return false
-		}
-	}
-	return h.Nodes() == 1
-}
-
-// solve solves problems on all workers.
+// solve solves problems on all workers; without a stage it tells of no progress.
 func (r *run) solve(households []policy.Household, stage string) ([]*policy.Rule, error) {
 	rules, errs := make([]*policy.Rule, len(households)), make([]error, len(households))
 	var next atomic.Int64
@@ -202,7 +173,7 @@ func (r *run) solve(households []policy.Household, stage string) ([]*policy.Rule
 				rules[i], errs[i] = policy.Solve(r.ctx, households[i], r.o.Solver)
 				mu.Lock()
 				done++
-				if r.o.OnProgress != nil {
+				if r.o.OnProgress != nil && stage != "" {
 					r.o.OnProgress("solving "+stage, done, int64(len(households)))
 				}
 				mu.Unlock()
@@ -215,22 +186,39 @@ func (r *run) solve(households []policy.Household, stage string) ([]*policy.Rule
 
 // live lets all households live by the rules of the step and sums what they hold.
 func (r *run) live(k int, stage string) error {
+	return r.simulate(r.following(r.rules), r.reporting(stage), sumAssets, k)
+}
+
+// following is the population with other rules, and without twins.
+func (r *run) following(rules []*policy.Rule) *sim.Population {
 	p := *r.p
 	p.Types = slices.Clone(r.p.Types)
 	for i := range p.Types {
-		p.Types[i].Rule, p.Types[i].Twin = r.rules[i], nil
+		p.Types[i].Rule, p.Types[i].Twin = rules[i], nil
 	}
-	return r.simulate(&p, stage, func(b *sim.Block, sums *sums) error {
-		for _, s := range b.Runs {
-			c := sums.cell(s.T, s.Group)
-			for i := s.From; i < s.To; i++ {
-				part := b.Household[i] % Parts
-				c.assets[part] += b.Assets[i]
-				c.alive[part]++
-			}
+	return &p
+}
+
+// reporting are the options of a simulation of everybody that tells how far it is.
+func (r *run) reporting(stage string) sim.Options {
+	o := sim.Options{To: r.o.Households}
+	if r.o.OnProgress != nil {
+		o.OnProgress = func(done, total int64) { r.o.OnProgress(stage, done, total) }
+	}
+	return o
+}
+
+// sumAssets sums what the households of a block hold.
+func sumAssets(b *sim.Block, sums *sums) error {
+	for _, s := range b.Runs {
+		c := sums.cell(s.T, s.Group)
+		for i := s.From; i < s.To; i++ {
+			part := b.Household[i] % Parts
+			c.assets[part] += b.Assets[i]
+			c.alive[part]++
 		}
-		return nil
-	}, k)
+	}
+	return nil
 }
 
 // sums are those of one block.
@@ -244,14 +232,11 @@ type cellSums struct{ assets, alive [Parts]float64 }
 func (s *sums) cell(t, group int) *cellSums { return &s.cells[t*s.groups+group] }
 
 // simulate lets p live, sums each block and folds the sums in the order of blocks.
-func (r *run) simulate(p *sim.Population, stage string, add func(*sim.Block, *sums) error, k int) error {
+func (r *run) simulate(p *sim.Population, o sim.Options, add func(*sim.Block, *sums) error, k int) error {
 	groups := len(p.Groups)
-	pool := sync.Pool{New: func() any { return &sums{make([]cellSums, len(r.result.Cells)*groups), groups} }}
-	options := sim.Options{Workers: r.o.Workers, Columns: sim.Identity, To: r.o.Households}
-	if r.o.OnProgress != nil {
-		options.OnProgress = func(done, total int64) { r.o.OnProgress(stage, done, total) }
-	}
-	_, err := sim.Simulate(r.ctx, p, options, func(_ int, b *sim.Block) (func() error, error) {
+	pool := sync.Pool{New: func() any { return &sums{make([]cellSums, p.Years()*groups), groups} }}
+	o.Workers, o.Columns = r.o.Workers, sim.Identity
+	_, err := sim.Simulate(r.ctx, p, o, func(_ int, b *sim.Block) (func() error, error) {
 		s := pool.Get().(*sums)
 		clear(s.cells)
 		if err := add(b, s); err != nil {

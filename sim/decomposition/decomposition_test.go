@@ -232,12 +232,10 @@ func TestWorkersAndCap(t *testing.T) {
 func TestRefused(t *testing.T) {
 	p := town(t, 10, asIs)
 	for name, o := range map[string]Options{
-		"nothing":         {},
-		"twice":           {Order: []Cause{IncomeRisk, IncomeRisk}},
-		"longevity first": {Order: []Cause{LongevityRisk, IncomeRisk}},
-		"longevity alone": {Order: []Cause{LongevityRisk}},
-		"no such cause":   {Order: []Cause{7}},
-		"negative":        {Order: []Cause{IncomeRisk}, Households: -1},
+		"nothing":       {},
+		"twice":         {Order: []Cause{IncomeRisk, IncomeRisk}},
+		"no such cause": {Order: []Cause{7}},
+		"negative":      {Order: []Cause{IncomeRisk}, Households: -1},
 	} {
 		if _, err := Run(context.Background(), p, o); err == nil {
 			t.Errorf("%s: no error", name)

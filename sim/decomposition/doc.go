@@ -10,9 +10,10 @@
 //     it is the age at which it dies. Everybody lives as long as before, so that ages
 //     are compared among the same households; that differs from a population in which
 //     all live to their life expectancy, where nobody would be left to compare at
-//     high ages. What is left at a known death is left on purpose. Income must be
-//     certain before: with risky income the problem would have to be solved once for
-//     every length of life;
+//     high ages. Nor does anybody insure: who knows to die late saves more, who knows
+//     to die early less, and the part can be negative. What is left at a known death is
+//     left on purpose. The problem is solved for every length of life, and those who
+//     live that long live by it;
 //   - the borrowing limit: debt is limited only by what can be repaid for certain
 //     (natural limit), or, where utility allows any consumption, not at all.
 //

@@ -1,51 +1,59 @@
 package decomposition
 
 import (
-	"fmt"
-	"math"
+	"sync/atomic"
 
 	"cistern/policy"
 	"cistern/sim"
 )
 
-// liveKnowing lets households live who know how long they have. Income is certain,
-// so a life follows from its length, its type and what it begins with, and these from
-// the usual simulation.
+// slab is the number of households whose lengths of life are kept at a time, two
+// bytes each: memory does not grow with the population.
+const slab = 1 << 25
+
+// liveKnowing lets households live who know how long they have: for every length of
+// life the problems are solved and those who live that long, and nobody else, live by
+// the rules. A few lengths are solved at a time, so that all workers have something to
+// do, and forgotten.
 func (r *run) liveKnowing(k int, stage string) error {
-	years := r.p.Years()
-	var problems []policy.Household
-	for _, h := range r.households {
-		for lives := 1; lives <= years; lives++ {
-			problems = append(problems, knowing(h, lives))
+	years, done := r.p.Years(), int64(0)
+	for first := int64(0); first < r.o.Households; first += slab {
+		to := min(first+slab, r.o.Households)
+		lives, many, err := r.lengths(first, to)
+		if err != nil {
+			return err
 		}
-	}
-	rules, err := r.solve(problems, stage)
-	if err != nil {
-		return err
-	}
-	p := *r.p // deaths and beginnings are the same whatever the rules
-	return r.simulate(&p, stage, func(b *sim.Block, s *sums) error {
-		lives := make([]int, b.Households)
-		for _, id := range b.Household {
-			lives[id-b.First]++
-		}
-		for _, run := range b.Runs {
-			if run.T > 0 {
+		var batch []int
+		for length := 1; length <= years; length++ {
+			if many[length] > 0 {
+				batch = append(batch, length)
+			}
+			if len(batch) == 0 || len(batch)*len(r.households) < r.o.Workers && length < years {
 				continue
 			}
-			R := 1 + r.p.Types[run.Type].Rule.Household.ReturnIn(0)
-			for i := run.From; i < run.To; i++ {
-				id := b.Household[i]
-				rule := rules[run.Type*years+lives[id-b.First]-1]
-				if err := follow(rule, (b.CashOnHand[i]-b.Income[i])/R, func(t int, assets float64) {
-					s.cell(t, run.Group).assets[id%Parts] += assets
-				}); err != nil {
-					return fmt.Errorf("decomposition: household %d, group %s, %s: %w", id, r.p.Groups[run.Group].Name, stage, err)
+			var problems []policy.Household
+			for _, l := range batch {
+				for _, h := range r.households {
+					problems = append(problems, knowing(h, l))
 				}
 			}
+			rules, err := r.solve(problems, "")
+			if err != nil {
+				return err
+			}
+			for i, l := range batch {
+				o := sim.Options{From: first, To: to, Only: func(id int64) bool { return int(lives[id-first]) == l }}
+				if err := r.simulate(r.following(rules[i*len(r.households):][:len(r.households)]), o, sumAssets, k); err != nil {
+					return err
+				}
+				if done += many[l]; r.o.OnProgress != nil {
+					r.o.OnProgress(stage, done, r.o.Households)
+				}
+			}
+			batch = batch[:0]
 		}
-		return nil
-	}, k)
+	}
+	return nil
 }
 
 // knowing is a household that lives exactly the given number of years.
@@ -63,19 +71,24 @@ func knowing(h policy.Household, lives int) policy.Household {
 	return h
 }
 
-// follow goes through a certain life that begins with assets and tells what is held
-// at the end of every year.
-func follow(rule *policy.Rule, assets float64, hold func(t int, assets float64)) error {
-	h := &rule.Household
-	for t := range rule.Curves {
-		income, _ := h.Income(t, 0)
-		cash := float64((1+h.ReturnIn(t))*assets) + income[0]
-		c := rule.Consumption(t, 0, cash)
-		if !(c > h.Utility.Infimum()) || math.IsInf(c, 0) {
-			return fmt.Errorf("at age %d cash-on-hand %.6g leaves consumption %.6g, which utility does not allow", h.FirstAge+t, cash, c)
+// lengths returns how many years each of the households first … to−1 lives, and how
+// many live how long.
+func (r *run) lengths(first, to int64) (lives []uint16, many []int64, err error) {
+	lives, many = make([]uint16, to-first), make([]int64, r.p.Years()+1)
+	counts := make([]atomic.Int64, len(many))
+	o := sim.Options{Workers: r.o.Workers, Columns: sim.Identity, From: first, To: to}
+	_, err = sim.Simulate(r.ctx, r.following(r.rules), o, func(_ int, b *sim.Block) (func() error, error) {
+		mine := lives[b.First-first:][:b.Households]
+		for _, id := range b.Household {
+			mine[id-b.First]++
 		}
-		assets = cash - c
-		hold(t, assets)
+		for _, n := range mine {
+			counts[n].Add(1)
+		}
+		return nil, nil
+	})
+	for n := range counts {
+		many[n] = counts[n].Load()
 	}
-	return nil
+	return lives, many, err
 }
