@@ -72,12 +72,17 @@ func (sc *Scenario) Cost(workers int) Cost {
 		c.MemoryBytes += nodes*bytesPerRule/2 + t.bytes(len(sc.Groups), workers)
 	}
 	if d := sc.Experiments.Decomposition; d != nil {
+		passes, problems := d.passes(sc.LastAge - sc.FirstAge + 1)
 		share := 1.0
 		if d.Households > 0 {
 			share = min(1, float64(d.Households)/float64(sc.Households))
 		}
-		perRow += share * float64(len(d.Order)+1) * secondsPerPass
+		perRow += share * passes * secondsPerPass
+		c.Seconds += problems * c.NodeUpdates * secondsPerUpdate / float64(workers)
 		c.MemoryBytes += nodes * bytesPerRule
+		if problems > 1 { // rules of a few lengths of life at a time
+			c.MemoryBytes += nodes * bytesPerRule * float64(workers) / float64(len(sc.Problems()))
+		}
 	}
 	c.Seconds += (c.NodeUpdates*secondsPerUpdate + c.HouseholdYears*perRow) / float64(workers)
 	return c

@@ -74,6 +74,29 @@ func (d *Decomposition) Causes() (order []decomposition.Cause) {
 	return order
 }
 
+// passes returns how many times households live again, and how many times as many
+// problems with risky income are solved as in a run without the experiment: one for
+// each length of life, half as long on average, where death is known. (Those with
+// certain income take next to nothing.)
+func (d *Decomposition) passes(years int) (passes, problems float64) {
+	passes = 1 // with all causes
+	known, risky := false, true
+	for _, c := range d.Causes() {
+		known, risky = known || c == decomposition.LongevityRisk, risky && c != decomposition.IncomeRisk
+		passes++
+		if known {
+			passes++ // to see who lives how long
+		}
+		switch {
+		case risky && known:
+			problems += float64(years+1) / 2
+		case risky:
+			problems++
+		}
+	}
+	return passes, problems
+}
+
 func readTransfer(e *section, sc *Scenario) *Transfer {
 	s := e.optional("transfer", "what households do with money that they did not expect, paid out once at the beginning of a year")
 	if s == nil {

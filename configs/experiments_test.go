@@ -152,3 +152,39 @@ func TestExperimentsOff(t *testing.T) {
 		t.Errorf("experiments %+v", sc.Experiments)
 	}
 }
+
+// Every cause removed costs a pass over the households, two where death is known; with
+// risky income and known death the problems of 51 lengths of life, half as long on
+// average, are solved too (derived).
+func TestDecompositionCost(t *testing.T) {
+	cost := func(text string) Cost {
+		sc, err := Parse("s.yaml", []byte(small+text), nil)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return sc.Cost(1)
+	}
+	none := cost("")
+	for _, tt := range []struct {
+		order            string
+		passes, problems float64
+	}{
+		{"[income_risk]", 2, 0},
+		{"[income_risk, longevity_risk, borrowing_limit]", 6, 0},
+		{"[longevity_risk, income_risk]", 5, 26},
+		{"[borrowing_limit, longevity_risk]", 4, 27},
+	} {
+		c := cost("experiments: {decomposition: {order: " + tt.order + "}}\n")
+		want := tt.passes*none.HouseholdYears*secondsPerPass + tt.problems*none.NodeUpdates*secondsPerUpdate
+		if math.Abs(c.Seconds-none.Seconds-want) > 1e-9 {
+			t.Errorf("%s adds %g seconds, want %g", tt.order, c.Seconds-none.Seconds, want)
+		}
+		if c.MemoryBytes <= none.MemoryBytes {
+			t.Errorf("%s takes no memory", tt.order)
+		}
+	}
+	half := cost("experiments: {decomposition: {order: [income_risk], households: 50}}\n")
+	if want := none.HouseholdYears * secondsPerPass; math.Abs(half.Seconds-none.Seconds-want) > 1e-9 {
+		t.Errorf("half of the households add %g seconds, want %g", half.Seconds-none.Seconds, want)
+	}
+}

@@ -41,7 +41,7 @@ func (v *Value) Expected(begins []Begin) float64 {
 // of households that are equally likely. Under CRRA utility γ ≠ 1 without a bequest
 // motive 1 − λ = (V_risky/V_certain)^(1/(1−γ)). (Pratt 1964, Econometrica 32, for a
 // single risk; Lucas 1987, Models of Business Cycles, for a stream of consumption.)
-// It is found by halving an interval to 1e-12.
+// It is found to 1e-12.
 //
 // The certain twin may owe more than the household under a natural limit: λ then
 // contains what that is worth.
@@ -77,13 +77,35 @@ func EquivalentPremium(risky, certain []*Rule, begins []Begin) (float64, error) 
 			return 0, fmt.Errorf("policy: a household would give up all it consumes to be rid of its risk")
 		}
 	}
-	for high-low > 1e-12 {
-		mid := low + (high-low)/2
-		if gain(mid) > 0 {
-			low = mid
-		} else {
-			high = mid
+	return root(gain, low, high), nil
+}
+
+// root finds where a falling function crosses 0 between low and high to 1e-12, by
+// false position with the end that stays put halved (the Illinois method; Dowell and
+// Jarratt 1971, BIT 11), and by halving where that is slow.
+func root(f func(float64) float64, low, high float64) float64 {
+	a, b := f(low), f(high)
+	for side, n := 0, 0; high-low > 1e-12; n++ {
+		x := (low*b - high*a) / (b - a)
+		if n%4 == 3 || !(x > low && x < high) {
+			x = low + (high-low)/2
+		}
+		switch y := f(x); {
+		case y == 0:
+			return x
+		case y > 0:
+			low, a = x, y
+			if side > 0 {
+				b /= 2
+			}
+			side = 1
+		default:
+			high, b = x, y
+			if side < 0 {
+				a /= 2
+			}
+			side = -1
 		}
 	}
-	return low + (high-low)/2, nil
+	return low + (high-low)/2
 }

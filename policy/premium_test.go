@@ -4,6 +4,8 @@ import (
 	"context"
 	"math"
 	"testing"
+
+	"cistern/income"
 )
 
 func solved(t *testing.T, h Household) *Rule {
@@ -43,7 +45,7 @@ func TestEquivalentPremiumHomothetic(t *testing.T) {
 		if gamma == 1 {
 			want = 1 - math.Exp((v.Expected(begins)-w.Expected(begins))/v.horizon[0])
 		}
-		if math.Abs(got-want) > 1e-6 {
+		if math.Abs(got-want) > 1e-11 {
 			t.Errorf("%s: premium %v, want %v", name, got, want)
 		}
 		if !(got > 0.001 && got < 0.5) {
@@ -66,6 +68,93 @@ func TestEquivalentPremiumOfOneYear(t *testing.T) {
 		k := 1 - math.Log(math.Cosh(alpha))/(3*alpha)
 		if got := NewValue(r, k).Expected([]Begin{{3, 1}}); math.Abs(got-risky) > 1e-12*math.Abs(risky) {
 			t.Errorf("alpha %v: the certain year scaled by %v is worth %v, want %v", alpha, k, got, risky)
+		}
+	}
+}
+
+// The premium for the income of one year, y + ε, on top of assets a: α·σ²/(2(y + a))
+// with CARA utility and normal ε, and 1 − exp(−γσ²/2) with CRRA utility, lognormal
+// income and a = 0 (derived from the moment-generating function of the normal). Where
+// the risk is small it is half its variance over mean squared times relative risk
+// aversion there (Pratt 1964, eq. 7 and section 6).
+func TestEquivalentPremiumOfOneRisk(t *testing.T) {
+	of := family(t)
+	premium := func(u Utility, form income.Form, sd, assets float64) float64 {
+		p := process{years: 1, profile: constant(3), form: form, transitory: income.Transitory{SD: sd, Nodes: 41, Rule: income.GaussHermite}}
+		h := Household{FirstAge: 25, Survival: alive(1), Utility: u, DiscountFactor: 0.96, Return: 0.25, Earnings: p.build(t, 25), Pension: Pension{ClaimAge: 26}}
+		got, err := EquivalentPremium([]*Rule{solved(t, h)}, []*Rule{solved(t, twinOf(t, h))}, []Begin{{assets, 1}})
+		if err != nil {
+			t.Fatal(err)
+		}
+		return got
+	}
+	for _, sd := range []float64{0.05, 0.2, 0.6} {
+		if got, want := premium(of(NewCARA(1.5)), income.Level, sd, 2), 1.5*sd*sd/2/(3+1.25*2); math.Abs(got-want) > 1e-10 {
+			t.Errorf("cara, sd %v: premium %v, want %v", sd, got, want)
+		}
+		for _, gamma := range []float64{0.5, 1, 4} {
+			if got, want := premium(of(NewCRRA(gamma)), income.Log, sd, 0), -math.Expm1(-gamma*sd*sd/2); math.Abs(got-want) > 1e-9 {
+				t.Errorf("gamma %v, sd %v: premium %v, want %v", gamma, sd, got, want)
+			}
+		}
+	}
+	for _, u := range []Utility{of(NewCRRA(3)), of(NewStoneGeary(2, 1.5)), of(NewCARA(0.7)), of(NewQuadratic(9)), foreign{of(NewCRRA(2))}} {
+		const sd, wealth = 0.01, 3 + 1.25*0.8
+		want := u.RelativeRiskAversion(wealth) * sd * sd / (2 * wealth * wealth)
+		if got := premium(u, income.Level, sd, 0.8); math.Abs(got/want-1) > 1e-3 {
+			t.Errorf("%s: a small risk is worth %v, want %v", u.Family(), got, want)
+		}
+	}
+}
+
+// With CARA utility, without limit, for a certain time and with βR = 1 the certain
+// twin consumes c° every year, and a risky life is worth A_0·E u(c_0), A_0 the annuity
+// factor of the years: 1 − λ = −ln E exp(−α·c_0)/(α·c°) (derived; c_0 is linear in
+// cash-on-hand: policy.CARAChain).
+func TestEquivalentPremiumCARA(t *testing.T) {
+	const alpha, R, assets = 0.4, 1.03, 2.0
+	u, err := NewCARA(alpha)
+	if err != nil {
+		t.Fatal(err)
+	}
+	p := process{years: 12, profile: constant(10), form: income.Level, chain: rouwenhorst(t, 5, 0.95, 0.5), transitory: income.Transitory{SD: 1, Nodes: 9}}
+	h := Household{FirstAge: 25, Survival: alive(12), Utility: u, DiscountFactor: 1 / R, Return: R - 1, Limit: Limit{Kind: LimitNone}, Earnings: p.build(t, 25), Pension: Pension{ClaimAge: 37}}
+	twin := twinOf(t, h)
+	risky, certain := CARAChain(u, h.Prospects()), CARAChain(u, twin.Prospects())
+	mean := 0.0
+	for j, q := range h.Earnings.Distribution[0] {
+		incomes, weights := h.Income(0, j)
+		for k, y := range incomes {
+			mean += q * weights[k] * math.Exp(-alpha*risky.Consumption(0, j, R*assets+y))
+		}
+	}
+	want := 1 + math.Log(mean)/(alpha*certain.Consumption(0, 0, R*assets+10))
+	got, err := EquivalentPremium([]*Rule{solved(t, h)}, []*Rule{solved(t, twin)}, []Begin{{assets, 1}})
+	if err != nil || math.Abs(got-want) > 1e-9 {
+		t.Errorf("premium %v, want %v, %v", got, want, err)
+	}
+	if !(want > 0.02 && want < 0.5) {
+		t.Errorf("premium %v is no good for a test", want)
+	}
+}
+
+// A falling function's root is found to 1e-12, also where the function is steep, flat
+// or not a number on one side.
+func TestRoot(t *testing.T) {
+	for name, f := range map[string]func(float64) float64{
+		"line":     func(x float64) float64 { return 0.3 - x },
+		"steep":    func(x float64) float64 { return 1/(x+1e-9) - 1/(0.3+1e-9) },
+		"flat":     func(x float64) float64 { return -math.Pow(x-0.3, 3) },
+		"step":     func(x float64) float64 { return 1 - 2*math.Round(x+0.2) },
+		"one side": func(x float64) float64 { return math.Sqrt(0.3-x) + 1 },
+	} {
+		calls := 0
+		got := root(func(x float64) float64 { calls++; return f(x) }, 0, 1)
+		if math.Abs(got-0.3) > 2e-12 {
+			t.Errorf("%s: root %v, want 0.3", name, got)
+		}
+		if calls > 200 || name == "steep" && calls > 30 {
+			t.Errorf("%s: %d calls", name, calls)
 		}
 	}
 }
