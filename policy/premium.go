@@ -6,29 +6,51 @@ import (
 )
 
 // Begin is a way in which life may begin: with assets at the end of the year before
-// the first, in money, and a probability.
-type Begin struct{ Assets, Probability float64 }
+// the first, in money, with what is accrued by then, and a probability.
+type Begin struct {
+	Assets      float64
+	Entitlement Entitlement
+	Probability float64
+}
 
 // Expected returns the value of life as it is seen before it begins: the
 // expectation over begins, the persistent node and the income of the first year.
-func (v *Value) Expected(begins []Begin) float64 {
-	h := &v.Rule.Household
+func (v *Value) Expected(begins []Begin) float64 { return v.expected(begins, v.felicity.neutral()) }
+
+// expected is Expected relative to a reference.
+func (v *Value) expected(begins []Begin, ref float64) float64 {
 	sum := 0.0
+	v.firstYears(begins, func(q, probability float64) {
+		x, _ := v.felicity.at(q, ref)
+		sum += probability * x
+	})
+	return v.horizon[0] * sum
+}
+
+// lowest returns the lowest Q with which life may begin.
+func (v *Value) lowest(begins []Begin) float64 {
+	least := math.Inf(1)
+	v.firstYears(begins, func(q, _ float64) { least = math.Min(least, q) })
+	return least
+}
+
+// firstYears calls yield with Q and the probability of every state that the first year
+// may have.
+func (v *Value) firstYears(begins []Begin, yield func(q, probability float64)) {
+	h := &v.Rule.Household
 	for _, b := range begins {
 		for j, p := range h.Earnings.Distribution[0] {
 			if p == 0 || b.Probability == 0 {
 				continue
 			}
-			incomes, weights := h.Income(0, j)
-			for k, y := range incomes {
-				if weights[k] > 0 {
-					value, _ := v.At(0, j, float64((1+h.ReturnIn(0))*b.Assets)+y)
-					sum += b.Probability * p * weights[k] * value
+			h.forEachOutcome(0, j, b.Entitlement, func(income float64, next Entitlement, weight float64) {
+				if weight > 0 {
+					q, _ := v.equivalent(0, j, next, float64((1+h.ReturnIn(0))*b.Assets)+income)
+					yield(q, b.Probability*p*weight)
 				}
-			}
+			})
 		}
 	}
-	return sum
 }
 
 // EquivalentPremium returns the share λ of consumption that a household would give
@@ -46,38 +68,61 @@ func (v *Value) Expected(begins []Begin) float64 {
 // The certain twin may owe more than the household under a natural limit: λ then
 // contains what that is worth.
 func EquivalentPremium(risky, certain []*Rule, begins []Begin) (float64, error) {
-	if len(risky) != len(certain) || len(risky) == 0 {
-		return 0, fmt.Errorf("policy: %d rules with risk and %d without", len(risky), len(certain))
+	λ, err := EquivalentVariation(certain, risky, begins)
+	return 0 - λ, err
+}
+
+// EquivalentVariation returns the share λ by which consumption in every year of the
+// lives that follow the rules base would have to be higher (negative: lower) for them
+// to be worth what the lives that follow the rules other are worth,
+//
+//	Σ_k E V^{base_k}_{1+λ} = Σ_k E V^{other_k},
+//
+// expectations and sums as in [EquivalentPremium]. Estates are not scaled. Rules of
+// one index belong to one type; all have the same utility, and where it is
+// logarithmic the same survival and discounting.
+func EquivalentVariation(base, other []*Rule, begins []Begin) (float64, error) {
+	if len(base) != len(other) || len(base) == 0 {
+		return 0, fmt.Errorf("policy: %d rules to be worth %d others", len(base), len(other))
 	}
-	worth := func(rules []*Rule, k float64) (sum float64) {
-		for _, r := range rules {
-			sum += NewValue(r, k).Expected(begins)
-		}
-		return sum
+	values := make([]*Value, len(other))
+	ref := math.Inf(1)
+	for i, r := range other {
+		values[i] = NewValue(r, 1)
+		ref = math.Min(ref, values[i].lowest(begins))
 	}
-	target := worth(risky, 1)
+	ref = values[0].felicity.reference(ref)
+	target := 0.0
+	for _, v := range values {
+		target += v.expected(begins, ref)
+	}
 	if math.IsNaN(target) || math.IsInf(target, 0) {
-		return 0, fmt.Errorf("policy: the value of a risky life is %v", target)
+		return 0, fmt.Errorf("policy: a life in which consumption is as low as utility allows, or lower, is possible: it is worth %v", target)
 	}
-	gain := func(λ float64) float64 { return worth(certain, 1-λ) - target }
-	switch g := gain(0); {
+	gap := func(λ float64) (sum float64) { // falls in λ, the share given up
+		for _, r := range base {
+			sum += NewValue(r, 1-λ).expected(begins, ref)
+		}
+		return sum - target
+	}
+	switch g := gap(0); {
 	case g == 0:
 		return 0, nil
 	case math.IsNaN(g):
-		return 0, fmt.Errorf("policy: the value of a certain life is no number")
+		return 0, fmt.Errorf("policy: the value of a life is no number")
 	}
 	low, high := 0.0, 0.5
-	for gain(low) < 0 { // risk that is worth having: the other limit is at work
+	for gap(low) < 0 { // the other lives are better
 		if low -= 0.5; low < -64 {
-			return 0, fmt.Errorf("policy: no scale of certain consumption is worth as much as the risky life")
+			return 0, fmt.Errorf("policy: no scale of consumption makes one life worth as much as the other")
 		}
 	}
-	for gain(high) > 0 {
+	for gap(high) > 0 {
 		if high = 1 - (1-high)/2; high > 1-1e-9 {
-			return 0, fmt.Errorf("policy: a household would give up all it consumes to be rid of its risk")
+			return 0, fmt.Errorf("policy: a life is worth less than one with hardly any consumption")
 		}
 	}
-	return root(gain, low, high), nil
+	return 0 - root(gap, low, high), nil
 }
 
 // root finds where a falling function crosses 0 between low and high to 1e-12, by

@@ -30,7 +30,7 @@ func twinOf(t *testing.T, h Household) Household {
 // homothetic utility scales values by k^(1−γ)), and with log utility
 // exp((V_risky − V_certain)/K).
 func TestEquivalentPremiumHomothetic(t *testing.T) {
-	begins := []Begin{{0, 0.25}, {1, 0.5}, {4, 0.25}}
+	begins := []Begin{{Assets: 0, Probability: 0.25}, {Assets: 1, Probability: 0.5}, {Assets: 4, Probability: 0.25}}
 	lives := shortLives(t)
 	for _, name := range []string{"crra", "low aversion", "log"} {
 		h := lives[name]
@@ -62,11 +62,11 @@ func TestEquivalentPremiumOfOneYear(t *testing.T) {
 		h := certainHousehold(t, family(t)(NewCARA(alpha)), constant(0), 1, 0.96, 0, Limit{})
 		r := solved(t, h)
 		risky := 0.5*h.Utility.Value(2) + 0.5*h.Utility.Value(4)
-		if got := NewValue(r, 1).Expected([]Begin{{2, 0.5}, {4, 0.5}}); math.Abs(got-risky) > 1e-12*math.Abs(risky) {
+		if got := NewValue(r, 1).Expected([]Begin{{Assets: 2, Probability: 0.5}, {Assets: 4, Probability: 0.5}}); math.Abs(got-risky) > 1e-12*math.Abs(risky) {
 			t.Errorf("alpha %v: the risky year is worth %v, want %v", alpha, got, risky)
 		}
 		k := 1 - math.Log(math.Cosh(alpha))/(3*alpha)
-		if got := NewValue(r, k).Expected([]Begin{{3, 1}}); math.Abs(got-risky) > 1e-12*math.Abs(risky) {
+		if got := NewValue(r, k).Expected([]Begin{{Assets: 3, Probability: 1}}); math.Abs(got-risky) > 1e-12*math.Abs(risky) {
 			t.Errorf("alpha %v: the certain year scaled by %v is worth %v, want %v", alpha, k, got, risky)
 		}
 	}
@@ -82,7 +82,7 @@ func TestEquivalentPremiumOfOneRisk(t *testing.T) {
 	premium := func(u Utility, form income.Form, sd, assets float64) float64 {
 		p := process{years: 1, profile: constant(3), form: form, transitory: income.Transitory{SD: sd, Nodes: 41, Rule: income.GaussHermite}}
 		h := Household{FirstAge: 25, Survival: alive(1), Utility: u, DiscountFactor: 0.96, Return: 0.25, Earnings: p.build(t, 25), Pension: Pension{ClaimAge: 26}}
-		got, err := EquivalentPremium([]*Rule{solved(t, h)}, []*Rule{solved(t, twinOf(t, h))}, []Begin{{assets, 1}})
+		got, err := EquivalentPremium([]*Rule{solved(t, h)}, []*Rule{solved(t, twinOf(t, h))}, []Begin{{Assets: assets, Probability: 1}})
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -129,12 +129,65 @@ func TestEquivalentPremiumCARA(t *testing.T) {
 		}
 	}
 	want := 1 + math.Log(mean)/(alpha*certain.Consumption(0, 0, R*assets+10))
-	got, err := EquivalentPremium([]*Rule{solved(t, h)}, []*Rule{solved(t, twin)}, []Begin{{assets, 1}})
+	got, err := EquivalentPremium([]*Rule{solved(t, h)}, []*Rule{solved(t, twin)}, []Begin{{Assets: assets, Probability: 1}})
 	if err != nil || math.Abs(got-want) > 1e-9 {
 		t.Errorf("premium %v, want %v, %v", got, want, err)
 	}
 	if !(want > 0.02 && want < 0.5) {
 		t.Errorf("premium %v is no good for a test", want)
+	}
+}
+
+// Whatever the unit of money and however strong the curvature, the premium is the same
+// (derived: CRRA utility is homothetic, and α·c has no unit).
+func TestEquivalentPremiumUnits(t *testing.T) {
+	for _, name := range []string{"crra", "cara", "stone_geary", "quadratic"} {
+		for _, strength := range []float64{1, 40} {
+			var first float64
+			for i, unit := range []float64{1, 1e-6, 3e5} {
+				h := shortLives(t)[name]
+				e := process{years: 3, profile: constant(3 * unit), form: income.Level, chain: rouwenhorst(t, 3, 0.9, 0.2*unit), transitory: income.Transitory{SD: 0.2 * unit, Nodes: 7}}
+				h.Earnings, h.Pension.Flat = e.build(t, 60), unit
+				switch name {
+				case "crra":
+					h.Utility = CRRA{2.3 * strength}
+				case "cara":
+					h.Utility = CARA{0.5 * strength / unit}
+				case "stone_geary":
+					h.Utility = StoneGeary{1.7 * strength, 0.2 * unit}
+				case "quadratic":
+					h.Utility = Quadratic{30 * unit * strength}
+				}
+				got, err := EquivalentPremium([]*Rule{solved(t, h)}, []*Rule{solved(t, twinOf(t, h))}, []Begin{{Assets: unit, Probability: 1}})
+				if i == 0 {
+					first = got
+				}
+				if err != nil || math.Abs(got-first) > 1e-8 || !(got > 1e-6 && got < 0.9) {
+					t.Errorf("%s, strength %v, unit %v: premium %v, %v, want %v", name, strength, unit, got, err, first)
+				}
+			}
+		}
+	}
+}
+
+// A life with k times the consumption is worth what 1 + λ = k says, and back (derived).
+func TestEquivalentVariation(t *testing.T) {
+	begins := []Begin{{Assets: 1, Probability: 1}}
+	h := shortLives(t)["crra"]
+	rich := h
+	e := process{years: 3, profile: constant(3), chain: rouwenhorst(t, 3, 0.9, 0.2)}
+	h.Earnings = e.build(t, 60)
+	e.profile = constant(3 * 1.2)
+	rich.Earnings, rich.Pension.Flat = e.build(t, 60), 1.2*h.Pension.Flat
+	poor, better := solved(t, h), solved(t, rich)
+	up, err := EquivalentVariation([]*Rule{poor}, []*Rule{better}, []Begin{{Assets: 0, Probability: 1}})
+	if err != nil || math.Abs(up-0.2) > 1e-7 {
+		t.Errorf("all incomes by a fifth higher are worth %v of consumption, %v", up, err)
+	}
+	up, err = EquivalentVariation([]*Rule{poor}, []*Rule{better}, begins)
+	down, err2 := EquivalentVariation([]*Rule{better}, []*Rule{poor}, begins)
+	if err != nil || err2 != nil || math.Abs((1+up)*(1+down)-1) > 1e-10 || !(up > 0.05) {
+		t.Errorf("up %v, down %v, %v, %v", up, down, err, err2)
 	}
 }
 
@@ -164,7 +217,7 @@ func TestRoot(t *testing.T) {
 func TestEquivalentPremiumOrder(t *testing.T) {
 	h := shortLives(t)["crra"]
 	twin := solved(t, twinOf(t, h))
-	if got, err := EquivalentPremium([]*Rule{twin}, []*Rule{twin}, []Begin{{1, 1}}); got != 0 || err != nil {
+	if got, err := EquivalentPremium([]*Rule{twin}, []*Rule{twin}, []Begin{{Assets: 1, Probability: 1}}); got != 0 || err != nil {
 		t.Errorf("premium %v, %v without risk", got, err)
 	}
 	before := 0.0
@@ -175,7 +228,7 @@ func TestEquivalentPremiumOrder(t *testing.T) {
 		p := process{years: 3, profile: func(int) float64 { return 3 }, chain: rouwenhorst(t, 3, 0.9, 0.1)}
 		p.transitory.SD, p.transitory.Nodes = sd, 7
 		risky.Earnings = p.build(t, 60)
-		got, err := EquivalentPremium([]*Rule{solved(t, risky)}, []*Rule{solved(t, twinOf(t, risky))}, []Begin{{1, 1}})
+		got, err := EquivalentPremium([]*Rule{solved(t, risky)}, []*Rule{solved(t, twinOf(t, risky))}, []Begin{{Assets: 1, Probability: 1}})
 		if err != nil || got <= before {
 			t.Errorf("premium %v after %v, %v", got, before, err)
 		}

@@ -21,31 +21,35 @@ import (
 // which bends hardly where V falls to −∞, and is linear for homothetic utility
 // without income. Between the nodes of the rule Q is a cubic Hermite polynomial with
 // the slopes that differentiating the recursion gives; below them, where the limit
-// binds, V is exact; above them Q is a line. For k = 1 the slope is the envelope
-// condition V′ = u′(c) (Benveniste and Scheinkman 1979, Econometrica 47). Expectations
-// are over the solver's own outcomes. A Value is immutable and safe for concurrent
-// use.
+// binds, V is exact; above them Q is a line. Between entitlement nodes Q is summed as
+// the rule is (see [EntitlementGrid]). For k = 1 the slope is the envelope condition
+// V′ = u′(c) (Benveniste and Scheinkman 1979, Econometrica 47).
+//
+// Expectations are over the income outcomes of Rule.Household, the solver's own; a
+// copy of the rule whose household has the same earnings with more transitory nodes is
+// valued with a finer quadrature. A Value is immutable and safe for concurrent use.
 type Value struct {
-	Rule    *Rule
-	Scale   float64 // k
-	horizon []float64
-	curves  [][]valueCurve // [t][node]
+	Rule     *Rule
+	Scale    float64 // k
+	horizon  []float64
+	curves   [][]valueCurve // [t][state], as in Rule.Curves
+	felicity felicity
+	scale    float64 // money: how near each other nodes need lie at the least
 }
 
 // valueCurve is Q at one age and node.
 type valueCurve struct {
 	cash, q, left, right []float64 // left and right: dQ/dm from below and from above
-	bound, atBound       float64   // below cash[0] the limit binds: V = u(k·(m − bound)) + atBound
+	bound                float64   // below cash[0] the limit binds
+	later                float64   // and what comes later is worth this consumption for certain
 }
 
-// NewValue evaluates a rule without laws with consumption scaled by k > 0; 1: as it is.
-// It takes about as long as solving.
+// NewValue evaluates a rule with consumption scaled by k > 0; 1: as it is. It takes a
+// few times as long as solving.
 func NewValue(r *Rule, k float64) *Value {
-	if r.Household.Laws != nil {
-		panic("policy: the value of a rule under laws is not reckoned")
-	}
 	T := len(r.Curves)
-	v := &Value{Rule: r, Scale: k, horizon: make([]float64, T+1), curves: make([][]valueCurve, T)}
+	v := &Value{Rule: r, Scale: k, horizon: make([]float64, T+1), curves: make([][]valueCurve, T), felicity: newFelicity(r.Household.Utility)}
+	v.scale = 0.1 * r.Household.peakIncome()
 	h := &r.Household
 	for t := T - 1; t >= 0; t-- {
 		s := h.Survival[t]
@@ -56,157 +60,58 @@ func NewValue(r *Rule, k float64) *Value {
 	return v
 }
 
-// ahead is what next year is worth from the assets kept, by next year's node.
-type ahead struct{ value, slope [][]float64 } // [node][asset]
-
-// year evaluates year t from the next.
-func (v *Value) year(t int) {
-	r := v.Rule
-	nodes := len(r.Curves[t])
-	var shared *ahead
-	var at []float64
-	for j := range nodes {
-		c := &r.Curves[t][j]
-		assets := kept(c)
-		from, to := 0, nodes
-		if t+1 < len(r.Curves) && !r.Household.Moves(t) {
-			from, to = j, j+1
-		}
-		if shared == nil || to-from == 1 || !same(assets, at) {
-			shared, at = v.look(t, from, to, assets), assets
-		}
-		v.curve(t, j, from, assets, shared)
-	}
-}
-
-// kept lists the assets at the nodes of a curve, and last those where the limit
-// binds.
-func kept(c *Curve) []float64 {
-	a := make([]float64, len(c.Cash), len(c.Cash)+1)
-	for i, m := range c.Cash {
-		a[i] = m - c.Consumption[i]
-	}
-	return append(a, c.Bound)
-}
-
-// same reports whether two lists of assets differ by rounding only.
-func same(a, b []float64) bool {
-	if len(a) != len(b) {
-		return false
-	}
-	for i, x := range a {
-		if x != b[i] && !(math.Abs(x-b[i]) <= 1e-13*math.Max(1, math.Abs(x))) {
-			return false
-		}
-	}
-	return true
-}
-
-// look sums what next year is worth over its income outcomes, for the nodes in
-// [from, to); nil after the last year.
-func (v *Value) look(t, from, to int, assets []float64) *ahead {
-	h := &v.Rule.Household
-	if t+1 == len(v.curves) {
-		return &ahead{}
-	}
-	R := 1 + h.ReturnIn(t+1)
-	w := &ahead{}
-	for j := from; j < to; j++ {
-		value, slope := make([]float64, len(assets)), make([]float64, len(assets))
-		incomes, weights := h.Income(t+1, j)
-		for k, y := range incomes {
-			hint := 0
-			for i, a := range assets {
-				if math.IsInf(a, -1) || weights[k] == 0 {
-					continue
-				}
-				if i == len(assets)-1 {
-					hint = 0 // the bound lies below all others
-				}
-				var x, d float64
-				x, d, hint = v.at(t+1, j, float64(R*a)+y, hint)
-				value[i] += weights[k] * x
-				slope[i] += weights[k] * d
-			}
-		}
-		w.value, w.slope = append(w.value, value), append(w.slope, slope)
-	}
-	return w
-}
-
-// curve fills the curve of year t and node j.
-func (v *Value) curve(t, j, from int, assets []float64, next *ahead) {
-	h, c, k := &v.Rule.Household, &v.Rule.Curves[t][j], v.Scale
-	u, s := h.Utility, h.Survival[t]
-	R := 1 + h.ReturnIn(t+1)
-	row := certainty
-	if len(next.value) > 1 {
-		row = h.Earnings.Chain.Row(j)
-	}
-	later := func(i int) (value, slope float64) {
-		for z := range next.value {
-			value += row[z] * next.value[z][i]
-			slope += row[z] * next.slope[z][i]
-		}
-		value, slope = s*value, s*slope
-		if w := h.Bequest.Weight; w > 0 && s < 1 {
-			estate := float64(R*assets[i]) + h.Bequest.Shift
-			value += (1 - s) * w * u.Value(estate)
-			slope += (1 - s) * w * u.Marginal(estate)
-		}
-		return h.DiscountFactor * value, h.DiscountFactor * R * slope
-	}
-	out := valueCurve{cash: c.Cash, bound: c.Bound, q: make([]float64, len(c.Cash)), left: make([]float64, len(c.Cash)), right: make([]float64, len(c.Cash))}
-	if !math.IsInf(c.Bound, -1) {
-		out.atBound, _ = later(len(assets) - 1)
-	}
-	for i, x := range c.Consumption {
-		value, slope := later(i)
-		out.q[i] = valueInverse(u, (u.Value(k*x)+value)/v.horizon[t], k*x)
-		now := k * u.Marginal(k*x)
-		per := v.horizon[t] * u.Marginal(out.q[i])
-		out.left[i] = (now*c.Left[i] + (1-c.Left[i])*slope) / per
-		out.right[i] = (now*c.Right[i] + (1-c.Right[i])*slope) / per
-	}
-	out.mend()
-	v.curves[t][j] = out
-}
-
-// mend gives nodes where life is worth −∞, at a natural limit, the slope towards
-// the next.
-func (c *valueCurve) mend() {
-	for i := range c.q {
-		if finite(c.left[i]) && finite(c.right[i]) {
-			continue
-		}
-		k := min(i, len(c.q)-2)
-		secant := (c.q[k+1] - c.q[k]) / (c.cash[k+1] - c.cash[k])
-		c.left[i], c.right[i] = secant, secant
-	}
-}
-
 // At returns the value, in utility, of following the rule from year t on at a
-// persistent node with cash-on-hand m (money), and its derivative in m.
-func (v *Value) At(t, node int, m float64) (value, slope float64) {
-	value, slope, _ = v.at(t, node, m, -1)
-	return value, slope
+// persistent node with entitlement e, this year's credit included, and cash-on-hand m
+// (money), and its derivative in m. Without an entitlement e does not matter.
+func (v *Value) At(t, node int, e Entitlement, m float64) (value, slope float64) {
+	q, d := v.equivalent(t, node, e, m)
+	u := v.Rule.Household.Utility
+	return v.horizon[t] * u.Value(q), v.horizon[t] * u.Marginal(q) * d
 }
 
 // Equivalent returns the certain yearly consumption, in money, that is worth as
 // much.
-func (v *Value) Equivalent(t, node int, m float64) float64 {
-	value, _ := v.At(t, node, m)
-	return valueInverse(v.Rule.Household.Utility, value/v.horizon[t], m)
+func (v *Value) Equivalent(t, node int, e Entitlement, m float64) float64 {
+	q, _ := v.equivalent(t, node, e, m)
+	return q
 }
 
-// at is At; hint is a node that m lies above, −1 if none is known, and comes back for
-// a higher m.
-func (v *Value) at(t, node int, m float64, hint int) (value, slope float64, next int) {
-	c := &v.curves[t][node]
-	u, n := v.Rule.Household.Utility, len(c.cash)
+// equivalent returns Q and its slope.
+func (v *Value) equivalent(t, node int, e Entitlement, m float64) (q, slope float64) {
+	g := v.Rule.accruing(t)
+	if g == nil {
+		q, slope, _ = v.at(t, node, m, -1)
+		return q, slope
+	}
+	var b blend
+	g.blend(e, &b)
+	return v.sum(g, t, node, &b, m)
+}
+
+// sum returns the sum b of Q over entitlement nodes and its slope.
+func (v *Value) sum(g *EntitlementGrid, t, node int, b *blend, m float64) (q, slope float64) {
+	first := node * g.Len()
+	kink := 0.0
+	for i := range b.n {
+		kink += b.weight[i] * v.curves[t][first+b.node[i]].cash[0]
+	}
+	for i := range b.n {
+		state := first + b.node[i]
+		x, d, _ := v.at(t, state, m+g.shift(v.curves[t][state].cash[0], kink), -1)
+		q += b.weight[i] * x
+		slope += b.weight[i] * d
+	}
+	return q, slope
+}
+
+// at returns Q and its slope at a state; hint is a node that m lies above, −1 if none
+// is known, and comes back for a higher m.
+func (v *Value) at(t, state int, m float64, hint int) (q, slope float64, next int) {
+	c := &v.curves[t][state]
+	n := len(c.cash)
 	if m < c.cash[0] && !math.IsInf(c.bound, -1) {
-		x := v.Scale * (m - c.bound)
-		return u.Value(x) + c.atBound, v.Scale * u.Marginal(x), 0
+		q, slope = v.atLimit(t, c, m)
+		return q, slope, 0
 	}
 	i := hint
 	if hint < 0 {
@@ -215,8 +120,23 @@ func (v *Value) at(t, node int, m float64, hint int) (value, slope float64, next
 	for i < n-1 && c.cash[i+1] <= m {
 		i++
 	}
-	q, d := c.at(i, m)
-	return v.horizon[t] * u.Value(q), v.horizon[t] * u.Marginal(q) * d, i
+	q, slope = c.at(i, m)
+	return q, slope, i
+}
+
+// atLimit is at where all is consumed that the limit allows.
+func (v *Value) atLimit(t int, c *valueCurve, m float64) (q, slope float64) {
+	x, later := v.Scale*(m-c.bound), v.horizon[t]-1
+	if later == 0 {
+		return x, v.Scale
+	}
+	f := &v.felicity
+	ref := f.reference(math.Min(x, c.later))
+	now, marginal := f.at(x, ref)
+	then, _ := f.at(c.later, ref)
+	q = f.inverse((now+later*then)/v.horizon[t], ref, x)
+	_, per := f.at(q, ref)
+	return q, v.Scale * marginal / (v.horizon[t] * per)
 }
 
 // at returns Q and its slope on segment i.
@@ -233,49 +153,4 @@ func (c *valueCurve) at(i int, m float64) (q, slope float64) {
 	a, b := c.right[i], c.left[i+1]
 	c2, c3 := (3*k-2*a-b)/h, (a+b-2*k)/(h*h)
 	return c.q[i] + x*(a+x*(c2+x*c3)), a + x*(2*c2+3*x*c3)
-}
-
-// valueInverse returns the consumption c with u(c) = value. guess is where to look
-// for families that are not built in.
-func valueInverse(u Utility, value, guess float64) float64 {
-	switch f := u.(type) {
-	case CRRA:
-		if f.gamma == 1 {
-			return math.Exp(value)
-		}
-		return math.Pow((1-f.gamma)*value, 1/(1-f.gamma))
-	case StoneGeary:
-		return f.subsistence + valueInverse(CRRA{f.gamma}, value, guess)
-	case CARA:
-		return -math.Log(-f.alpha*value) / f.alpha
-	case Quadratic:
-		return f.bliss - math.Sqrt(-2*value)
-	}
-	return search(u, value, guess)
-}
-
-// search brackets and halves: a family of somebody else's may bend as it likes.
-func search(u Utility, value, guess float64) float64 {
-	low, high, floor := guess, guess, u.Infimum()
-	for step := math.Max(1e-3, math.Abs(guess)/2); u.Value(high) < value && !math.IsInf(high, 1); step *= 2 {
-		high += step
-	}
-	for step := math.Max(1e-3, math.Abs(guess)/2); u.Value(low) > value && !math.IsInf(low, -1); step *= 2 {
-		if low -= step; low <= floor {
-			low = floor
-			break
-		}
-	}
-	for range 200 {
-		mid := low + (high-low)/2
-		if mid == low || mid == high {
-			break
-		}
-		if u.Value(mid) < value {
-			low = mid
-		} else {
-			high = mid
-		}
-	}
-	return high
 }
