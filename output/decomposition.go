@@ -140,15 +140,32 @@ func (w *decompositionWriter) rows(d *Decomposition, s *DecompositionSums, age i
 		w.row(age, removed, "assets", "mean", s.estimate(func(mean func(int) float64) float64 { return mean(k) }), households)
 	}
 	for k, removed := range d.Removed {
-		part := func(mean func(int) float64) float64 { return mean(k) - mean(k+1) }
-		w.row(age, removed, "part", "mean", s.estimate(part), households)
+		w.row(age, removed, "part", "mean", s.part(k), households)
 		w.row(age, removed, "part", "share_of_mean_assets", s.estimate(func(mean func(int) float64) float64 {
 			if !(mean(0) > 0) {
 				return math.NaN()
 			}
-			return part(mean) / mean(0)
+			return (mean(k) - mean(k+1)) / mean(0)
 		}), households)
 	}
+}
+
+// part returns the part of mean assets held because of the k-th cause removed.
+func (s *DecompositionSums) part(k int) stats.Estimate {
+	return s.estimate(func(mean func(int) float64) float64 { return mean(k) - mean(k+1) })
+}
+
+// Whole returns, for all households of all ages, mean assets with nothing removed, the
+// part of each cause in the order of Removed, and what is left, in money.
+func (d *Decomposition) Whole() (all stats.Estimate, parts []stats.Estimate, left stats.Estimate) {
+	s := d.pool(0, len(d.Cells)-1, -1)
+	mean := func(step int) stats.Estimate {
+		return s.estimate(func(mean func(int) float64) float64 { return mean(step) })
+	}
+	for k := range d.Removed {
+		parts = append(parts, s.part(k))
+	}
+	return mean(0), parts, mean(len(d.Removed))
 }
 
 func (w *decompositionWriter) premium(d *Decomposition, group int) {

@@ -64,6 +64,15 @@ func TestDecompositionTable(t *testing.T) {
 			t.Errorf("%+v: got %v", tt, got)
 		}
 	}
+	all, parts, left := d.Whole()
+	value := func(removed, variable string) float64 {
+		x, _ := find("all", -1, removed, variable, "mean")
+		return x
+	}
+	if all.Value != value("nothing", "assets") || len(parts) != 2 || parts[0].Value != value("income_risk", "part") || parts[1].Value != value("borrowing_limit", "part") ||
+		left.Value != value("income_risk + borrowing_limit", "assets") || math.Abs(all.Value-parts[0].Value-parts[1].Value-left.Value) > 1e-12 {
+		t.Errorf("the whole %v, parts %v, left %v", all, parts, left)
+	}
 	// The spread is in assets before and after income risk is removed, so it has no
 	// part in the difference.
 	if _, se := find("dockers", 30, "income_risk", "part", "mean"); se > 1e-12 {

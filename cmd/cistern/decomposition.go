@@ -3,8 +3,10 @@ package main
 import (
 	"context"
 	"fmt"
+	"strings"
 
 	"cistern/output"
+	"cistern/output/stats"
 	"cistern/sim/decomposition"
 )
 
@@ -48,6 +50,7 @@ func (r *run) decompose(ctx context.Context) error {
 	table := out.Table()
 	table.Provenance = r.provenance()
 	r.tables.decomposition = table
+	r.apart = r.apartSentence(out)
 	for i, g := range out.Groups {
 		r.premium += fmt.Sprintf(", %s %.3g %%", g, 100*out.Premium[i])
 	}
@@ -55,4 +58,22 @@ func (r *run) decompose(ctx context.Context) error {
 		return err
 	}
 	return r.write("decomposition.csv", table.WriteCSV)
+}
+
+// apartSentence says in a line what mean wealth is held for.
+func (r *run) apartSentence(d *output.Decomposition) string {
+	all, parts, left := d.Whole()
+	money := func(e stats.Estimate) string { return fmt.Sprintf("%.0f (± %.0f)", e.Value, e.StandardError) }
+	text := fmt.Sprintf("of mean assets of %s %s, ", money(all), r.sc.Currency)
+	for k, cause := range d.Removed {
+		held := " because of "
+		if k == 0 {
+			held = " are held because of "
+		}
+		if cause == "borrowing_limit" {
+			cause = "the " + cause
+		}
+		text += money(parts[k]) + held + strings.ReplaceAll(cause, "_", " ") + ", "
+	}
+	return text + fmt.Sprintf("removed in this order; %s are left", money(left))
 }

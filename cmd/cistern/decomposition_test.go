@@ -15,7 +15,7 @@ func TestDecompositionExperiment(t *testing.T) {
 	var tables [2][]byte
 	for i, args := range []string{"--out a --workers 1", "--out b --workers 3"} {
 		status, _, stderr := cistern(t, append(strings.Fields("simulate port.yaml --households 3000 --set experiments.decomposition.order=[income_risk,longevity_risk]"), strings.Fields(args)...)...)
-		if status != 0 || !strings.Contains(stderr, "premium:  to be rid of income risk a household would give up, of its consumption, ") {
+		if status != 0 || !strings.Contains(stderr, " because of longevity risk, removed in this order; ") || !strings.Contains(stderr, "premium:  to be rid of income risk a household would give up, of its consumption, ") {
 			t.Fatalf("status %d, %s", status, stderr)
 		}
 		var err error

@@ -29,6 +29,7 @@ type run struct {
 	summary     *output.Summary
 	mobility    []*mobility.Study
 	transferred *output.Transfer // nil: no such experiment
+	apart       string           // what wealth is held for; empty: no such experiment
 	premium     string           // equivalent premium by group; empty: no such experiment
 	sample      *sample
 	result      sim.Result

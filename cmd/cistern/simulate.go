@@ -72,6 +72,9 @@ func (r *run) show() error {
 	if r.transferred != nil {
 		say("transfer: %s", r.transferSentence())
 	}
+	if r.apart != "" {
+		say("wealth:   %s", r.apart)
+	}
 	if r.premium != "" {
 		say("premium:  to be rid of income risk a household would give up, of its consumption%s", r.premium)
 	}
