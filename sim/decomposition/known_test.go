@@ -15,7 +15,7 @@ import (
 // are, to the bit, and parts sum to the whole by their definition; in every order the
 // parts are others.
 func TestOrders(t *testing.T) {
-	p := town(t, 1200, asIs)
+	p := town(t, 600, func(_ *policy.Household, p *income.Process) { p.Transitory.Nodes = 3 })
 	var want *Result
 	for _, order := range [][]Cause{
 		{IncomeRisk, LongevityRisk, BorrowingLimit}, {IncomeRisk, BorrowingLimit, LongevityRisk}, {LongevityRisk, IncomeRisk, BorrowingLimit},
